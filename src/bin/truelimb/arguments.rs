@@ -1,0 +1,158 @@
+//! What can be typed.
+
+use clap::{Args, Parser, Subcommand};
+use std::path::PathBuf;
+
+/// From solar-disk frames taken through the air to the true shape of the limb.
+#[derive(Debug, Parser)]
+#[command(version, about, max_term_width = 100)]
+pub(crate) struct Arguments {
+    /// What to do.
+    #[command(subcommand)]
+    pub(crate) command: Command,
+    /// Say nothing but results and errors.
+    #[arg(short, long, global = true)]
+    pub(crate) quiet: bool,
+    /// Worker threads; all cores by default. The result is the same for any number.
+    #[arg(long, global = true, value_name = "N")]
+    pub(crate) threads: Option<usize>,
+}
+
+/// The commands.
+#[derive(Debug, Subcommand)]
+pub(crate) enum Command {
+    /// Make a small session, reduce it, say what came out and where the report lies.
+    #[command(after_help = "Example: truelimb demo -o /tmp/first-look")]
+    Demo(Demo),
+    /// Reduce a session: from frames to a shape with an error bar.
+    #[command(
+        after_help = "Example: truelimb reduce session.toml -o result\n\nExit status 3: done, but the oblateness cannot be told from the instrument; the report says what to observe instead."
+    )]
+    Reduce(Reduce),
+    /// Make a session with known truth.
+    #[command(after_help = "Example: truelimb simulate -o fake --seed 7")]
+    Simulate(Simulate),
+    /// Limb and shape of one image, in pixels, without a session.
+    #[command(after_help = "Example: truelimb limb sun.fits --json")]
+    Limb(Limb),
+    /// Refraction, its effect on the disk and what it is sensitive to, without frames.
+    #[command(
+        after_help = "Example: truelimb refraction --latitude-deg 30.94 --height-m 2240 --pressure-hpa 778 --temperature-c 9 --humidity 0.35 --wavelength-nm 550 --zenith-deg 30,45,60"
+    )]
+    Refraction(Refraction),
+    /// Print the JSON Schema of the session file.
+    Schema,
+}
+
+/// `truelimb demo`.
+#[derive(Args, Debug)]
+pub(crate) struct Demo {
+    /// Folder for session and result; made when it is not there.
+    #[arg(short, long, default_value = "demo", value_name = "DIR")]
+    pub(crate) output: PathBuf,
+    /// Seed of everything random.
+    #[arg(long, default_value_t = 1)]
+    pub(crate) seed: u64,
+}
+
+/// `truelimb reduce`.
+#[derive(Args, Debug)]
+pub(crate) struct Reduce {
+    /// The session file.
+    #[arg(value_name = "SESSION")]
+    pub(crate) session: PathBuf,
+    /// Folder for the result; made when it is not there.
+    #[arg(short, long, value_name = "DIR")]
+    pub(crate) output: PathBuf,
+    /// Leave the stack out.
+    #[arg(long)]
+    pub(crate) no_stack: bool,
+    /// Print result.json on stdout.
+    #[arg(long)]
+    pub(crate) json: bool,
+    /// Seed of everything random.
+    #[arg(long, default_value_t = 1)]
+    pub(crate) seed: u64,
+}
+
+/// `truelimb simulate`.
+#[derive(Args, Debug)]
+pub(crate) struct Simulate {
+    /// Folder for the session; made when it is not there.
+    #[arg(short, long, value_name = "DIR")]
+    pub(crate) output: PathBuf,
+    /// Scenario, TOML; every key that it leaves out is the demo's.
+    #[arg(value_name = "SCENARIO")]
+    pub(crate) scenario: Option<PathBuf>,
+    /// Seed of everything random.
+    #[arg(long, default_value_t = 1)]
+    pub(crate) seed: u64,
+}
+
+/// `truelimb limb`.
+#[derive(Args, Debug)]
+pub(crate) struct Limb {
+    /// A FITS image of the whole disk.
+    #[arg(value_name = "IMAGE")]
+    pub(crate) image: PathBuf,
+    /// Plane of a cube, from 0.
+    #[arg(long, default_value_t = 0)]
+    pub(crate) plane: usize,
+    /// Wavelength: limb darkening and diffraction.
+    #[arg(long, default_value_t = 550.0)]
+    pub(crate) wavelength_nm: f64,
+    /// Aperture: diffraction.
+    #[arg(long, default_value_t = 0.15)]
+    pub(crate) aperture_m: f64,
+    /// Which edge is called the limb: template, inflection, or fourier:WINDOW in arcsec.
+    #[arg(long, default_value = "template")]
+    pub(crate) definition: String,
+    /// Print JSON.
+    #[arg(long)]
+    pub(crate) json: bool,
+}
+
+/// `truelimb refraction`.
+#[derive(Args, Debug)]
+#[command(allow_negative_numbers = true)]
+pub(crate) struct Refraction {
+    /// Latitude, degrees, north positive.
+    #[arg(long)]
+    pub(crate) latitude_deg: f64,
+    /// Height above sea level.
+    #[arg(long)]
+    pub(crate) height_m: f64,
+    /// Pressure at the station, not reduced to sea level.
+    #[arg(long)]
+    pub(crate) pressure_hpa: f64,
+    /// Temperature of the free air.
+    #[arg(long)]
+    pub(crate) temperature_c: f64,
+    /// Relative humidity, a fraction from 0 to 1.
+    #[arg(long)]
+    pub(crate) humidity: f64,
+    /// Wavelengths in vacuum.
+    #[arg(long, value_delimiter = ',', required = true)]
+    pub(crate) wavelength_nm: Vec<f64>,
+    /// Zenith distances, apparent unless --true.
+    #[arg(long, value_delimiter = ',', required = true)]
+    pub(crate) zenith_deg: Vec<f64>,
+    /// The zenith distances are true ones.
+    #[arg(long = "true")]
+    pub(crate) is_true: bool,
+    /// Azimuth of the Sun, north through east: sets the Earth's radius of curvature.
+    #[arg(long, default_value_t = 180.0)]
+    pub(crate) azimuth_deg: f64,
+    /// Carbon dioxide.
+    #[arg(long, default_value_t = 420.0)]
+    pub(crate) co2_ppm: f64,
+    /// Fall of temperature with height in the troposphere.
+    #[arg(long, default_value_t = 6.5)]
+    pub(crate) lapse_k_per_km: f64,
+    /// A sounding: CSV of height_m, pressure_hpa, temperature_c, relative_humidity.
+    #[arg(long, value_name = "FILE")]
+    pub(crate) profile: Option<PathBuf>,
+    /// Print JSON.
+    #[arg(long)]
+    pub(crate) json: bool,
+}

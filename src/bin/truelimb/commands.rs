@@ -1,0 +1,330 @@
+//! What each command does.
+
+use crate::Ending;
+use crate::arguments::{Demo, Limb, Reduce, Refraction, Simulate};
+use crate::progress::{Bar, say};
+use std::io::Write;
+use std::path::Path;
+use truelimb::air::{self, StationAir, ZenithArgument};
+use truelimb::pipeline::single::{self, Definition, SingleSettings};
+use truelimb::pipeline::{self, Options, Outcome, Progress};
+use truelimb::result::record::{Quantity, Record, ShapeQuantity, Status};
+use truelimb::synth::SynthError;
+use truelimb::{Error, session, synth};
+
+/// Why a command failed.
+#[derive(Debug, thiserror::Error)]
+pub(crate) enum Failure {
+    /// What was typed cannot be used.
+    #[error("{0}")]
+    Usage(String),
+    /// The library refused.
+    #[error(transparent)]
+    Run(Box<Error>),
+    /// A session could not be made.
+    #[error("simulation: {0}")]
+    Synth(#[from] SynthError),
+}
+
+impl<E: Into<Error>> From<E> for Failure {
+    fn from(it: E) -> Self {
+        Self::Run(Box::new(it.into()))
+    }
+}
+
+/// Prints on stdout; a closed pipe is no failure.
+fn print(text: &str) {
+    let _ = writeln!(std::io::stdout().lock(), "{text}");
+}
+
+const CAUTION: &str = "Sunlight through optics blinds and burns. A certified full-aperture filter stands before the optics (larger telescopes: a heat-rejecting entrance made for them); never look through an unfiltered finder, cover what is not in use, never leave it unattended. Local codes, the station's rules and its trained staff come first.";
+
+/// `truelimb demo`.
+pub(crate) fn demo(it: &Demo, quiet: bool) -> Result<Ending, Failure> {
+    let folder = it.output.join("session");
+    make(&synth::Scenario::default(), it.seed, &folder, quiet)?;
+    let result = it.output.join("result");
+    let options = Options {
+        seed: it.seed,
+        stack: true,
+    };
+    let outcome = run(&folder.join("session.toml"), &result, &options, quiet)?;
+    print(&summary(&outcome.record));
+    print(&format!(
+        "\nreport: {}",
+        result.join("report.html").display()
+    ));
+    if !quiet {
+        say(CAUTION);
+    }
+    Ok(ending(&outcome.record))
+}
+
+/// `truelimb reduce`.
+pub(crate) fn reduce(it: &Reduce, quiet: bool) -> Result<Ending, Failure> {
+    let options = Options {
+        seed: it.seed,
+        stack: !it.no_stack,
+    };
+    let outcome = run(&it.session, &it.output, &options, quiet)?;
+    if it.json {
+        print(&json(&outcome.record)?);
+    } else if !quiet {
+        print(&summary(&outcome.record));
+        print(&format!(
+            "\nreport: {}",
+            it.output.join("report.html").display()
+        ));
+    }
+    Ok(ending(&outcome.record))
+}
+
+fn ending(record: &Record) -> Ending {
+    match record.shape.oblateness.status {
+        Status::Measured => Ending::Done,
+        Status::NotSeparated => Ending::Refused,
+    }
+}
+
+fn run(path: &Path, output: &Path, options: &Options, quiet: bool) -> Result<Outcome, Failure> {
+    let session = session::read_with_headers(path, &header_number)?;
+    let bar = Bar::new(quiet);
+    let outcome = pipeline::reduce(&session, options, &bar);
+    bar.finish();
+    let outcome = outcome?;
+    pipeline::products::write(&outcome, &session, output)?;
+    Ok(outcome)
+}
+
+/// A number from a frame's header, for a fact that the session leaves out.
+fn header_number(frame: &Path, keyword: &str) -> Option<f64> {
+    truelimb::frames::ImageFile::open(frame)
+        .ok()?
+        .key_f64(keyword)
+        .ok()
+        .flatten()
+}
+
+fn json<T: serde::Serialize>(value: &T) -> Result<String, Failure> {
+    serde_json::to_string_pretty(value).map_err(|source| {
+        Failure::Run(Box::new(Error::Record {
+            what: "the result",
+            source,
+        }))
+    })
+}
+
+/// What a person wants to know first.
+fn summary(record: &Record) -> String {
+    let shape = &record.shape;
+    let seeing = &record.seeing;
+    let mut out = vec![
+        record.summary.clone(),
+        String::new(),
+        shape_line(
+            "oblateness, equatorial minus polar radius",
+            &shape.oblateness,
+            2,
+        ),
+        shape_line("radius at 1 AU", &shape.radius, 4),
+        shape_line("P4", &shape.p4, 2),
+        quantity_line("r0 at 500 nm, zenith", &seeing.r0, 4),
+        format!(
+            "frames: {} read, {} usable, {} used; turbulence makes {} of the variance of the oblateness",
+            record.selection.read,
+            record.selection.usable,
+            record.selection.used,
+            record.turbulence.share.value.map_or_else(
+                || "an unknown part".to_owned(),
+                |it| format!("{:.0} percent", 100.0 * it)
+            ),
+        ),
+    ];
+    for it in &record.warnings {
+        out.push(format!("warning: {}", it.text));
+    }
+    out.join("\n")
+}
+
+fn shape_line(name: &str, it: &ShapeQuantity, digits: usize) -> String {
+    match (it.value, it.sigma) {
+        (Some(value), Some(sigma)) => {
+            format!("{name}: {value:.digits$} +- {sigma:.digits$} {}", it.unit)
+        }
+        _ => format!("{name}: not separated"),
+    }
+}
+
+fn quantity_line(name: &str, it: &Quantity, digits: usize) -> String {
+    match (it.value, it.sigma) {
+        (Some(value), Some(sigma)) => {
+            format!("{name}: {value:.digits$} +- {sigma:.digits$} {}", it.unit)
+        }
+        _ => format!(
+            "{name}: not measured ({})",
+            it.reason.as_deref().unwrap_or("no reason")
+        ),
+    }
+}
+
+/// `truelimb simulate`.
+pub(crate) fn simulate(it: &Simulate, quiet: bool) -> Result<Ending, Failure> {
+    let scenario = match &it.scenario {
+        None => synth::Scenario::default(),
+        Some(path) => {
+            let text = std::fs::read_to_string(path).map_err(|it| {
+                Failure::Usage(format!("{}: could not be read: {it}", path.display()))
+            })?;
+            synth::read_scenario(&text)?
+        }
+    };
+    make(&scenario, it.seed, &it.output, quiet)?;
+    print(&it.output.join("session.toml").display().to_string());
+    Ok(Ending::Done)
+}
+
+fn make(scenario: &synth::Scenario, seed: u64, folder: &Path, quiet: bool) -> Result<(), Failure> {
+    let bar = Bar::new(quiet);
+    let frames = scenario.sequences.iter().map(|it| it.frames as u64).sum();
+    bar.stage("making frames", frames);
+    let made = synth::make(scenario, seed, folder, &|| bar.tick());
+    bar.finish();
+    made?;
+    Ok(())
+}
+
+/// `truelimb limb`.
+pub(crate) fn limb(it: &Limb) -> Result<Ending, Failure> {
+    let settings = SingleSettings {
+        wavelength_nm: it.wavelength_nm,
+        aperture_m: it.aperture_m,
+        plane: it.plane,
+        definition: definition(&it.definition)?,
+    };
+    let found = single::limb_of_file(&it.image, &settings).map_err(|error| {
+        // A limb that cannot be measured names no file of its own.
+        let own = matches!(error, Error::Fits(_));
+        if own {
+            error.into()
+        } else {
+            Failure::Usage(format!("{}: {error}", it.image.display()))
+        }
+    })?;
+    if it.json {
+        print(&json(&found)?);
+        return Ok(Ending::Done);
+    }
+    print(&format!(
+        "centre   {:.4} {:.4} +- {:.4} px (0-based)\nradius   {:.4} +- {:.4} px\ncos 2    {:+.4}   sin 2 {:+.4} px\ncos 3    {:+.4}   sin 3 {:+.4} px\ncos 4    {:+.4}   sin 4 {:+.4} +- {:.4} px\nblur     {:.2} px\nsectors  {} used, {} left out\nlimb     {}",
+        found.centre_px[0],
+        found.centre_px[1],
+        found.centre_sigma_px,
+        found.radius_px,
+        found.radius_sigma_px,
+        found.cos2_px,
+        found.sin2_px,
+        found.cos3_px,
+        found.sin3_px,
+        found.cos4_px,
+        found.sin4_px,
+        found.harmonic_sigma_px,
+        found.width_px,
+        found.sectors_used,
+        found.sectors_rejected,
+        found.definition,
+    ));
+    for it in &found.warnings {
+        say(&format!("warning: {it}"));
+    }
+    Ok(Ending::Done)
+}
+
+fn definition(text: &str) -> Result<Definition, Failure> {
+    let refused = || {
+        Failure::Usage(format!(
+            "--definition is \"{text}\"; allowed are template, inflection, and fourier:WINDOW with a window of 2 to 25 arcsec, such as fourier:10"
+        ))
+    };
+    match text.split_once(':') {
+        None if text == "template" => Ok(Definition::Template),
+        None if text == "inflection" => Ok(Definition::Inflection),
+        Some(("fourier", window)) => window
+            .parse()
+            .ok()
+            .filter(|it| (2.0..=25.0).contains(it))
+            .map(Definition::Fourier)
+            .ok_or_else(refused),
+        _ => Err(refused()),
+    }
+}
+
+/// `truelimb refraction`.
+pub(crate) fn refraction(it: &Refraction) -> Result<Ending, Failure> {
+    let site = air::Site {
+        latitude_rad: it.latitude_deg.to_radians(),
+        height_m: it.height_m,
+    };
+    let conditions = air::Conditions {
+        pressure_hpa: it.pressure_hpa,
+        temperature_c: it.temperature_c,
+        relative_humidity: it.humidity,
+        co2_ppm: it.co2_ppm,
+    };
+    let mut station = StationAir::new(site, conditions, it.azimuth_deg.to_radians());
+    station.settings.lapse_k_per_m = it.lapse_k_per_km / 1000.0;
+    if let Some(path) = &it.profile {
+        let sounding = session::Sounding::read(path).map_err(|faults| {
+            Failure::from(session::SessionError {
+                path: path.clone(),
+                faults,
+            })
+        })?;
+        station.sounding = Some(sounding.levels);
+    }
+    let zeniths: Vec<f64> = it.zenith_deg.iter().map(|it| it.to_radians()).collect();
+    let argument = if it.is_true {
+        ZenithArgument::True
+    } else {
+        ZenithArgument::Apparent
+    };
+    let rows = air::refraction_table(&station, &zeniths, argument, &it.wavelength_nm)?;
+    if it.json {
+        print(&json(&rows)?);
+        return Ok(Ending::Done);
+    }
+    print(
+        "zenith, deg         wave,  refraction  radius     flattening  m = 3    P4       flattening changes, mas, by 1",
+    );
+    print(
+        "apparent  true      nm     arcsec      change,mas mas         mas      mas      hPa      K        nm       zenith arcmin",
+    );
+    for it in &rows {
+        print(&format!(
+            "{:<9.4} {:<9.4} {:<6.1} {:<11.4} {:<10.3} {:<11.3} {:<8.3} {:<8.4} {:<8.4} {:<8.4} {:<8.4} {:.4}",
+            it.zenith_apparent_deg,
+            it.zenith_true_deg,
+            it.wavelength_nm,
+            it.refraction_arcsec,
+            it.radius_change_mas,
+            it.flattening_mas,
+            it.m3_mas,
+            it.p4_mas,
+            it.sensitivity.pressure_hpa,
+            it.sensitivity.temperature_c,
+            it.sensitivity.wavelength_nm,
+            it.sensitivity.zenith_arcmin,
+        ));
+    }
+    for &nm in &it.wavelength_nm {
+        for warning in air::refractivity_warnings(&conditions, nm, station.formula) {
+            say(&format!("warning: {warning}"));
+        }
+    }
+    Ok(Ending::Done)
+}
+
+/// `truelimb schema`.
+pub(crate) fn schema() -> Result<Ending, Failure> {
+    print(&json(&session::schema())?);
+    Ok(Ending::Done)
+}

@@ -1,0 +1,57 @@
+//! The command: reads arguments, calls the library, prints results on stdout and all else on stderr.
+
+mod arguments;
+mod commands;
+mod progress;
+
+use arguments::{Arguments, Command};
+use clap::Parser;
+use std::process::ExitCode;
+use truelimb::Error;
+
+/// How a command ended, apart from failing.
+pub(crate) enum Ending {
+    /// Done.
+    Done,
+    /// Done, but the answer was refused.
+    Refused,
+}
+
+fn main() -> ExitCode {
+    let arguments = Arguments::parse();
+    if let Some(threads) = arguments.threads {
+        // Set once, before any work; a second pool is never made.
+        let _ = rayon::ThreadPoolBuilder::new()
+            .num_threads(threads)
+            .build_global();
+    }
+    let quiet = arguments.quiet;
+    let ended = match arguments.command {
+        Command::Demo(it) => commands::demo(&it, quiet),
+        Command::Reduce(it) => commands::reduce(&it, quiet),
+        Command::Simulate(it) => commands::simulate(&it, quiet),
+        Command::Limb(it) => commands::limb(&it),
+        Command::Refraction(it) => commands::refraction(&it),
+        Command::Schema => commands::schema(),
+    };
+    match ended {
+        Ok(Ending::Done) => ExitCode::SUCCESS,
+        Ok(Ending::Refused) => ExitCode::from(3),
+        Err(it) => {
+            progress::say(&format!("error: {it}"));
+            ExitCode::from(status(&it))
+        }
+    }
+}
+
+/// Exit status: 2 for input that cannot be used, 1 for what failed otherwise.
+fn status(error: &commands::Failure) -> u8 {
+    match error {
+        commands::Failure::Usage(_) => 2,
+        commands::Failure::Synth(_) => 1,
+        commands::Failure::Run(it) => match it.as_ref() {
+            Error::File { .. } | Error::Record { .. } | Error::Report(_) => 1,
+            _ => 2,
+        },
+    }
+}

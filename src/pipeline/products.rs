@@ -1,0 +1,348 @@
+//! The files of a result: each whole under its name, or not there.
+
+use super::{Error, Outcome};
+use crate::frames::{self, Card, Column, FitsWriter, Value, Values, write_ecsv, write_whole};
+use crate::report;
+use crate::result::record::SourceFile;
+use crate::session::Session;
+use crate::shape::REFERENCE_RADIUS_MAS;
+use crate::sky::observer_itrs_m;
+use rayon::prelude::*;
+use std::path::{Path, PathBuf};
+
+/// Checksums of every file that goes into a result: the session's own and the frames.
+///
+/// # Errors
+///
+/// When a file cannot be read.
+pub fn sources(session: &Session) -> Result<Vec<SourceFile>, Error> {
+    let mut paths: Vec<&PathBuf> = session.sources.iter().collect();
+    for it in &session.sequences {
+        paths.extend(
+            it.files
+                .iter()
+                .chain(&it.calibration.dark)
+                .chain(&it.calibration.flat),
+        );
+        paths.extend(&it.camera.bad_pixels);
+    }
+    let mut seen = std::collections::BTreeSet::new();
+    paths.retain(|it| seen.insert(*it));
+    let folder = session.path.parent().unwrap_or_else(|| Path::new(""));
+    paths
+        .par_iter()
+        .map(|path| {
+            let bytes = std::fs::metadata(path)
+                .map_err(|source| Error::File {
+                    path: path.to_path_buf(),
+                    what: "could not be read",
+                    source,
+                })?
+                .len();
+            let shown = path.strip_prefix(folder).unwrap_or(path);
+            Ok(SourceFile {
+                path: shown.to_string_lossy().into_owned(),
+                bytes,
+                sha256: frames::sha256(path)?,
+            })
+        })
+        .collect()
+}
+
+/// Writes every product of a run into a folder, which is made when it is not there.
+///
+/// # Errors
+///
+/// When the folder or a file cannot be written; what was there before under a name stays whole.
+pub fn write(outcome: &Outcome, session: &Session, folder: &Path) -> Result<(), Error> {
+    let figures = folder.join("figures");
+    std::fs::create_dir_all(&figures).map_err(|source| Error::File {
+        path: figures.clone(),
+        what: "the folder could not be made",
+        source,
+    })?;
+    limbs(outcome, session, &folder.join("limbs.fits"))?;
+    stack(outcome, session, &folder.join("stack.fits"))?;
+    seeing_table(outcome, &folder.join("seeing.ecsv"))?;
+    budget_table(outcome, &folder.join("budget.ecsv"))?;
+    let rendered = report::render(&outcome.record, &outcome.traces)?;
+    for (stem, svg) in &rendered.figures {
+        write_whole(&figures.join(format!("{stem}.svg")), svg.as_bytes())?;
+    }
+    write_whole(&folder.join("report.html"), rendered.html.as_bytes())?;
+    // Last, so that a result is there only when everything it stands on is.
+    let text = serde_json::to_string_pretty(&outcome.record).map_err(|source| Error::Record {
+        what: "result.json",
+        source,
+    })?;
+    write_whole(&folder.join("result.json"), format!("{text}\n").as_bytes())?;
+    Ok(())
+}
+
+/// Cards that every FITS product carries.
+fn common(outcome: &Outcome, session: &Session) -> Vec<Card> {
+    let [x, y, z] = observer_itrs_m(&super::measure::place(session));
+    vec![
+        Card::text(
+            "CREATOR",
+            format!("truelimb {}", outcome.record.program_version),
+            "program",
+        ),
+        Card::text("OBJECT", "Sun", ""),
+        Card::text("TIMESYS", "UTC", "time scale"),
+        Card::text(
+            "DATE-BEG",
+            outcome.record.time_utc[0].clone(),
+            "first mid-exposure",
+        ),
+        Card::text(
+            "DATE-END",
+            outcome.record.time_utc[1].clone(),
+            "last mid-exposure",
+        ),
+        Card::text("TREFPOS", "TOPOCENTER", ""),
+        Card::real("OBSGEO-X", x, "[m] ITRS"),
+        Card::real("OBSGEO-Y", y, "[m] ITRS"),
+        Card::real("OBSGEO-Z", z, "[m] ITRS"),
+    ]
+}
+
+/// `limbs.fits`: a row for every frame and sector.
+fn limbs(outcome: &Outcome, session: &Session, path: &Path) -> Result<(), Error> {
+    let mut sequence = Vec::new();
+    let mut frame = Vec::new();
+    let mut time = Vec::new();
+    let mut theta = Vec::new();
+    let mut position_angle = Vec::new();
+    let mut radius = Vec::new();
+    let mut sigma = Vec::new();
+    let mut apparent = Vec::new();
+    let mut blur = Vec::new();
+    let mut gain = Vec::new();
+    let mut flag = Vec::new();
+    let start = outcome.measured[0].frames[0].utc;
+    for (m, l) in outcome.measured.iter().zip(&outcome.limbs) {
+        for it in &l.frames {
+            let measured = &m.frames[it.measured];
+            let after_s = measured.utc.minus(start);
+            for (s, sector) in measured.limb.sectors.iter().enumerate() {
+                let angle = it.limb.angles_rad[s];
+                sequence.push(m.index as i32);
+                frame.push(measured.frame as i32);
+                time.push(after_s);
+                theta.push(angle.to_degrees() as f32);
+                position_angle.push(
+                    measured
+                        .moment
+                        .orientation
+                        .position_angle_rad(angle)
+                        .to_degrees() as f32,
+                );
+                radius.push((REFERENCE_RADIUS_MAS + it.limb.radius_mas[s]) / 1000.0);
+                sigma.push((it.limb.sigma_mas[s] / 1000.0) as f32);
+                apparent.push(sector.radius_arcsec);
+                blur.push(crate::limb::template::width_of_blur_arcsec(sector.blur) as f32);
+                gain.push(sector.gain_adu as f32);
+                flag.push(if it.usable[s] {
+                    0
+                } else {
+                    sector.flag.code().max(1)
+                });
+            }
+        }
+    }
+    let columns = [
+        Column::new("SEQUENCE", Values::I32(sequence))
+            .describe("index in the session file, from 0"),
+        Column::new("FRAME", Values::I32(frame)).describe("index in the sequence, from 0"),
+        Column::new("TIME", Values::F64(time))
+            .unit("s")
+            .describe("mid-exposure after DATEREF")
+            .ucd("time.epoch"),
+        Column::new("THETA", Values::F32(theta))
+            .unit("deg")
+            .describe("detector angle from +x towards +y"),
+        Column::new("POSANG", Values::F32(position_angle))
+            .unit("deg")
+            .describe("position angle from celestial north through east")
+            .ucd("pos.posAng"),
+        Column::new("RADIUS", Values::F64(radius))
+            .unit("arcsec")
+            .describe("radius at 1 AU, air taken out")
+            .ucd("phys.angSize"),
+        Column::new("SIGMA", Values::F32(sigma))
+            .unit("arcsec")
+            .describe("photon and read noise of RADIUS")
+            .ucd("stat.error;phys.angSize"),
+        Column::new("SEEN", Values::F64(apparent))
+            .unit("arcsec")
+            .describe("apparent radius on the plate scale"),
+        Column::new("BLUR", Values::F32(blur))
+            .unit("arcsec")
+            .describe("lambda / r0 from the width of the limb"),
+        Column::new("GAIN", Values::F32(gain))
+            .unit("adu")
+            .describe("brightness of disk centre by this sector"),
+        Column::new("FLAG", Values::U8(flag))
+            .describe("0 good, 1 incomplete or masked, 2 misfit")
+            .ucd("meta.code.qual"),
+    ];
+    let mut cards = common(outcome, session);
+    cards.push(Card::text(
+        "DATEREF",
+        start.to_iso(),
+        "TIME counts from here",
+    ));
+    let mut file = FitsWriter::create(path)?;
+    file.table("LIMBS", &columns, &cards)?;
+    file.finish()?;
+    Ok(())
+}
+
+/// `stack.fits`: image, variance and weight, helioprojective.
+fn stack(outcome: &Outcome, session: &Session, path: &Path) -> Result<(), Error> {
+    let Some(stack) = &outcome.stack else {
+        return Ok(());
+    };
+    let middle = &outcome.measured[outcome.measured.len() / 2];
+    let sun = &middle.middle.sun;
+    let au_m = crate::constants::ASTRONOMICAL_UNIT.value;
+    let radius_m = crate::constants::SOLAR_RADIUS_NOMINAL.value;
+    let radius_arcsec = (radius_m / (sun.distance_au * au_m)).asin() / crate::units::ARCSEC_RAD;
+    let mut cards = common(outcome, session);
+    let centre = stack.centre_px() + 1.0;
+    cards.extend([
+        Card::text(
+            "DATE-OBS",
+            middle.middle_utc.to_iso(),
+            "middle of the session",
+        ),
+        Card::text("DATE-AVG", middle.middle_utc.to_iso(), ""),
+        Card::text("BUNIT", "adu", ""),
+        Card::text("WCSNAME", "Helioprojective-cartesian", ""),
+        Card::text("CTYPE1", "HPLN-TAN", "to solar west"),
+        Card::text("CTYPE2", "HPLT-TAN", "to solar north"),
+        Card::text("CUNIT1", "arcsec", ""),
+        Card::text("CUNIT2", "arcsec", ""),
+        Card::real("CRPIX1", centre, ""),
+        Card::real("CRPIX2", centre, ""),
+        Card::real("CRVAL1", 0.0, ""),
+        Card::real("CRVAL2", 0.0, ""),
+        Card::real("CDELT1", stack.scale_arcsec_px, ""),
+        Card::real("CDELT2", stack.scale_arcsec_px, ""),
+        Card::real("PC1_1", 1.0, ""),
+        Card::real("PC1_2", 0.0, ""),
+        Card::real("PC2_1", 0.0, ""),
+        Card::real("PC2_2", 1.0, ""),
+        Card::real("LONPOLE", 180.0, ""),
+        Card::real("DSUN_OBS", sun.distance_au * au_m, "[m]"),
+        Card::real("HGLN_OBS", 0.0, "[deg]"),
+        Card::real("HGLT_OBS", sun.b0_rad.to_degrees(), "[deg] B0"),
+        Card::real("CRLN_OBS", sun.l0_rad.to_degrees(), "[deg] L0"),
+        Card::real("CRLT_OBS", sun.b0_rad.to_degrees(), "[deg]"),
+        Card::real("RSUN_REF", radius_m, "[m] IAU 2015 nominal"),
+        Card::real("RSUN_OBS", radius_arcsec, "[arcsec] predicted, not fitted"),
+        Card::real(
+            "TL_RADIU",
+            outcome.record.shape.radius.value.unwrap_or(f64::NAN),
+            "[arcsec] fitted, at 1 AU",
+        ),
+        Card::real("WAVELNTH", middle.setup.optics.wavelength_nm, "[nm]"),
+        Card::text("WAVEUNIT", "nm", ""),
+        Card::integer("NSUMEXP", stack.frames as i64, "frames"),
+    ]);
+    if let Some(r0) = outcome.record.seeing.line_of_sight.value {
+        cards.push(Card::real("ATMOS_R0", r0, "[m] 500 nm, towards the Sun"));
+    }
+    let mut file = FitsWriter::create(path)?;
+    file.image_f32(None, &stack.image.mapv(|it| it as f32), &cards)?;
+    let squared = [Card::text("BUNIT", "adu2", "")];
+    file.image_f32(
+        Some("VARIANCE"),
+        &stack.variance.mapv(|it| it as f32),
+        &squared,
+    )?;
+    file.image_f32(Some("WEIGHT"), &stack.weight.mapv(|it| it as f32), &[])?;
+    file.finish()?;
+    Ok(())
+}
+
+/// `seeing.ecsv`: a row for every frame.
+fn seeing_table(outcome: &Outcome, path: &Path) -> Result<(), Error> {
+    let frames = &outcome.traces.frames;
+    let of = |f: &dyn Fn(&crate::result::record::FrameTrace) -> f64| {
+        Values::F64(frames.iter().map(f).collect())
+    };
+    let gaps = Values::Gaps(
+        frames
+            .iter()
+            .map(|it| Some(it.r0_blur_m).filter(|it| it.is_finite()))
+            .collect(),
+    );
+    let columns = [
+        Column::new(
+            "sequence",
+            Values::I32(frames.iter().map(|it| it.sequence as i32).collect()),
+        ),
+        Column::new(
+            "frame",
+            Values::I32(frames.iter().map(|it| it.frame as i32).collect()),
+        ),
+        Column::new("time", of(&|it| it.time_s))
+            .unit("s")
+            .describe("mid-exposure after the session's first")
+            .ucd("time.epoch"),
+        Column::new(
+            "kept",
+            Values::U8(frames.iter().map(|it| u8::from(it.kept)).collect()),
+        )
+        .describe("1 where it went to the fit"),
+        Column::new("weight", of(&|it| it.weight)).describe("weight from the seeing"),
+        Column::new("r0_blur", gaps)
+            .unit("m")
+            .describe("Fried's parameter, 500 nm, towards the Sun, from the limb's width"),
+        Column::new("radius", of(&|it| it.radius_mas))
+            .unit("mas")
+            .describe("minus the session's mean, at 1 AU"),
+        Column::new("cos2", of(&|it| it.cos2_mas))
+            .unit("mas")
+            .describe("on the detector, air taken out"),
+        Column::new("sin2", of(&|it| it.sin2_mas))
+            .unit("mas")
+            .describe("on the detector, air taken out"),
+    ];
+    let facts = [(
+        "reference".to_owned(),
+        Value::Text(outcome.record.time_utc[0].clone()),
+    )];
+    write_ecsv(path, &columns, &facts)?;
+    Ok(())
+}
+
+/// `budget.ecsv`: the budget as a table.
+fn budget_table(outcome: &Outcome, path: &Path) -> Result<(), Error> {
+    let lines = &outcome.record.budget;
+    let text = |f: &dyn Fn(&crate::result::record::BudgetLine) -> &String| {
+        Values::Text(lines.iter().map(|it| f(it).clone()).collect())
+    };
+    let columns = [
+        Column::new("term", text(&|it| &it.term)),
+        Column::new(
+            "sigma",
+            Values::Gaps(lines.iter().map(|it| it.sigma_mas).collect()),
+        )
+        .unit("mas")
+        .describe("standard uncertainty of the oblateness"),
+        Column::new(
+            "sigma_radius",
+            Values::F64(lines.iter().map(|it| it.sigma_radius_mas).collect()),
+        )
+        .unit("mas")
+        .describe("standard uncertainty of the radius"),
+        Column::new("kind", text(&|it| &it.kind)),
+        Column::new("scope", text(&|it| &it.scope)),
+        Column::new("how", text(&|it| &it.how)),
+    ];
+    write_ecsv(path, &columns, &[])?;
+    Ok(())
+}

@@ -1,0 +1,3 @@
+//! The records of a result.
+
+pub mod record;

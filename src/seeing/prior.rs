@@ -1,0 +1,94 @@
+//! What is known of daytime turbulence before looking at the limb.
+//!
+//! # Model
+//!
+//! Four layers stand for the profile. Each has a height and a strength whose logarithms are normally
+//! distributed; the total strength is free.
+//!
+//! ```text
+//! C_n^2 ~ h^(-1.15) from 4 m to 3.5 km,  a tenth of all turbulence above
+//! layer            heights it stands for     ln h: median, sigma      share   sigma of ln
+//! surface                4 ..    40 m            18 m, 0.5             0.40      0.7
+//! boundary              40 ..   700 m           170 m, 0.8             0.36      0.7
+//! inversion            700 ..  3500 m          1600 m, 0.5             0.14      0.8
+//! free air            3500 .. 15000 m          7200 m, 0.4             0.10      0.7
+//! ```
+//!
+//! The median height is the middle of the range and sigma that of a uniform law in `ln h`. The
+//! exponent lies between -4/3 of free convection and -0.82 to -1.1 found by towers. The outer scale
+//! has a broad law about 20 m, including none.
+//!
+//! A prior is needed: a layer whose ring is much smaller than the aperture moves the harmonics by
+//! `C_n^2 h^2` alone, so that its strength cannot be told from its height.
+//!
+//! # Valid for
+//!
+//! Daytime, telescopes a few metres above the ground. Turbulence within 4 m of the telescope moves only
+//! m = 1 and is not seen at all.
+//!
+//! # Accuracy
+//!
+//! The width of the prior is in the error of r0; `tests/published/motion_sessions.rs` measures what is left.
+//!
+//! # Source
+//!
+//! J. C. Wyngaard, Y. Izumi and S. A. Collins, J. Opt. Soc. Am. 61, 1646 (1971), for -4/3 (from memory);
+//! exponents of towers: Qian et al. (2022) and Gu et al. (2024), abstracts; outer scales of 10 to 30 m:
+//! J. M. Beckers and Z. Liu, Bull. Am. Astron. Soc. 34, 56.03 (2002), abstract. Widths: our judgement.
+
+/// What is assumed of one layer.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct LayerPrior {
+    /// Median height above the telescope.
+    pub height_m: f64,
+    /// Standard deviation of the natural logarithm of the height.
+    pub height_sigma_ln: f64,
+    /// Median share of the turbulence; shares need not sum to one.
+    pub share: f64,
+    /// Standard deviation of the natural logarithm of the share.
+    pub share_sigma_ln: f64,
+}
+
+/// What is assumed of the profile.
+#[derive(Clone, Debug, PartialEq)]
+pub struct ProfilePrior {
+    /// The layers, lowest first.
+    pub layers: Vec<LayerPrior>,
+    /// Outer scales considered, with their weights.
+    pub outer_scales_m: Vec<(f64, f64)>,
+    /// Change of the turbulence's strength from sequence to sequence: standard deviation of its
+    /// natural logarithm.
+    pub sequence_sigma_ln: f64,
+}
+
+impl Default for ProfilePrior {
+    fn default() -> Self {
+        let layer = |height_m, height_sigma_ln, share, share_sigma_ln| LayerPrior {
+            height_m,
+            height_sigma_ln,
+            share,
+            share_sigma_ln,
+        };
+        Self {
+            layers: vec![
+                layer(18.0, 0.5, 0.40, 0.7),
+                layer(170.0, 0.8, 0.36, 0.7),
+                layer(1600.0, 0.5, 0.14, 0.8),
+                layer(7200.0, 0.4, 0.10, 0.7),
+            ],
+            outer_scales_m: vec![
+                (5.0, 0.05),
+                (8.0, 0.10),
+                (12.0, 0.15),
+                (16.0, 0.14),
+                (20.0, 0.13),
+                (25.0, 0.12),
+                (32.0, 0.11),
+                (50.0, 0.10),
+                (100.0, 0.06),
+                (f64::INFINITY, 0.04),
+            ],
+            sequence_sigma_ln: 0.3,
+        }
+    }
+}

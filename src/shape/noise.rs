@@ -1,0 +1,283 @@
+//! Random error of the harmonics from the data themselves.
+//!
+//! # Model
+//!
+//! ```text
+//! var(block mean) = f_m s_m^2 sum w^2 / (sum w)^2
+//! ```
+//!
+//! `s_m^2` is the scatter of one coefficient about its block's mean (cosine and sine together, for
+//! turbulence has no preferred direction on average), `f_m` the factor by which correlation in time
+//! makes frames count less: the larger of the initial positive sequence of the autocorrelation and
+//! batch means, both by the time stamps and pooled over all sequences.
+//!
+//! # Valid for
+//!
+//! Sequences of at least two frames; batch means need batches of ten frames.
+//!
+//! # Accuracy
+//!
+//! Initial positive sequence 1.1 times the true variance at the median, batch means 0.95 to 1.0, for
+//! m = 2 of a layer at 500 m to 2 km.
+//!
+//! # Source
+//!
+//! C. J. Geyer, Statistical Science 7, 473 (1992); batch means: standard.
+
+use super::{COMPONENTS, Observation, design::Component};
+
+/// Frames of one sequence that are fitted as one mean.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Block {
+    /// Index of the sequence.
+    pub sequence: usize,
+    /// Weighted mean time, seconds.
+    pub time_s: f64,
+    /// Observations, as indices.
+    pub frames: Vec<usize>,
+    /// Weighted mean.
+    pub mean_mas: Component,
+    /// Variance of the mean.
+    pub variance_mas2: Component,
+}
+
+/// A block is cut where it grows longer than this, so that slow changes of the geometry stay in it.
+const BLOCK_S: f64 = 300.0;
+
+/// Prior degrees of freedom by which a sequence's scatter leans on that of all.
+const PRIOR_DOF: f64 = 10.0;
+
+/// Harmonic of each component.
+const HARMONIC: [usize; COMPONENTS] = [0, 2, 2, 3, 3, 4, 4];
+
+/// Blocks with means and variances, and the factors `f_m` for m = 0, 2, 3, 4.
+pub fn blocks(observations: &[Observation]) -> (Vec<Block>, [f64; 5], f64) {
+    let groups = groups(observations);
+    let residuals = residuals(observations, &groups);
+    let mut factor = [1.0; 5];
+    let mut dof = 0.0;
+    for m in [0, 2, 3, 4] {
+        let (it, batches) = correlation_factor(observations, &groups, &residuals, m);
+        factor[m] = it;
+        if m == 2 {
+            dof = batches;
+        }
+    }
+    let scatter = scatter(observations, &groups, &residuals);
+    let out = groups
+        .iter()
+        .zip(&scatter)
+        .map(|(frames, scatter)| {
+            let (mean, time_s, sum, squares) = mean(observations, frames);
+            Block {
+                sequence: observations[frames[0]].sequence,
+                time_s,
+                frames: frames.clone(),
+                mean_mas: mean,
+                variance_mas2: std::array::from_fn(|c| {
+                    factor[HARMONIC[c]] * scatter[c] * squares / (sum * sum)
+                }),
+            }
+        })
+        .collect();
+    (out, factor, dof)
+}
+
+/// Frames by sequence, cut at [`BLOCK_S`].
+fn groups(observations: &[Observation]) -> Vec<Vec<usize>> {
+    let mut out: Vec<Vec<usize>> = Vec::new();
+    for (k, it) in observations.iter().enumerate() {
+        match out.last_mut() {
+            Some(last)
+                if observations[last[0]].sequence == it.sequence
+                    && it.time_s - observations[last[0]].time_s < BLOCK_S =>
+            {
+                last.push(k);
+            }
+            _ => out.push(vec![k]),
+        }
+    }
+    out
+}
+
+/// Weighted mean, its time, the sum of weights and of their squares.
+fn mean(observations: &[Observation], frames: &[usize]) -> (Component, f64, f64, f64) {
+    let mut out = [0.0; COMPONENTS];
+    let (mut time, mut sum, mut squares) = (0.0, 0.0, 0.0);
+    for &k in frames {
+        let it = &observations[k];
+        sum += it.weight;
+        squares += it.weight * it.weight;
+        time += it.weight * it.time_s;
+        for (o, h) in out.iter_mut().zip(it.harmonics_mas) {
+            *o += it.weight * h;
+        }
+    }
+    (out.map(|it| it / sum), time / sum, sum, squares)
+}
+
+/// Each frame's deviation from its group's mean, scaled by the root of its weight so that all frames
+/// have the scatter of a frame of weight one.
+fn residuals(observations: &[Observation], groups: &[Vec<usize>]) -> Vec<Component> {
+    let mut out = vec![[0.0; COMPONENTS]; observations.len()];
+    for frames in groups {
+        let (mean, ..) = mean(observations, frames);
+        for &k in frames {
+            let it = &observations[k];
+            out[k] = std::array::from_fn(|c| it.weight * (it.harmonics_mas[c] - mean[c]));
+        }
+    }
+    out
+}
+
+/// Weighted scatter per group and component such that `scatter * sum w^2 / (sum w)^2` is the variance
+/// of the mean of independent frames.
+fn scatter(
+    observations: &[Observation],
+    groups: &[Vec<usize>],
+    residuals: &[Component],
+) -> Vec<Component> {
+    let pair = |c: usize| -> [usize; 2] {
+        match c {
+            0 => [0, 0],
+            c if c % 2 == 1 => [c, c + 1],
+            c => [c - 1, c],
+        }
+    };
+    let own: Vec<(Component, f64)> = groups
+        .iter()
+        .map(|frames| {
+            let n = frames.len() as f64;
+            let squares: f64 = frames.iter().map(|&k| observations[k].weight.powi(2)).sum();
+            let dof = (n - 1.0).max(0.0);
+            let value = std::array::from_fn(|c| {
+                if dof == 0.0 {
+                    return 0.0;
+                }
+                let [a, b] = pair(c);
+                let sum: f64 = frames
+                    .iter()
+                    .map(|&k| 0.5 * (residuals[k][a].powi(2) + residuals[k][b].powi(2)))
+                    .sum();
+                sum / squares * n / dof
+            });
+            (value, dof)
+        })
+        .collect();
+    let total: f64 = own.iter().map(|it| it.1).sum();
+    let pooled: Component =
+        std::array::from_fn(|c| own.iter().map(|it| it.1 * it.0[c]).sum::<f64>() / total.max(1.0));
+    own.iter()
+        .map(|(value, dof)| {
+            std::array::from_fn(|c| (PRIOR_DOF * pooled[c] + dof * value[c]) / (PRIOR_DOF + dof))
+        })
+        .collect()
+}
+
+/// The factor by which correlation in time inflates the variance of a mean, and the batches' degrees
+/// of freedom.
+fn correlation_factor(
+    observations: &[Observation],
+    groups: &[Vec<usize>],
+    residuals: &[Component],
+    m: usize,
+) -> (f64, f64) {
+    let components: Vec<usize> = (0..COMPONENTS).filter(|&c| HARMONIC[c] == m).collect();
+    let step = typical_step(observations, groups);
+    let lags = groups.iter().map(Vec::len).max().unwrap_or(0).min(200);
+    let mut sum = vec![0.0; lags.max(1)];
+    let mut frames_at_zero = 0.0;
+    let mut zero = 0.0;
+    for frames in groups.iter().filter(|it| it.len() >= 8) {
+        for (i, &a) in frames.iter().enumerate() {
+            for &c in &components {
+                zero += residuals[a][c].powi(2);
+            }
+            frames_at_zero += 1.0;
+            for &b in &frames[i + 1..] {
+                let lag =
+                    ((observations[b].time_s - observations[a].time_s) / step).round() as usize;
+                if lag >= lags {
+                    break;
+                }
+                for &c in &components {
+                    sum[lag] += residuals[a][c] * residuals[b][c];
+                }
+            }
+        }
+    }
+    if zero == 0.0 || frames_at_zero < 16.0 {
+        return (1.0, 0.0);
+    }
+    // Biased autocorrelation, as Geyer's sequence asks; the group means taken out cost 1/n at each lag.
+    let groups_used = groups.iter().filter(|it| it.len() >= 8).count() as f64;
+    let bias = groups_used / frames_at_zero;
+    let rho = |k: usize| sum.get(k).map_or(0.0, |it| it / zero + bias);
+    let mut sequence = 1.0 + 2.0 * rho(1).max(0.0);
+    let mut k = 2;
+    let mut smallest = f64::INFINITY;
+    while k + 1 < lags {
+        let pair = rho(k) + rho(k + 1);
+        if pair <= 2.0 / frames_at_zero.sqrt() * 0.5 {
+            break;
+        }
+        smallest = if pair < smallest { pair } else { smallest };
+        sequence += 2.0 * smallest;
+        k += 2;
+    }
+    let (batch, dof) = batch_factor(groups, residuals, &components, sequence);
+    let surely = 1.0 + 2.0 / dof.max(1.0).sqrt();
+    let larger = if batch > surely && batch > sequence {
+        batch
+    } else {
+        sequence
+    };
+    (if larger > 1.0 { larger } else { 1.0 }, dof)
+}
+
+/// Median spacing of neighbouring frames, seconds.
+fn typical_step(observations: &[Observation], groups: &[Vec<usize>]) -> f64 {
+    let mut steps: Vec<f64> = groups
+        .iter()
+        .flat_map(|frames| frames.windows(2))
+        .map(|it| observations[it[1]].time_s - observations[it[0]].time_s)
+        .filter(|it| *it > 0.0)
+        .collect();
+    steps.sort_by(f64::total_cmp);
+    steps.get(steps.len() / 2).copied().unwrap_or(1.0)
+}
+
+/// Variance of batch means over what independent frames would give, and its degrees of freedom.
+fn batch_factor(
+    groups: &[Vec<usize>],
+    residuals: &[Component],
+    components: &[usize],
+    sequence: f64,
+) -> (f64, f64) {
+    let length = ((50.0 * sequence) as usize).clamp(10, 100);
+    let (mut between, mut within, mut dof, mut count) = (0.0, 0.0, 0.0, 0.0);
+    for frames in groups {
+        let batches = frames.len() / length;
+        if batches < 2 {
+            continue;
+        }
+        let size = frames.len() / batches;
+        for &c in components {
+            let sums: Vec<f64> = frames
+                .chunks_exact(size)
+                .take(batches)
+                .map(|it| it.iter().map(|&k| residuals[k][c]).sum::<f64>())
+                .collect();
+            let mean = sums.iter().sum::<f64>() / batches as f64;
+            between += sums.iter().map(|it| (it - mean).powi(2)).sum::<f64>() / size as f64;
+            dof += batches as f64 - 1.0;
+            within += frames.iter().map(|&k| residuals[k][c].powi(2)).sum::<f64>();
+            count += frames.len() as f64 - 1.0;
+        }
+    }
+    if dof < 4.0 {
+        (1.0, dof)
+    } else {
+        ((between / dof) / (within / count), dof)
+    }
+}
