@@ -60,7 +60,7 @@ pub fn displacement(
         let centre = (half + dx, half + dy);
         let frame = annulus.synthetic(
             centre,
-            size,
+            (size, size),
             extraction.model_arcsec,
             extraction.model_slope,
             |s, x| LEVEL_ADU * truth.value(s, truth_blur, x),

@@ -170,6 +170,7 @@ mod tests {
                 blur: 2.0,
                 blur_sigma: 0.1,
                 gain_adu: gain(s),
+                background_adu: 0.0,
                 misfit: 1.0 + 0.1 * ((s * 7919) % 13) as f64 / 13.0,
                 flag: Flag::Good,
             })

@@ -112,12 +112,12 @@ impl Annulus {
     pub fn synthetic(
         &self,
         centre_px: (f64, f64),
-        size_px: usize,
+        (height, width): (usize, usize),
         model_arcsec: &[f64],
         model_slope: &[f64],
         value: impl Fn(usize, f64) -> f64,
     ) -> Array2<f32> {
-        let mut out = Array2::zeros((size_px, size_px));
+        let mut out = Array2::zeros((height, width));
         let (whole_x, whole_y) = (centre_px.0.round(), centre_px.1.round());
         let (ex, ey) = (centre_px.0 - whole_x, centre_px.1 - whole_y);
         for (s, offsets) in self.offsets.iter().enumerate() {
@@ -131,7 +131,7 @@ impl Annulus {
                     whole_x as i64 + i64::from(dx),
                     whole_y as i64 + i64::from(dy),
                 );
-                if px >= 0 && py >= 0 && px < size_px as i64 && py < size_px as i64 {
+                if px >= 0 && py >= 0 && px < width as i64 && py < height as i64 {
                     out[[py as usize, px as usize]] = value(s, x) as f32;
                 }
             }

@@ -144,6 +144,8 @@ pub struct SectorLimb {
     pub blur_sigma: f64,
     /// Gain: disk centre of the template, ADU.
     pub gain_adu: f64,
+    /// Background at the limb, ADU.
+    pub background_adu: f64,
     /// Mean square misfit over its expectation.
     pub misfit: f64,
     /// Whether it can be used.
@@ -281,6 +283,7 @@ fn finished(
             blur: fit.blur,
             blur_sigma: fit.blur_sigma,
             gain_adu: fit.gain_adu,
+            background_adu: fit.background_adu,
             misfit: fit.misfit,
             flag: fit.flag,
         })

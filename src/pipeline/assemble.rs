@@ -295,7 +295,7 @@ fn by_stack(p: &Parts<'_>, by_frame: &ShapeQuantity) -> ByStack {
                 (Some(a), Some(b), Some(sigma)) if sigma > 0.0 => Some((a - b) / sigma),
                 _ => None,
             };
-            let stacks = p.stacks.by_sequence.iter().flatten().count();
+            let stacks = p.stacks.count();
             ByStack {
                 oblateness,
                 radius,
@@ -1015,14 +1015,14 @@ fn limb_trace(p: &Parts<'_>) -> LimbTrace {
 /// Largest side of the preview, px.
 const PREVIEW_PX: usize = 512;
 
-/// The stack reduced by whole pixels, north up in the first row, disk centre one.
+/// The stack reduced by whole pixels, row 0 the southern edge, disk centre one.
 fn preview(stack: &Stack, first: &MeasuredSequence) -> (Option<Array2<f32>>, f64) {
     let n = stack.size();
     let by = n.div_ceil(PREVIEW_PX);
     let side = n / by;
     let centre = stack.image[[n / 2, n / 2]];
     let out = Array2::from_shape_fn((side, side), |(row, column)| {
-        let y0 = (side - 1 - row) * by;
+        let y0 = row * by;
         let x0 = column * by;
         let block = stack.image.slice(ndarray::s![y0..y0 + by, x0..x0 + by]);
         let mean = block.iter().filter(|it| it.is_finite()).sum::<f64>() / (by * by) as f64;

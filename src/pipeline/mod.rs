@@ -85,7 +85,7 @@ pub fn reduce(
     let known = solve::known(session, &measured);
     let shape = solve::shape(&selected, &known, &model)?;
     let stacks = if options.stack {
-        stacking::combine(&measured, &selected, &shape.kept, progress)?
+        stacking::combine(&measured, &limbs, &selected, &shape.kept, progress)?
     } else {
         stacking::Stacks::none()
     };

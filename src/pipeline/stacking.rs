@@ -2,18 +2,20 @@
 
 use super::Error;
 use super::Progress;
+use super::correct::CorrectedSequence;
 use super::limb_model::LimbModel;
-use super::measure::{MeasuredSequence, Setup};
+use super::measure::{MeasuredFrame, MeasuredSequence, Setup, predicted};
 use super::solve::{Selected, Shape};
-use crate::calibrate::{Calibration, Detector};
+use crate::calibrate::{self, Calibration, Detector};
 use crate::frames::Reader;
+use crate::limb::blemish;
 use crate::limb::geometry::Annulus;
 use crate::limb::harmonics::Projector;
 use crate::limb::template::EdgeTable;
 use crate::limb::{self, Disk, Extraction, Flag};
 use crate::shape::{self, Block, COMPONENTS, Fit, Known, Observation, REFERENCE_RADIUS_MAS};
 use crate::sky::Parity;
-use crate::stack::{FrameOptics, Stack};
+use crate::stack::{Placed, Stack};
 use crate::units::{ARCSEC_RAD, MAS_RAD};
 use ndarray::Array2;
 use std::f64::consts::{FRAC_PI_2, TAU};
@@ -22,10 +24,24 @@ use std::f64::consts::{FRAC_PI_2, TAU};
 #[derive(Clone, Debug)]
 pub struct Stacks {
     /// By position among the measured sequences.
-    pub by_sequence: Vec<Option<Stack>>,
+    by_sequence: Vec<Option<SequenceStack>>,
     /// All of them.
     pub whole: Option<Stack>,
 }
+
+/// The stack of one sequence and its twin.
+#[derive(Clone, Debug)]
+struct SequenceStack {
+    stack: Stack,
+    /// Noise-free frames of the template with the limbs that some of the frames had, stacked the same
+    /// way: what it shows beyond those limbs' mean is what stacking does.
+    twin: Stack,
+    /// Those limbs' mean harmonics, mas at 1 AU.
+    twin_mean_mas: [f64; COMPONENTS],
+}
+
+/// Frames of a sequence that go to its twin, at the most.
+const TWIN_FRAMES: usize = 16;
 
 impl Stacks {
     /// No stack was asked for.
@@ -34,6 +50,11 @@ impl Stacks {
             by_sequence: Vec::new(),
             whole: None,
         }
+    }
+
+    /// How many sequences were stacked.
+    pub fn count(&self) -> usize {
+        self.by_sequence.iter().flatten().count()
     }
 }
 
@@ -44,6 +65,7 @@ impl Stacks {
 /// When a frame that was read once cannot be read again.
 pub fn combine(
     measured: &[MeasuredSequence],
+    limbs: &[CorrectedSequence],
     selected: &Selected,
     kept: &[bool],
     progress: &dyn Progress,
@@ -52,57 +74,158 @@ pub fn combine(
         .iter()
         .map(apparent_radius_arcsec)
         .fold(0.0, |a: f64, b| if b > a { b } else { a });
-    let scale = measured[0].setup.scale_arcsec_px;
-    let mut by_sequence: Vec<Option<Stack>> = vec![None; measured.len()];
-    progress.stage("stack", selected.observations.len() as u64);
-    let mut raw = Array2::zeros((0, 0));
-    let mut reader = Reader::new();
-    let mut at = None;
-    let chosen = selected
-        .observations
-        .iter()
-        .zip(&selected.origin)
-        .zip(kept)
-        .filter(|it| *it.1);
-    for ((observation, &(position, k)), _) in chosen {
-        progress.tick();
-        let sequence = &measured[position];
-        let frame = &sequence.frames[k];
-        if at != Some(position) {
-            (at, reader) = (Some(position), Reader::new());
-        }
-        reader.read(&sequence.list, frame.source, &mut raw)?;
-        let optics = FrameOptics {
-            moment: &frame.moment,
-            plate: sequence.setup.plate,
-            scale_arcsec_px: sequence.setup.scale_arcsec_px,
-            calibration: &sequence.setup.calibration,
-            detector: sequence.setup.detector,
-        };
-        by_sequence[position]
-            .get_or_insert_with(|| Stack::new(radius_arcsec, scale))
-            .add(
-                raw.view(),
-                frame.limb.centre_px,
-                observation.weight,
-                &optics,
-            );
-    }
+    progress.stage("stack", kept.iter().filter(|it| **it).count() as u64);
     let mut whole: Option<Stack> = None;
-    for it in by_sequence.iter().flatten() {
-        match &mut whole {
-            Some(sum) => sum.merge(it),
-            None => whole = Some(it.clone()),
+    let mut by_sequence = Vec::new();
+    for (position, sequence) in measured.iter().enumerate() {
+        let chosen: Vec<usize> = (0..kept.len())
+            .filter(|&k| kept[k] && selected.origin[k].0 == position)
+            .collect();
+        if chosen.is_empty() {
+            by_sequence.push(None);
+            continue;
         }
+        let empty = || Stack::new(radius_arcsec, sequence.setup.scale_arcsec_px);
+        let stack = of_frames(
+            sequence,
+            &limbs[position],
+            selected,
+            &chosen,
+            empty(),
+            progress,
+        )?;
+        match &mut whole {
+            Some(sum) => sum.merge(&stack),
+            None => whole = Some(stack.clone()),
+        }
+        let every = chosen.len().div_ceil(TWIN_FRAMES);
+        let some: Vec<usize> = chosen.iter().copied().step_by(every).collect();
+        let (twin, twin_mean_mas) = twin(sequence, &limbs[position], selected, &some, empty());
+        by_sequence.push(Some(SequenceStack {
+            stack: stack.finished(),
+            twin: twin.finished(),
+            twin_mean_mas,
+        }));
     }
-    let by_sequence = by_sequence
-        .into_iter()
-        .map(|it| it.map(|it| it.finished()))
-        .collect();
     Ok(Stacks {
         by_sequence,
         whole: whole.map(|it| it.finished()),
     })
+}
+
+fn of_frames(
+    sequence: &MeasuredSequence,
+    limbs: &CorrectedSequence,
+    selected: &Selected,
+    chosen: &[usize],
+    mut stack: Stack,
+    progress: &dyn Progress,
+) -> Result<Stack, Error> {
+    let setup = &sequence.setup;
+    let mut reader = Reader::new();
+    let mut raw = Array2::zeros((0, 0));
+    let mut calibrated = Array2::zeros((0, 0));
+    for &k in chosen {
+        progress.tick();
+        let frame = &sequence.frames[limbs.frames[selected.origin[k].1].measured];
+        reader.read(&sequence.list, frame.source, &mut raw)?;
+        calibrate::apply(
+            &raw,
+            &setup.calibration,
+            setup.detector.saturation_adu,
+            &mut calibrated,
+        )?;
+        let weight = selected.observations[k].weight;
+        stack.add(
+            calibrated.view(),
+            frame.limb.centre_px,
+            weight,
+            &placed(sequence, frame),
+        );
+    }
+    Ok(stack)
+}
+
+fn placed<'a>(sequence: &'a MeasuredSequence, frame: &'a MeasuredFrame) -> Placed<'a> {
+    Placed {
+        moment: &frame.moment,
+        plate: sequence.setup.plate,
+        scale_arcsec_px: sequence.setup.scale_arcsec_px,
+        flat_inverse: sequence.setup.calibration.flat_inverse(),
+        detector: sequence.setup.detector,
+    }
+}
+
+/// The twin of a sequence's stack from some of its frames, and their mean harmonics.
+fn twin(
+    sequence: &MeasuredSequence,
+    limbs: &CorrectedSequence,
+    selected: &Selected,
+    some: &[usize],
+    mut stack: Stack,
+) -> (Stack, [f64; COMPONENTS]) {
+    let setup = &sequence.setup;
+    // Room about the window for the kernel's reach.
+    let reach = 4.0 * setup.scale_arcsec_px;
+    let (radii, slopes) = predicted(setup, &sequence.middle);
+    let (low, high) = bounds(&radii);
+    let wide = Annulus::new(
+        setup.annulus.sectors(),
+        setup.annulus.angle_rad(0),
+        setup.scale_arcsec_px,
+        (low - 3.0, high + 3.0),
+        (setup.window_arcsec.0 + reach, setup.window_arcsec.1 + reach),
+    );
+    let (mut mean, mut total) = ([0.0; COMPONENTS], 0.0);
+    for &k in some {
+        let frame = &sequence.frames[limbs.frames[selected.origin[k].1].measured];
+        let observation = &selected.observations[k];
+        let seen: Vec<f64> = frame
+            .limb
+            .sectors
+            .iter()
+            .zip(&radii)
+            .map(|(it, &model)| {
+                if it.flag == Flag::Good {
+                    it.radius_arcsec
+                } else {
+                    model
+                }
+            })
+            .collect();
+        let blur = frame.limb.mean_blur();
+        // The same brightness as the frame's, so that the stack's fit weighs its pixels the same way.
+        let good = || frame.limb.sectors.iter().filter(|it| it.flag == Flag::Good);
+        let level = blemish::median(good().map(|it| it.gain_adu));
+        let sky = blemish::median(good().map(|it| it.background_adu));
+        let size = (sequence.list.height, sequence.list.width);
+        let image = wide.synthetic(frame.limb.centre_px, size, &seen, &slopes, |s, x| {
+            level * setup.table.value(s, blur, x) + sky
+        });
+        let weight = observation.weight;
+        stack.add(
+            image.view(),
+            frame.limb.centre_px,
+            weight,
+            &placed(sequence, frame),
+        );
+        total += weight;
+        for (sum, it) in mean.iter_mut().zip(observation.harmonics_mas) {
+            *sum += weight * it;
+        }
+    }
+    (stack, mean.map(|it| it / total))
+}
+
+fn bounds(values: &[f64]) -> (f64, f64) {
+    values
+        .iter()
+        .fold((f64::INFINITY, f64::NEG_INFINITY), |(low, high), &it| {
+            (
+                if it < low { it } else { low },
+                if it > high { it } else { high },
+            )
+        })
 }
 
 /// Apparent radius of a sequence's Sun without the air, arcsec.
@@ -121,10 +244,15 @@ pub fn shape(
     let mut observations = Vec::new();
     let mut blocks = Vec::new();
     for (position, stack) in stacks.by_sequence.iter().enumerate() {
-        let Some(stack) = stack else { continue };
+        let Some(it) = stack else { continue };
         let sequence = &measured[position];
-        let (harmonics, noise) = harmonics(stack, sequence, by_frame, model)
-            .map_err(|it| format!("stack of sequence {}: {it}", sequence.index + 1))?;
+        let named = |why: String| format!("stack of sequence {}: {why}", sequence.index + 1);
+        let (mut harmonics, noise) =
+            limb_of(&it.stack, sequence, by_frame, model).map_err(named)?;
+        let (twin, _) = limb_of(&it.twin, sequence, by_frame, model).map_err(named)?;
+        for c in 0..COMPONENTS {
+            harmonics[c] -= twin[c] - it.twin_mean_mas[c];
+        }
         let Some((mut observation, variance)) = mean_of(sequence.index, by_frame) else {
             continue;
         };
@@ -190,7 +318,7 @@ fn mean_of(sequence: usize, by_frame: &Shape) -> Option<(Observation, [f64; COMP
 }
 
 /// Harmonics of one stack's limb on the detector, mas at 1 AU, and their photon noise.
-fn harmonics(
+fn limb_of(
     stack: &Stack,
     sequence: &MeasuredSequence,
     by_frame: &Shape,
@@ -252,7 +380,14 @@ fn harmonics(
     };
     let image = stack.image.mapv(|it| it as f32);
     let centre = stack.centre_px();
-    let level = f64::from(image[[n / 2, n / 2]]);
+    // The twin is dark inside its annulus: the brightest pixel serves both.
+    let level = f64::from(
+        image
+            .iter()
+            .copied()
+            .filter(|it| it.is_finite())
+            .fold(0.0_f32, |a, b| if b > a { b } else { a }),
+    );
     let start = Disk {
         x_px: centre,
         y_px: centre,

@@ -569,7 +569,8 @@ pub struct Traces {
     pub frames: Vec<FrameTrace>,
     /// The mean limb.
     pub limb: LimbTrace,
-    /// The stack reduced to at most 512 pixels a side, solar north up, 0 to 1 of the disk centre.
+    /// The stack reduced to at most 512 pixels a side, `[y, x]` with row 0 the southern edge and
+    /// solar west to the right, in units of disk centre.
     pub preview: Option<ndarray::Array2<f32>>,
     /// Radius of the disk in the preview, pixels.
     pub preview_radius_px: f64,

@@ -18,8 +18,8 @@
 //!
 //! # Valid for
 //!
-//! Zenith distances to 80 degrees (flat layers: above 75 the air mass is overestimated); outer scales
-//! above 20 r0. Wavelengths 300 to 2500 nm.
+//! Zenith distances to 80 degrees (flat layers: above 75 the air mass is overestimated); outer
+//! scales above 20 r0. Wavelengths 300 to 2500 nm.
 //!
 //! # Accuracy
 //!
@@ -29,7 +29,8 @@
 //! # Source
 //!
 //! D. L. Fried, J. Opt. Soc. Am. 56, 1372 (1966); F. Roddier, Progress in Optics 19, 281 (1981) for
-//! `tau0`; A. Tokovinin, Publ. Astron. Soc. Pacific 114, 1156 (2002) for the outer scale (from memory).
+//! `tau0`; A. Tokovinin, Publ. Astron. Soc. Pacific 114, 1156 (2002) for the outer scale (from
+//! memory).
 
 use super::error::{SeeingError, checked};
 use crate::units::{ARCSEC_RAD, DEG_RAD};
@@ -75,7 +76,8 @@ fn cosine(zenith_rad: f64) -> Result<f64, SeeingError> {
 ///
 /// # Errors
 ///
-/// [`SeeingError::OutOfRange`] for an outer scale below 20 r0 or a wavelength outside 300 to 2500 nm.
+/// [`SeeingError::OutOfRange`] for an outer scale below 20 r0 or a wavelength outside 300 to 2500
+/// nm.
 pub fn fwhm_arcsec(
     r0_m: f64,
     wavelength_nm: f64,

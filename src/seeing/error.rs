@@ -58,7 +58,8 @@ pub enum SeeingError {
     },
     /// No motion is left above the noise.
     #[error(
-        "the limb moves no more than the noise: {found_mas2} mas^2 in m >= 2 against {noise_mas2} mas^2"
+        "the limb moves no more than the noise: {found_mas2} mas^2 in m >= 2 against \
+         {noise_mas2} mas^2"
     )]
     NoMotion {
         /// Power summed over the harmonics.

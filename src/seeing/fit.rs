@@ -8,10 +8,10 @@
 //! U    = (500 nm)^2 in mas^2,   J_i = r0_i^(-5/3) at the zenith, 500 nm
 //! ```
 //!
-//! The parameters are the logarithms of `J_i`, `h_i`, `n_x` and `s_k`; each has a normal prior, the total
-//! strength none. The posterior's maximum is found by scoring (Newton's method with the expected
-//! curvature), and the posterior is taken as normal about it (Laplace), which also gives the evidence for
-//! this outer scale.
+//! The parameters are the logarithms of `J_i`, `h_i`, `n_x` and `s_k`; each has a normal prior, the
+//! total strength none. The posterior's maximum is found by scoring (Newton's method with the
+//! expected curvature), and the posterior is taken as normal about it (Laplace), which also gives
+//! the evidence for this outer scale.
 //!
 //! | symbol | meaning | unit |
 //! |--------|---------|------|
@@ -175,7 +175,8 @@ impl Problem<'_> {
             if decrement < AT_REST {
                 return Ok(Some(here.solution(outer_scale_index, at, &factors)));
             }
-            // Where the true curvature exceeds the expected one the full step overshoots and comes back.
+            // Where the true curvature exceeds the expected one the full step overshoots and comes
+            // back.
             if step.dot(&last_step) < 0.0 {
                 step *= 0.5;
             }
@@ -197,7 +198,8 @@ impl Problem<'_> {
                 step *= 0.4;
                 tries += 1;
                 if tries > 12 {
-                    // Interpolated kernels have kinks of 1e-5; no better place can be found near one.
+                    // Interpolated kernels have kinks of 1e-5; no better place can be found near
+                    // one.
                     let near = decrement < NEARLY_AT_REST;
                     return Ok(near.then(|| here.solution(outer_scale_index, at, &factors)));
                 }
@@ -222,7 +224,12 @@ impl Problem<'_> {
         let (layers, size) = (self.layers(), self.parameters());
         let mut gradient = DVector::zeros(size);
         let mut curvature = DMatrix::zeros(size, size);
-        let mut objective = self.add_prior(at, &mut gradient, &mut curvature);
+        let mut objective = self.prior.add_to(at, &mut gradient, &mut curvature);
+        let (extra_at, weight) = (self.extra_noise_at(), EXTRA_NOISE_SIGMA_LN.powi(-2));
+        let apart = at[extra_at] - self.extra_noise_mas2.ln();
+        objective -= 0.5 * weight * apart * apart;
+        gradient[extra_at] -= weight * apart;
+        curvature[(extra_at, extra_at)] += weight;
         let last = self.orders.last().map_or(0, |m| m + 1);
         let mut kernels = vec![vec![0.0; last]; layers];
         let mut slopes = kernels.clone();
@@ -278,60 +285,6 @@ impl Problem<'_> {
             curvature,
             model_mas2,
         })
-    }
-
-    /// Adds the prior; returns its logarithm.
-    fn add_prior(
-        &self,
-        at: &DVector<f64>,
-        gradient: &mut DVector<f64>,
-        curvature: &mut DMatrix<f64>,
-    ) -> f64 {
-        let layers = self.layers();
-        let mut sum = 0.0;
-        let mut normal = |j: usize, mean: f64, sigma: f64| {
-            let (weight, off) = (sigma.powi(-2), at[j] - mean);
-            sum -= 0.5 * weight * off * off;
-            gradient[j] -= weight * off;
-            curvature[(j, j)] += weight;
-        };
-        for (i, layer) in self.prior.layers.iter().enumerate() {
-            normal(layers + i, layer.height_m.ln(), layer.height_sigma_ln);
-        }
-        normal(
-            self.extra_noise_at(),
-            self.extra_noise_mas2.ln(),
-            EXTRA_NOISE_SIGMA_LN,
-        );
-        for k in 0..self.sequences.len() {
-            normal(self.sequence_at(k), 0.0, self.prior.sequence_sigma_ln);
-        }
-        // Strengths: normal about the shares, with the common scale integrated out:
-        // precision W - W 1 1' W / (1' W 1).
-        let weights: Vec<f64> = self
-            .prior
-            .layers
-            .iter()
-            .map(|it| it.share_sigma_ln.powi(-2))
-            .collect();
-        let total: f64 = weights.iter().sum();
-        let off: Vec<f64> = self
-            .prior
-            .layers
-            .iter()
-            .enumerate()
-            .map(|(i, it)| at[i] - it.share.ln())
-            .collect();
-        let common = weights.iter().zip(&off).map(|(w, d)| w * d).sum::<f64>() / total;
-        for i in 0..layers {
-            sum -= 0.5 * weights[i] * off[i] * (off[i] - common);
-            gradient[i] -= weights[i] * (off[i] - common);
-            for j in 0..=i {
-                curvature[(i, j)] -= weights[i] * weights[j] / total;
-            }
-            curvature[(i, i)] += weights[i];
-        }
-        sum
     }
 }
 

@@ -7,14 +7,14 @@
 //! T_m     = sum_i Var_i,m (T_corr V)_i,m / V  /  sum_i Var_i,m
 //! ```
 //!
-//! Symbols as in `fit` and `turbulence::harmonic_correlation_length_m`. The mean of frames over a time
-//! `T` much longer than `T_m` keeps the variance `Var a_m T_m / T`, or that divided by the number of
-//! frames, whichever is larger.
+//! Symbols as in `fit` and `turbulence::harmonic_correlation_length_m`. The mean of frames over a
+//! time `T` much longer than `T_m` keeps the variance `Var a_m T_m / T`, or that divided by the
+//! number of frames, whichever is larger.
 //!
 //! # Valid for
 //!
-//! Frozen flow for the correlation time: a lower bound, as slow distortion near the telescope is not in
-//! the model.
+//! Frozen flow for the correlation time: a lower bound, as slow distortion near the telescope is
+//! not in the model.
 //!
 //! # Accuracy
 //!
@@ -125,12 +125,13 @@ fn layer_variance_mas2(
     Ok(out)
 }
 
-/// Correlation time of each harmonic m = 0..=`m_max` for one wind speed in all layers, averaged over the
-/// wind's direction.
+/// Correlation time of each harmonic m = 0..=`m_max` for one wind speed in all layers, averaged
+/// over the wind's direction.
 ///
 /// # Errors
 ///
-/// [`SeeingError`] for a view or profile outside the kernels' range, or a wind outside 0.1 to 100 m/s.
+/// [`SeeingError`] for a view or profile outside the kernels' range, or a wind outside 0.1 to 100
+/// m/s.
 pub fn floor_correlation_time_s(
     profile: &Profile,
     aperture: &Aperture,

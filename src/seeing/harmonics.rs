@@ -8,14 +8,14 @@
 //! q     = [ var_t(Q) - 1/M ] / (1 + 1/M),   Q_t = mean over M harmonics of (a^2 + b^2) / (2 P_m)
 //! ```
 //!
-//! The sequence's mean holds the Sun's and the instrument's shape and is removed. `q` is the relative
-//! variance of the turbulence's strength from frame to frame, which widens the distribution of the
-//! harmonics.
+//! The sequence's mean holds the Sun's and the instrument's shape and is removed. `q` is the
+//! relative variance of the turbulence's strength from frame to frame, which widens the
+//! distribution of the harmonics.
 //!
 //! | symbol | meaning | unit |
 //! |--------|---------|------|
 //! | `a_m`, `b_m` | cosine and sine coefficients of the radial displacement in one frame | mas |
-//! | `N_eff` | effective number of frames for a variance, from the memory of groups of harmonics | - |
+//! | `N_eff` | effective frames for a variance, from the memory of groups of harmonics | - |
 //!
 //! # Valid for
 //!
@@ -77,7 +77,8 @@ const GROUPS: [(usize, usize); 4] = [(0, 1), (2, 4), (5, 10), (11, usize::MAX)];
 ///
 /// # Errors
 ///
-/// [`SeeingError`] for fewer than 8 frames, harmonics that end before m = 6, or inputs of unlike length.
+/// [`SeeingError`] for fewer than 8 frames, harmonics that end before m = 6, or inputs of unlike
+/// length.
 pub fn harmonic_power(
     sequence: usize,
     series: &HarmonicSeries<'_>,

@@ -1,8 +1,9 @@
 //! The state of the air, from what it does to the limb.
 //!
-//! Turbulence moves the limb radially; harmonics m = 2 and above of that motion cannot come from the
-//! telescope's shake, and their power tells Fried's parameter ([`by_motion`]).
+//! Turbulence moves the limb radially; harmonics m = 2 and above of that motion cannot come from
+//! the telescope's shake, and their power tells Fried's parameter ([`by_motion`]).
 
+mod answer;
 mod convert;
 mod effective;
 mod error;
@@ -12,6 +13,7 @@ mod harmonics;
 mod motion;
 mod posterior;
 mod prior;
+mod session;
 
 pub use convert::{
     coherence_time_s, fwhm_arcsec, r0_at_wavelength_m, r0_line_of_sight_m, r0_zenith_m,
@@ -20,7 +22,7 @@ pub use effective::{EffectiveCount, effective_count, effective_count_of_power};
 pub use error::SeeingError;
 pub use floor::{View, floor_correlation_time_s, floor_variance_mas2};
 pub use harmonics::{HarmonicPower, HarmonicSeries, harmonic_power};
-pub use motion::{MotionSeeing, SequenceSeeing, Setup, by_motion};
+pub use motion::{MotionSeeing, PowerRow, SequenceSeeing, Setup, by_motion};
 pub use prior::{LayerPrior, ProfilePrior};
 
 /// One turbulent layer of a profile.

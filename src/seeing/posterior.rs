@@ -4,7 +4,8 @@
 //!
 //! ```text
 //! p(ln r0) = sum_o w_o N(ln r0; mean_o, sigma_o),   w_o ~ prior_o x evidence_o
-//! ln r0_o  = -(3/5) ln [ sum_i J_i  sum_k f_k g_k s_k ],   g_k = 1 at the zenith, sec z_k along the sight
+//! ln r0_o  = -(3/5) ln [ sum_i J_i  sum_k f_k g_k s_k ],   g_k = 1 at the zenith, sec z_k along
+//! the sight
 //! ```
 //!
 //! | symbol | meaning | unit |
@@ -112,8 +113,8 @@ pub(super) fn weights(solutions: &[Solution], outer_scales_m: &[(f64, f64)]) -> 
     raw.iter().map(|it| it / total).collect()
 }
 
-/// `ln sum_i J_i + ln sum_k c_k s_k` of a solution with its standard deviation; `sequence_at` gives the
-/// place of `ln s_k`.
+/// `ln sum_i J_i + ln sum_k c_k s_k` of a solution with its standard deviation; `sequence_at` gives
+/// the place of `ln s_k`.
 pub(super) fn log_strength(
     solution: &Solution,
     layers: usize,

@@ -23,7 +23,7 @@
 //! R. G. Keys, "Cubic convolution interpolation for digital image processing", IEEE Trans. ASSP 29,
 //! 1153 (1981).
 
-use crate::calibrate::{Calibration, Detector};
+use crate::calibrate::{Detector, variance_adu2};
 use crate::refraction::{Moment, Plate};
 use crate::units::ARCSEC_RAD;
 use ndarray::{Array2, ArrayView2};
@@ -75,21 +75,22 @@ impl Stack {
         (self.size() / 2) as f64
     }
 
-    /// Adds one raw frame whose limb is centred at `centre_px`.
+    /// Adds one calibrated frame (ADU, NaN where a pixel is bad) whose limb is centred at `centre_px`.
     pub fn add(
         &mut self,
-        raw: ArrayView2<'_, f32>,
+        frame: ArrayView2<'_, f32>,
         centre_px: (f64, f64),
         weight: f64,
-        frame: &FrameOptics<'_>,
+        placed: &Placed<'_>,
     ) {
         let n = self.size();
         let nodes = n.div_ceil(MESH) + 1;
         let mesh: Vec<(f64, f64)> = (0..nodes * nodes)
             .map(|k| {
-                frame.place_px(
-                    self.offset_arcsec((k % nodes) * MESH),
-                    self.offset_arcsec((k / nodes) * MESH),
+                let (west, north) = ((k % nodes) * MESH, (k / nodes) * MESH);
+                placed.place_px(
+                    self.offset_arcsec(west),
+                    self.offset_arcsec(north),
                     centre_px,
                 )
             })
@@ -99,18 +100,20 @@ impl Stack {
             .and(self.weight.rows_mut())
             .par_for_each(|y, mut image, mut variance, mut total| {
                 let (j, fy) = (y / MESH, (y % MESH) as f64 / MESH as f64);
-                for x in 0..n {
-                    let (i, fx) = (x / MESH, (x % MESH) as f64 / MESH as f64);
-                    let at = |dj: usize, di: usize| mesh[(j + dj) * nodes + i + di];
-                    let (a, b, c, d) = (at(0, 0), at(0, 1), at(1, 0), at(1, 1));
-                    let mix = |p: f64, q: f64, r: f64, s: f64| {
-                        (p * (1.0 - fx) + q * fx) * (1.0 - fy) + (r * (1.0 - fx) + s * fx) * fy
-                    };
-                    let place = (mix(a.0, b.0, c.0, d.0), mix(a.1, b.1, c.1, d.1));
-                    if let Some((value, noise)) = frame.sample(raw, place) {
-                        image[x] += weight * value;
-                        variance[x] += weight * weight * noise;
-                        total[x] += weight;
+                let row = |i: usize| {
+                    let (a, b) = (mesh[j * nodes + i], mesh[(j + 1) * nodes + i]);
+                    (a.0 + fy * (b.0 - a.0), a.1 + fy * (b.1 - a.1))
+                };
+                for i in 0..nodes - 1 {
+                    let (from, to) = (row(i), row(i + 1));
+                    for x in i * MESH..((i + 1) * MESH).min(n) {
+                        let fx = (x % MESH) as f64 / MESH as f64;
+                        let place = (from.0 + fx * (to.0 - from.0), from.1 + fx * (to.1 - from.1));
+                        if let Some((value, noise)) = placed.sample(frame, place) {
+                            image[x] += weight * value;
+                            variance[x] += weight * weight * noise;
+                            total[x] += weight;
+                        }
                     }
                 }
             });
@@ -154,20 +157,20 @@ impl Stack {
 
 /// What places one frame on the grid.
 #[derive(Clone, Copy, Debug)]
-pub struct FrameOptics<'a> {
+pub struct Placed<'a> {
     /// Its moment.
     pub moment: &'a Moment,
     /// The plate.
     pub plate: Plate,
     /// Plate scale, arcsec a pixel.
     pub scale_arcsec_px: f64,
-    /// Dark, flat, bad pixels.
-    pub calibration: &'a Calibration,
-    /// Gain, read noise, saturation.
+    /// Inverse of the flat, for the noise.
+    pub flat_inverse: &'a Array2<f32>,
+    /// Gain, read noise.
     pub detector: Detector,
 }
 
-impl FrameOptics<'_> {
+impl Placed<'_> {
     /// Where the true direction `west`, `north` (solar, arcsec) fell on the frame.
     fn place_px(&self, west_arcsec: f64, north_arcsec: f64, centre_px: (f64, f64)) -> (f64, f64) {
         let radius_rad = (west_arcsec.hypot(north_arcsec) * ARCSEC_RAD).atan();
@@ -183,33 +186,34 @@ impl FrameOptics<'_> {
         )
     }
 
-    /// The calibrated frame at a place between pixels, and its variance.
-    fn sample(&self, raw: ArrayView2<'_, f32>, (x, y): (f64, f64)) -> Option<(f64, f64)> {
-        let (height, width) = raw.dim();
-        let (i, j) = (x.floor(), y.floor());
-        if !(i >= 1.0 && j >= 1.0 && i + 2.0 < width as f64 && j + 2.0 < height as f64) {
+    /// The frame at a place between pixels, and its variance: that of one pixel of this brightness,
+    /// by the squares of the weights.
+    fn sample(&self, frame: ArrayView2<'_, f32>, (x, y): (f64, f64)) -> Option<(f64, f64)> {
+        let (height, width) = frame.dim();
+        if !(x >= 1.0 && y >= 1.0 && x + 2.0 < width as f64 && y + 2.0 < height as f64) {
             return None;
         }
-        let (wx, wy) = (cubic(x - i), cubic(y - j));
-        let (i, j) = (i as usize - 1, j as usize - 1);
-        let (mut value, mut variance) = (0.0, 0.0);
+        let (i, j) = (x as usize, y as usize);
+        let (wx, wy) = (cubic(x - i as f64), cubic(y - j as f64));
+        let mut value = 0.0;
         for (dj, wj) in wy.iter().enumerate() {
-            for (di, wi) in wx.iter().enumerate() {
-                let at = (j + dj, i + di);
-                let pixel = self.calibration.pixel_adu(raw[at], at.0, at.1);
-                if !pixel.is_finite() {
-                    return None;
-                }
-                let w = wi * wj;
-                value += w * f64::from(pixel);
-                variance += w
-                    * w
-                    * self
-                        .calibration
-                        .pixel_variance_adu2(pixel, at.0, at.1, &self.detector);
-            }
+            let row = frame.row(j + dj - 1);
+            let across = wx[0] * f64::from(row[i - 1])
+                + wx[1] * f64::from(row[i])
+                + wx[2] * f64::from(row[i + 1])
+                + wx[3] * f64::from(row[i + 2]);
+            value += wj * across;
         }
-        Some((value, variance))
+        if !value.is_finite() {
+            return None;
+        }
+        let squares = |w: [f64; 4]| w.iter().map(|it| it * it).sum::<f64>();
+        let line = if self.flat_inverse.nrows() == 1 { 0 } else { j };
+        let flat = f64::from(self.flat_inverse[[line, i]]);
+        Some((
+            value,
+            squares(wx) * squares(wy) * variance_adu2(value, flat, &self.detector),
+        ))
     }
 }
 

@@ -46,7 +46,8 @@ impl RingWeights {
         }
     }
 
-    /// Adds `share` times the weights averaged over a cycle about `x`, which must exceed the orders.
+    /// Adds `share` times the weights averaged over a cycle about `x`, which must exceed the
+    /// orders.
     pub(super) fn add_mean(&mut self, x: f64, share: f64, into: &mut [f64]) {
         fill_upward(x, libm::j0(x), libm::j1(x), &mut self.j);
         fill_upward(x, libm::y0(x), libm::y1(x), &mut self.y);

@@ -71,7 +71,8 @@ pub fn finite_exposure(
         .collect())
 }
 
-/// The same factor for the variance of one axis in one direction, averaged over the wind's direction.
+/// The same factor for the variance of one axis in one direction, averaged over the wind's
+/// direction.
 ///
 /// # Errors
 ///

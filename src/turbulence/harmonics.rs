@@ -67,7 +67,8 @@ pub fn harmonic_kernels(
     Ok(rows.swap_remove(0))
 }
 
-/// Correlation time of each harmonic times the wind speed, averaged over the wind's direction, in m.
+/// Correlation time of each harmonic times the wind speed, averaged over the wind's direction, in
+/// m.
 ///
 /// # Errors
 ///

@@ -26,7 +26,8 @@
 use gauss_quad::GaussLegendre;
 use std::{num::NonZeroUsize, sync::OnceLock};
 
-const POINTS: NonZeroUsize = NonZeroUsize::new(16).unwrap();
+/// Sixteen.
+const POINTS: NonZeroUsize = NonZeroUsize::MIN.saturating_add(15);
 
 /// A length over which the integrand oscillates once per cycle of `f x length`.
 #[derive(Clone, Copy, Debug)]

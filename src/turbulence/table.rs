@@ -39,8 +39,8 @@ pub struct KernelTable {
 }
 
 impl KernelTable {
-    /// Tabulates the kernels for ring radii in `range_m`. `drift_m`, wind speed times exposure, takes
-    /// the loss by finite exposure into the kernels; zero leaves it out.
+    /// Tabulates the kernels for ring radii in `range_m`. `drift_m`, wind speed times exposure,
+    /// takes the loss by finite exposure into the kernels; zero leaves it out.
     ///
     /// # Errors
     ///

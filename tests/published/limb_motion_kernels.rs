@@ -1,7 +1,8 @@
-//! Source: D. L. Fried, J. Opt. Soc. Am. 55, 1427 (1965) and Radio Science 10, 71 (1975); R. J. Noll,
-//! J. Opt. Soc. Am. 66, 207 (1976); M. Sarazin and F. Roddier, Astron. Astrophys. 227, 294 (1990);
-//! A. Tokovinin, Publ. Astron. Soc. Pacific 114, 1156 (2002); H. M. Martin, Publ. Astron. Soc. Pacific
-//! 99, 1360 (1987) (all from memory); and tables made by direct quadrature without this program.
+//! Source: D. L. Fried, J. Opt. Soc. Am. 55, 1427 (1965) and Radio Science 10, 71 (1975); R. J.
+//! Noll, J. Opt. Soc. Am. 66, 207 (1976); M. Sarazin and F. Roddier, Astron. Astrophys. 227, 294
+//! (1990); A. Tokovinin, Publ. Astron. Soc. Pacific 114, 1156 (2002); H. M. Martin, Publ. Astron.
+//! Soc. Pacific 99, 1360 (1987) (all from memory); and tables made by direct quadrature without
+//! this program.
 
 use std::f64::consts::PI;
 use truelimb::turbulence::{
@@ -296,7 +297,8 @@ fn finite_exposures_lose_motion() {
                 .unwrap();
         assert!((found - number(row[5])).abs() < 2e-5, "{row:?}: {found}");
     }
-    // Second harmonic, D = 0.1 m, L0 = 25 m; three digits by quadrature, not made with this program.
+    // Second harmonic, D = 0.1 m, L0 = 25 m; three digits by quadrature, not made with this
+    // program.
     for (height_m, drift_m, printed) in [
         (20.0, 0.03, 0.979),
         (20.0, 0.15, 0.738),

@@ -1,6 +1,6 @@
-//! Source: D. L. Fried, J. Opt. Soc. Am. 56, 1372 (1966), for the scaling of r0; A. Tokovinin, Publ.
-//! Astron. Soc. Pacific 114, 1156 (2002), for the outer scale (both from memory); and a table of the width
-//! of the seeing disk from the exact transfer function, not made with this program.
+//! Source: D. L. Fried, J. Opt. Soc. Am. 56, 1372 (1966), for the scaling of r0; A. Tokovinin,
+//! Publ. Astron. Soc. Pacific 114, 1156 (2002), for the outer scale (both from memory); and a table
+//! of the width of the seeing disk from the exact transfer function, not made with this program.
 
 use truelimb::seeing::{
     SeeingError, coherence_time_s, effective_count, effective_count_of_power, fwhm_arcsec,
@@ -91,8 +91,8 @@ fn a_series_with_memory_holds_fewer_independent_frames() {
 
 #[test]
 fn a_gap_in_time_is_no_memory() {
-    // Two runs with memory, an hour apart and in the wrong order: the index would call the last frame of
-    // one and the first of the other neighbours.
+    // Two runs with memory, an hour apart and in the wrong order: the index would call the last
+    // frame of one and the first of the other neighbours.
     let mut rng = ChaCha8Rng::seed_from_u64(4);
     let (mut whole, mut parted) = (0.0, 0.0);
     for _ in 0..40 {
