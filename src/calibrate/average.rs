@@ -11,8 +11,8 @@ pub(super) struct Average {
     planes: usize,
     /// The first plane: sums of differences from it keep their digits.
     first: Array2<f32>,
-    sum: Array2<f64>,
-    squares: Array2<f64>,
+    sum: Array2<f32>,
+    squares: Array2<f32>,
     low: Array2<f32>,
     high: Array2<f32>,
 }
@@ -36,21 +36,18 @@ impl Average {
     /// Adds a plane of the same size.
     pub(super) fn add(&mut self, plane: &ArrayView2<'_, f32>) {
         self.planes += 1;
-        let mut change = plane.to_owned();
-        Zip::from(&mut change)
-            .and(&self.first)
-            .for_each(|it, first| *it -= first);
         Zip::from(&mut self.sum)
             .and(&mut self.squares)
             .and(&mut self.low)
             .and(&mut self.high)
-            .and(&change)
-            .for_each(|sum, squares, low, high, change| {
-                let wide = f64::from(*change);
-                *sum += wide;
-                *squares += wide * wide;
-                *low = low.min(*change);
-                *high = high.max(*change);
+            .and(plane)
+            .and(&self.first)
+            .for_each(|sum, squares, low, high, value, first| {
+                let change = value - first;
+                *sum += change;
+                *squares += change * change;
+                *low = low.min(change);
+                *high = high.max(change);
             });
     }
 
@@ -62,18 +59,15 @@ impl Average {
     /// The mean of each pixel, without its lowest and highest value from four planes on.
     pub(super) fn mean(&self) -> Array2<f32> {
         let (trimmed, count) = if self.planes >= TRIM_FROM {
-            (1.0, self.planes as f64 - 2.0)
+            (1.0, self.planes as f32 - 2.0)
         } else {
-            (0.0, self.planes as f64)
+            (0.0, self.planes as f32)
         };
         Zip::from(&self.first)
             .and(&self.sum)
             .and(&self.low)
             .and(&self.high)
-            .map_collect(|first, sum, low, high| {
-                let kept = sum - trimmed * (f64::from(*low) + f64::from(*high));
-                first + (kept / count) as f32
-            })
+            .map_collect(|first, sum, low, high| first + (sum - trimmed * (low + high)) / count)
     }
 
     /// The scatter of each pixel from plane to plane; `None` for one plane.
@@ -81,14 +75,11 @@ impl Average {
         if self.planes < 2 {
             return None;
         }
-        let count = self.planes as f64;
-        Some(
-            Zip::from(&self.sum)
-                .and(&self.squares)
-                .map_collect(|sum, squares| {
-                    ((squares - sum * sum / count).max(0.0) / (count - 1.0)).sqrt() as f32
-                }),
-        )
+        let count = self.planes as f32;
+        let scatter = |sum: &f32, squares: &f32| {
+            ((squares - sum * sum / count).max(0.0) / (count - 1.0)).sqrt()
+        };
+        Some(Zip::from(&self.sum).and(&self.squares).map_collect(scatter))
     }
 }
 

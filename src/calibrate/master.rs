@@ -1,21 +1,18 @@
-//! Dark and flat from their files, and which pixels are bad.
+//! Dark and flat from their files.
 
 use std::path::{Path, PathBuf};
 
-use ndarray::{Array2, Zip};
+use ndarray::{Array2, ArrayView2, Axis, Zip, s};
 
 use super::average::{Average, quantile};
-use super::{BadCounts, CalibrateError, Calibration, Limits};
+use super::judge::{ROUNDING_SIGMA_ADU, mark_hot, set_flat};
+use super::{CalibrateError, Calibration, Limits};
 use crate::frames::ImageFile;
 
-/// Standard deviations per median absolute deviation, of a Gaussian.
-const SIGMA_PER_MAD: f64 = 1.4826;
-/// Scatter that rounding to whole ADU leaves at least, `1 / sqrt(12)`.
-const ROUNDING_SIGMA_ADU: f64 = 0.288_675;
-/// Side of the square of pixels that tells dead from unlit.
-const BLOCK_PX: usize = 16;
-/// The flat's bright part is judged by this quantile.
-const BRIGHT_QUANTILE: f64 = 0.95;
+/// Files kept open at once.
+const MAX_OPEN: usize = 64;
+/// Rows averaged at once.
+const BAND_ROWS: usize = 32;
 
 /// Reads dark, flat and bad pixels for frames of `width` x `height`.
 ///
@@ -33,13 +30,12 @@ pub fn load(
     saturation_adu: Option<f64>,
     limits: &Limits,
 ) -> Result<Calibration, CalibrateError> {
-    let dark = average("dark", dark_files, (width, Some(height)))?;
-    let listed = bad_pixels
-        .map(|it| read_listed(it, width, height))
-        .transpose()?;
-    // The sums of the dark go before those of the flat come: they are the largest things here.
-    let dark = dark.map(|it| Master::of(&it));
-    let flat = average("flat", flat_files, (width, Some(height)))?.map(|it| Master::of(&it));
+    let dark = average("dark", dark_files, width, height)?;
+    let flat = average("flat", flat_files, width, height)?;
+    let listed = match bad_pixels {
+        Some(path) => Some(read_listed(path, width, height)?),
+        None => None,
+    };
     build(dark, flat, listed, (width, height), saturation_adu, limits)
 }
 
@@ -56,16 +52,16 @@ pub fn load_lines(
     saturation_adu: Option<f64>,
     limits: &Limits,
 ) -> Result<Calibration, CalibrateError> {
-    let dark = average("dark", dark_files, (width, None))?.map(|it| Master::of(&it));
-    let flat = average("flat", flat_files, (width, None))?.map(|it| Master::of(&it));
+    let dark = average_rows("dark", dark_files, width)?;
+    let flat = average_rows("flat", flat_files, width)?;
     build(dark, flat, None, (width, 1), saturation_adu, limits)
 }
 
 /// A mean with its scatter.
-struct Master {
-    mean: Array2<f32>,
-    scatter: Option<Array2<f32>>,
-    planes: usize,
+pub(super) struct Master {
+    pub(super) mean: Array2<f32>,
+    pub(super) scatter: Option<Array2<f32>>,
+    pub(super) planes: usize,
 }
 
 impl Master {
@@ -78,62 +74,130 @@ impl Master {
     }
 
     /// Median standard error of the mean.
-    fn sigma(&self) -> Option<f64> {
+    pub(super) fn sigma(&self) -> Option<f64> {
         let scatter = quantile(self.scatter.as_ref()?, 0.5)?;
         Some(scatter.max(ROUNDING_SIGMA_ADU) / (self.planes as f64).sqrt())
     }
 }
 
-/// Averages all planes, or all rows where no height is given.
+/// Averages all planes of all files; `None` without files.
+///
+/// The sums of a few rows stay in the processor's cache while all planes pass, so the image is
+/// done band by band, unless that would unpack tiles or open files again and again.
 fn average(
     what: &'static str,
     files: &[PathBuf],
-    (width, height): (usize, Option<usize>),
-) -> Result<Option<Average>, CalibrateError> {
-    let mut sums: Option<Average> = None;
+    width: usize,
+    height: usize,
+) -> Result<Option<Master>, CalibrateError> {
+    let wrap = |source| CalibrateError::File { what, source };
+    let is_few = files.len() <= MAX_OPEN;
+    let mut kept = Vec::new();
+    let mut band = if is_few {
+        BAND_ROWS.min(height)
+    } else {
+        height
+    };
+    for path in files {
+        let file = open(what, path, width, Some(height))?;
+        if file.is_compressed() {
+            band = height;
+        }
+        if is_few {
+            kept.push(file);
+        }
+    }
+    let mut master: Option<Master> = None;
+    let mut rows = Array2::zeros((0, 0));
+    for start in (0..height).step_by(band) {
+        let end = height.min(start + band);
+        let mut sums = None;
+        for (index, path) in files.iter().enumerate() {
+            let mut again = None;
+            let file = match kept.get_mut(index) {
+                Some(file) => file,
+                None => again.insert(open(what, path, width, Some(height))?),
+            };
+            for plane in 0..file.planes() {
+                file.read_rows(plane, start, end, &mut rows).map_err(wrap)?;
+                include(&mut sums, &rows.view());
+            }
+        }
+        let Some(part) = sums.map(|it| Master::of(&it)) else {
+            continue;
+        };
+        if band == height {
+            return Ok(Some(part));
+        }
+        let whole = master.get_or_insert_with(|| Master {
+            mean: Array2::zeros((height, width)),
+            scatter: part
+                .scatter
+                .as_ref()
+                .map(|_| Array2::zeros((height, width))),
+            planes: part.planes,
+        });
+        whole.mean.slice_mut(s![start..end, ..]).assign(&part.mean);
+        if let (Some(whole), Some(part)) = (&mut whole.scatter, &part.scatter) {
+            whole.slice_mut(s![start..end, ..]).assign(part);
+        }
+    }
+    Ok(master)
+}
+
+/// Averages all rows of all planes of all files to one line; `None` without files.
+fn average_rows(
+    what: &'static str,
+    files: &[PathBuf],
+    width: usize,
+) -> Result<Option<Master>, CalibrateError> {
+    let wrap = |source| CalibrateError::File { what, source };
+    let mut sums = None;
     let mut plane = Array2::zeros((0, 0));
     for path in files {
-        let wrap = |source| CalibrateError::File { what, source };
-        let mut file = ImageFile::open(path).map_err(wrap)?;
-        let found_height = file.height();
-        if file.width() != width || height.is_some_and(|it| it != found_height) {
-            return Err(CalibrateError::ImageSize {
-                path: path.clone(),
-                what,
-                found_width: file.width(),
-                found_height,
-                width,
-                height: height.unwrap_or(1),
-            });
-        }
+        let mut file = open(what, path, width, None)?;
         for index in 0..file.planes() {
             file.read_plane(index, &mut plane).map_err(wrap)?;
-            let rows_at_once = height.unwrap_or(1);
-            for part in plane.axis_chunks_iter(ndarray::Axis(0), rows_at_once) {
-                match &mut sums {
-                    Some(sums) => sums.add(&part),
-                    None => sums = Some(Average::begin(&part)),
-                }
+            for row in plane.axis_chunks_iter(Axis(0), 1) {
+                include(&mut sums, &row);
             }
         }
     }
-    Ok(sums)
+    Ok(sums.map(|it| Master::of(&it)))
+}
+
+fn include(sums: &mut Option<Average>, plane: &ArrayView2<'_, f32>) {
+    match sums {
+        Some(sums) => sums.add(plane),
+        None => *sums = Some(Average::begin(plane)),
+    }
+}
+
+/// Opens a calibration file and checks its size; any height serves a line detector.
+fn open(
+    what: &'static str,
+    path: &Path,
+    width: usize,
+    height: Option<usize>,
+) -> Result<ImageFile, CalibrateError> {
+    let file = ImageFile::open(path).map_err(|source| CalibrateError::File { what, source })?;
+    if file.width() == width && height.is_none_or(|it| it == file.height()) {
+        return Ok(file);
+    }
+    Err(CalibrateError::ImageSize {
+        path: path.to_owned(),
+        what,
+        found_width: file.width(),
+        found_height: file.height(),
+        width,
+        height: height.unwrap_or(1),
+    })
 }
 
 fn read_listed(path: &Path, width: usize, height: usize) -> Result<Array2<bool>, CalibrateError> {
     const WHAT: &str = "bad pixels";
+    let mut file = open(WHAT, path, width, Some(height))?;
     let wrap = |source| CalibrateError::File { what: WHAT, source };
-    let mut file = ImageFile::open(path).map_err(wrap)?;
-    if (file.width(), file.height()) != (width, height) {
-        return Err(CalibrateError::ImageSize {
-            path: path.to_owned(),
-            what: WHAT,
-            found_width: file.width(),
-            found_height: file.height(),
-            width,
-            height,
-        });
-    }
     let mut map = Array2::zeros((0, 0));
     file.read_plane(0, &mut map).map_err(wrap)?;
     Ok(map.mapv(|it| it != 0.0))
@@ -170,107 +234,15 @@ fn build(
     Ok(it)
 }
 
-fn mark(bad: &mut bool, count: &mut usize) {
-    if !*bad {
-        *bad = true;
-        *count += 1;
-    }
-}
-
-/// Hot: far above the median of the dark, and noisy or short of range. Where neither scatter nor
-/// saturation is known, far above is enough.
-fn mark_hot(it: &mut Calibration, dark: &Master, saturation_adu: Option<f64>, limits: &Limits) {
-    let BadCounts { undefined, hot, .. } = &mut it.counts;
-    let Some(median) = quantile(&dark.mean, 0.5) else {
-        it.bad.iter_mut().for_each(|bad| mark(bad, undefined));
-        return;
-    };
-    let deviations = dark.mean.mapv(|it| (f64::from(it) - median).abs() as f32);
-    let mad = quantile(&deviations, 0.5).unwrap_or(0.0);
-    let far = limits.hot_sigma * (SIGMA_PER_MAD * mad).max(ROUNDING_SIGMA_ADU);
-    let range = saturation_adu.map(|it| limits.hot_range_fraction * (it - median));
-    // The scatter of two values says little.
-    let scatter = dark.scatter.as_ref().filter(|_| dark.planes > 2);
-    let usual = scatter
-        .and_then(|it| quantile(it, 0.5))
-        .unwrap_or(0.0)
-        .max(ROUNDING_SIGMA_ADU);
-    for ((at, bad), value) in it.bad.indexed_iter_mut().zip(&dark.mean) {
-        let above = f64::from(*value) - median;
-        if !above.is_finite() {
-            mark(bad, undefined);
-        } else if above > far {
-            let is_noisy = scatter.map(|it| f64::from(it[at]) > limits.hot_scatter_ratio * usual);
-            let is_short = range.map(|it| above > it);
-            let is_unknown = is_noisy.is_none() && is_short.is_none();
-            if is_unknown || is_noisy == Some(true) || is_short == Some(true) {
-                mark(bad, hot);
-            }
-        }
-    }
-}
-
-/// Scales the flat to median 1 over its lit part and marks the pixels it condemns.
-fn set_flat(
-    it: &mut Calibration,
-    flat: &Master,
-    saturation_adu: Option<f64>,
-    limits: &Limits,
-) -> Result<(), CalibrateError> {
-    let limit = saturation_adu.map_or(f32::INFINITY, |it| it as f32);
-    let light = Zip::from(&flat.mean)
-        .and(&it.dark)
-        .map_collect(|flat, dark| {
-            if *flat >= limit {
-                f32::NAN
-            } else {
-                flat - dark
-            }
-        });
-    let bright = quantile(&light, BRIGHT_QUANTILE).unwrap_or(0.0);
-    let lit_from = (limits.dead_fraction * bright) as f32;
-    let level = quantile(light.iter().filter(|it| **it > lit_from), 0.5).unwrap_or(bright);
-    if level.is_nan() || level <= ROUNDING_SIGMA_ADU {
-        return Err(CalibrateError::NoLight { level_adu: level });
-    }
-    let dead_below = limits.dead_fraction * level;
-    let (height, width) = light.dim();
-    let blocks = Array2::from_shape_fn(
-        (height.div_ceil(BLOCK_PX), width.div_ceil(BLOCK_PX)),
-        |(row, column)| {
-            let (y, x) = (row * BLOCK_PX, column * BLOCK_PX);
-            let (y_end, x_end) = (height.min(y + BLOCK_PX), width.min(x + BLOCK_PX));
-            quantile(light.slice(ndarray::s![y..y_end, x..x_end]), 0.5).unwrap_or(0.0)
-        },
-    );
-    let BadCounts {
-        undefined,
-        dead,
-        unlit,
-        ..
-    } = &mut it.counts;
-    for (((y, x), bad), value) in it.bad.indexed_iter_mut().zip(&light) {
-        let value = f64::from(*value);
-        if !value.is_finite() {
-            mark(bad, undefined);
-        } else if value < dead_below {
-            let is_lit = blocks[[y / BLOCK_PX, x / BLOCK_PX]] >= dead_below;
-            mark(bad, if is_lit { &mut *dead } else { &mut *unlit });
-        }
-    }
-    it.flat_sigma_rel = flat.sigma().map(|it| it / level);
-    it.flat_inverse = light.mapv(|it| (level / f64::from(it)) as f32);
-    Ok(())
-}
-
 #[cfg(test)]
 mod tests {
     use super::*;
-    use crate::calibrate::apply;
+    use crate::calibrate::{BadCounts, apply};
     use crate::frames::{CubeShape, FitsWriter};
     use tempfile::TempDir;
 
-    const SIZE: (usize, usize) = (40, 32);
+    /// Three bands of rows, the last one short.
+    const SIZE: (usize, usize) = (40, 72);
 
     fn write(path: &Path, planes: &[Array2<u16>]) -> PathBuf {
         let (height, width) = planes[0].dim();
@@ -359,7 +331,7 @@ mod tests {
                 let mut plane = flat_plane(index);
                 plane[[5, 5]] += 300;
                 plane[[20, 20]] = 1000; // dead among lit neighbours
-                plane.slice_mut(ndarray::s![16.., ..16]).fill(150); // a corner without light
+                plane.slice_mut(s![16..32, ..16]).fill(150); // a corner without light
                 plane
             })
             .collect();
@@ -413,10 +385,10 @@ mod tests {
     fn another_size_is_refused_and_missing_files_are_named() {
         let folder = TempDir::new().unwrap();
         let path = write(&folder.path().join("dark.fits"), &[dark_plane(0)]);
-        let error = load(&[path], &[], None, (41, 32), None, &Limits::default()).unwrap_err();
+        let error = load(&[path], &[], None, (41, 72), None, &Limits::default()).unwrap_err();
         let text = error.to_string();
         assert!(
-            text.contains("40 x 32 pixels, the frames 41 x 32"),
+            text.contains("40 x 72 pixels, the frames 41 x 72"),
             "{text}"
         );
         let missing = [folder.path().join("none.fits")];
@@ -436,5 +408,27 @@ mod tests {
         let mut out = Array2::zeros((0, 0));
         apply(&raw, &it, None, &mut out).unwrap();
         assert!(out.iter().all(|it| (it / out[[0, 0]] - 1.0).abs() < 1.5e-4));
+    }
+
+    #[test]
+    fn bands_of_rows_give_what_whole_planes_give() {
+        let folder = TempDir::new().unwrap();
+        let (plain, packed) = (folder.path().join("a.fits"), folder.path().join("b.fits"));
+        write(&plain, &(0..5).map(flat_plane).collect::<Vec<_>>());
+        // Compressed files are not read in bands.
+        let shape = CubeShape {
+            width: SIZE.0,
+            height: SIZE.1,
+            planes: 5,
+            compressed: true,
+        };
+        let mut writer = FitsWriter::create(&packed).unwrap();
+        writer.begin_u16(None, shape, &[]).unwrap();
+        for index in 0..5 {
+            writer.plane_u16(&flat_plane(index)).unwrap();
+        }
+        writer.finish().unwrap();
+        let read = |path: PathBuf| load(&[], &[path], None, SIZE, None, &Limits::default());
+        assert_eq!(read(plain).unwrap(), read(packed).unwrap());
     }
 }

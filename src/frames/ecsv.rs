@@ -189,13 +189,13 @@ mod tests {
             Column::new("sigma", Values::Gaps(vec![None, Some(2.5)])).describe("a \"b\": c"),
             Column::new("note", Values::Text(vec!["x,y".into(), "plain".into()])),
         ];
-        let facts = [("seed".to_owned(), Value::Integer(7))];
+        let facts = [("frames".to_owned(), Value::Integer(7))];
         let text = ecsv_text(Path::new("t.ecsv"), &columns, &facts).unwrap();
         let expected = "# %ECSV 1.0\n# ---\n# delimiter: ','\n# datatype:\n\
             # - {name: \"time\", unit: \"s\", datatype: float64, meta: {ucd: \"time.epoch\"}}\n\
             # - {name: \"sigma\", datatype: float64, description: \"a \\\"b\\\": c\"}\n\
             # - {name: \"note\", datatype: string}\n\
-            # meta: !!omap\n# - {\"seed\": 7}\n# schema: astropy-2.0\n\
+            # meta: !!omap\n# - {\"frames\": 7}\n# schema: astropy-2.0\n\
             time,sigma,note\n0.1,,\"x,y\"\n1e-7,2.5,plain\n";
         assert_eq!(text, expected);
     }

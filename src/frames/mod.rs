@@ -4,7 +4,7 @@
 //! | file | what |
 //! |------|------|
 //! | `source`, `survey`, `tiles` | open a path, and nothing but a sound FITS file |
-//! | `image` | one image or cube, read plane by plane |
+//! | `image`, `keywords` | one image or cube, read plane by plane, and its header |
 //! | `time` | when each plane was exposed |
 //! | `sequence` | many files as one list of frames |
 //! | `write`, `card`, `column` | FITS files, whole or not at all |
@@ -21,6 +21,7 @@ mod ecsv;
 mod error;
 mod header;
 mod image;
+mod keywords;
 #[expect(
     unsafe_code,
     reason = "calls the C library; every call checks its status"

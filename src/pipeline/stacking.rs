@@ -271,7 +271,11 @@ pub fn shape(
     if observations.is_empty() {
         return Err("no stack was made".to_owned());
     }
-    shape::fit(&observations, &blocks, known, &by_frame.separability).map_err(|it| it.to_string())
+    let mut fit = shape::fit(&observations, &blocks, known, &by_frame.separability)
+        .map_err(|it| it.to_string())?;
+    // Its random error is that of the frames.
+    fit.degrees = by_frame.fit.degrees;
+    Ok(fit)
 }
 
 /// A sequence's mean observation and the variance of its mean by the frames' route.

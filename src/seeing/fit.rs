@@ -26,8 +26,8 @@
 //!
 //! # Accuracy
 //!
-//! The maximum to 0.01 of its own width. The normal approximation is checked by the pulls in
-//! `tests/published/motion_sessions.rs`.
+//! The maximum to 0.03 of the posterior's own width, 0.1 at worst. The normal approximation is
+//! checked by the pulls in `tests/published/motion_sessions.rs`.
 //!
 //! # Source
 //!
@@ -87,8 +87,10 @@ const EXTRA_NOISE_SIGMA_LN: f64 = 1.5;
 const LONGEST_STEP: f64 = 1.0;
 
 /// Square of the step still to go, in units of the posterior's own width, at which the search ends.
-const AT_REST: f64 = 1e-4;
+const AT_REST: f64 = 5e-4;
 const NEARLY_AT_REST: f64 = 1e-2;
+/// Steps after which nearly at rest is enough.
+const ROUNDS: usize = 60;
 
 struct Evaluation {
     objective: f64,
@@ -166,13 +168,18 @@ impl Problem<'_> {
         let mut at = start;
         let mut here = self.evaluate(outer_scale_index, &at)?;
         let mut last_step = DVector::zeros(at.len());
-        for _ in 0..60 {
+        for round in 0..=ROUNDS {
             let Some(factors) = here.curvature.clone().cholesky() else {
                 return Ok(None);
             };
             let mut step = factors.solve(&here.gradient);
             let decrement = step.dot(&here.gradient);
-            if decrement < AT_REST {
+            let enough = if round < ROUNDS {
+                AT_REST
+            } else {
+                NEARLY_AT_REST
+            };
+            if decrement < enough {
                 return Ok(Some(here.solution(outer_scale_index, at, &factors)));
             }
             // Where the true curvature exceeds the expected one the full step overshoots and comes

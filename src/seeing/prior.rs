@@ -2,22 +2,22 @@
 //!
 //! # Model
 //!
-//! Four layers stand for the profile. Each has a height and a strength whose logarithms are
+//! Five layers stand for the profile. Each has a height and a strength whose logarithms are
 //! normally distributed; the total strength is free.
 //!
 //! ```text
-//! C_n^2 ~ h^(-1.15) from 4 m to 3.5 km,  a tenth of all turbulence above
+//! C_n^2 ~ h^(-1.05) from 4 m to 3.5 km, a tenth of all turbulence above
 //! layer            heights it stands for     ln h: median, sigma      share   sigma of ln
-//! surface                8 ..    40 m            18 m, 0.5             0.40      0.7
-//! boundary              40 ..   700 m           170 m, 0.8             0.36      0.7
-//! inversion            700 ..  3500 m          1600 m, 0.5             0.14      0.8
+//! ground                 4 ..    15 m             8 m, 0.4             0.20      0.7
+//! surface               15 ..    60 m            30 m, 0.4             0.20      0.7
+//! boundary              60 ..   600 m           190 m, 0.65            0.30      0.7
+//! inversion            600 ..  3500 m          1450 m, 0.5             0.20      0.7
 //! free air            3500 .. 15000 m          7200 m, 0.4             0.10      0.7
 //! ```
 //!
-//! The median height is the middle of the range and sigma that of a uniform law in `ln h`; what
-//! lies between 4 and 8 m counts with the surface layer. The
-//! exponent lies between -4/3 of free convection and -0.82 to -1.1 found by towers. The outer scale
-//! has a broad law about 20 m, including none.
+//! The median height is the middle of the range and sigma that of a uniform law in `ln h`. The
+//! exponent is the middle between -4/3 of free convection and -0.82 found by a tower. The outer
+//! scale has a broad law about 20 m, including none.
 //!
 //! A prior is needed: a layer whose ring is much smaller than the aperture moves the harmonics by
 //! `C_n^2 h^2` alone, so that its strength cannot be told from its height.
@@ -35,7 +35,7 @@
 //! # Source
 //!
 //! J. C. Wyngaard, Y. Izumi and S. A. Collins, J. Opt. Soc. Am. 61, 1646 (1971), for -4/3 (from
-//! memory); exponents of towers: Qian et al. (2022) and Gu et al. (2024), abstracts; outer scales
+//! memory); tower: Gu et al., arXiv:2410.21347 (2024), abstract; outer scales
 //! of 10 to 30 m: J. M. Beckers and Z. Liu, Bull. Am. Astron. Soc. 34, 56.03 (2002), abstract.
 //! Widths: our judgement.
 
@@ -76,10 +76,10 @@ impl Default for ProfilePrior {
         };
         Self {
             layers: vec![
-                layer(8.0, 0.4, 0.25, 0.7),
-                layer(30.0, 0.4, 0.22, 0.7),
-                layer(190.0, 0.65, 0.27, 0.7),
-                layer(1450.0, 0.5, 0.16, 0.8),
+                layer(8.0, 0.4, 0.20, 0.7),
+                layer(30.0, 0.4, 0.20, 0.7),
+                layer(190.0, 0.65, 0.30, 0.7),
+                layer(1450.0, 0.5, 0.20, 0.7),
                 layer(7200.0, 0.4, 0.10, 0.7),
             ],
             outer_scales_m: vec![

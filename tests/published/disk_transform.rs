@@ -8,9 +8,9 @@ use truelimb::disk::{Darkening, DarkeningLaw, SolarEdge};
 use truelimb::optics::definitions::inflection_arcsec;
 use truelimb::optics::{Blur, Exposure, LimbOptics, ProfileMaker, Telescope};
 
-const RADIUS_ARCSEC: f64 = 960.0;
+pub(crate) const RADIUS_ARCSEC: f64 = 960.0;
 
-fn edge(wavelength_nm: f64, scale_arcsec: f64) -> SolarEdge {
+pub(crate) fn edge(wavelength_nm: f64, scale_arcsec: f64) -> SolarEdge {
     let darkening = Darkening::new(DarkeningLaw::Neckel2005, wavelength_nm).unwrap();
     SolarEdge {
         radius_arcsec: RADIUS_ARCSEC,
@@ -71,7 +71,7 @@ fn disk_spectrum(darkening: &Darkening, f: f64) -> f64 {
 }
 
 /// The blurred disk at distances from its edge: 8 nodes a panel of `1 / (2 R)`.
-fn slow_twin(
+pub(crate) fn slow_twin(
     darkening: &Darkening,
     xs: &[f64],
     highest: f64,
