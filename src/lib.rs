@@ -64,7 +64,7 @@ pub mod result;
 pub mod report;
 
 pub mod pipeline;
-// pub mod synth;
+pub mod synth;
 
 pub use pipeline::Error;
 

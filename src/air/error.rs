@@ -148,6 +148,47 @@ pub enum AirError {
         /// Curvature of a level ray over that of the Earth.
         ratio: f64,
     },
+    /// A filter curve has too few points, or a value is missing.
+    #[error(
+        "the filter has {wavelengths} wavelengths and {values} transmissions; two at least are needed, and as many of one as of the other"
+    )]
+    BandPoints {
+        /// Wavelengths found.
+        wavelengths: usize,
+        /// Transmissions found.
+        values: usize,
+    },
+    /// The wavelengths of a filter curve do not rise.
+    #[error("the filter has {after_nm} nm after {before_nm} nm; wavelengths must rise")]
+    BandOrder {
+        /// A wavelength, in nm.
+        before_nm: f64,
+        /// The next, in nm.
+        after_nm: f64,
+    },
+    /// No light passes.
+    #[error("no light passes the filter: transmission or source is zero throughout")]
+    BandDark,
+    /// The source has no brightness at a wavelength of the band.
+    #[error(
+        "the source is {found} at {wavelength_nm:.1} nm; a number of photons not below 0 is needed"
+    )]
+    SpectrumValue {
+        /// The wavelength, in nm.
+        wavelength_nm: f64,
+        /// The value found.
+        found: f64,
+    },
+    /// The refractivity rises and falls inside a band.
+    #[error(
+        "the refractivity does not change one way from {low_nm:.1} to {high_nm:.1} nm: the band has no effective wavelength"
+    )]
+    DispersionTurns {
+        /// Begin of the band, in nm.
+        low_nm: f64,
+        /// End of the band, in nm.
+        high_nm: f64,
+    },
 }
 
 /// A doubt about a result that still has a value; it belongs beside the result.

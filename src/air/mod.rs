@@ -6,6 +6,7 @@
 //! say which; bearings about a centre count from the direction of the zenith, positive north through
 //! east.
 
+mod band;
 mod bending;
 mod ciddor;
 mod conditions;
@@ -14,6 +15,7 @@ mod distortion;
 mod earth;
 mod error;
 mod even_table;
+mod extinction;
 mod integral;
 mod layer;
 mod layered;
@@ -27,6 +29,7 @@ mod station;
 mod table;
 mod vapour;
 
+pub use band::{Band, BandInAir, BandLight, Smear, solar_photons};
 pub use bending::{Bending, TABLE_HALF_WIDTH_RAD};
 pub use ciddor::{ciddor_refractivity, compressibility};
 pub use conditions::{Conditions, STATION_HEIGHT_M, Site, standard_pressure_hpa};
@@ -34,6 +37,7 @@ pub use disk_map::{DiskMap, Jacobian};
 pub use distortion::{AnalyticDistortion, Distortion, distortion, distortion_analytic};
 pub use earth::{gravity_m_s2, local_radius_m};
 pub use error::{AirError, AirWarning};
+pub use extinction::{air_mass, molecular_depth, molecular_transmission};
 pub use layered::{LapseLayer, LayeredGas};
 pub use other_formulas::birch_downs_refractivity;
 pub use profile::{Profile, ProfileSettings};
@@ -45,5 +49,7 @@ pub use sensitivity::{
 };
 pub use sounding::SoundingLevel;
 pub use station::StationAir;
-pub use table::{RefractionRow, TABLE_RADIUS_ARCSEC, ZenithArgument, refraction_table};
+pub use table::{
+    BandRow, RefractionRow, TABLE_RADIUS_ARCSEC, ZenithArgument, band_table, refraction_table,
+};
 pub use vapour::{VapourConvention, enhancement, vapour_mole_fraction};

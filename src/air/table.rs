@@ -2,6 +2,7 @@
 
 use serde::Serialize;
 
+use super::band::Band;
 use super::bending::Bending;
 use super::conditions::within;
 use super::disk_map::DiskMap;
@@ -55,6 +56,22 @@ pub struct RefractionRow {
     pub sensitivity: Sensitivity,
 }
 
+/// One line of the table for a band, computed at its effective wavelength.
+#[derive(Clone, Copy, Debug, PartialEq, Serialize)]
+pub struct BandRow {
+    /// The line; its wavelength is the middle of the band, all else belongs to the effective one.
+    #[serde(flatten)]
+    pub row: RefractionRow,
+    /// Wavelength at which the refractivity is the band's mean, in nm.
+    pub effective_wavelength_nm: f64,
+    /// Centroid of the light that makes the limb, in nm.
+    pub centroid_wavelength_nm: f64,
+    /// Refraction between the half-power wavelengths, in mas.
+    pub smear_mas: f64,
+    /// Standard deviation of the refraction over the band, in mas.
+    pub smear_rms_mas: f64,
+}
+
 /// The table: for each zenith distance every wavelength, in the order given.
 ///
 /// # Errors
@@ -75,20 +92,73 @@ pub fn refraction_table(
     Ok(rows)
 }
 
+/// The table for bands: as [`refraction_table`], at the effective wavelength of each band behind the
+/// clear air of each zenith distance.
+///
+/// `photons` is the source at the limb, by wavelength in nm, in any unit; see
+/// [`solar_photons`](super::solar_photons).
+///
+/// # Errors
+///
+/// An [`AirError`] for the first line that the model does not reach, or for a band without light.
+pub fn band_table(
+    air: &StationAir,
+    zeniths_rad: &[f64],
+    argument: ZenithArgument,
+    bands: &[Band],
+    photons: impl Fn(f64) -> f64,
+) -> Result<Vec<BandRow>, AirError> {
+    let mut rows = Vec::with_capacity(zeniths_rad.len() * bands.len());
+    for &zenith_rad in zeniths_rad {
+        for band in bands {
+            check_zenith(zenith_rad)?;
+            let (low_nm, high_nm) = band.half_power_nm();
+            // Names the end of the band that the formula does not reach.
+            air.refractivity(low_nm)?;
+            air.refractivity(high_nm)?;
+            let zenith_apparent_rad = match argument {
+                ZenithArgument::Apparent => zenith_rad,
+                ZenithArgument::True => {
+                    let profile = air.profile(band.centre_nm())?;
+                    Bending::new(&profile, zenith_rad)?.centre_apparent_rad()
+                }
+            };
+            let pressure_hpa = air.conditions.pressure_hpa;
+            let it = band
+                .light_through_air(&photons, pressure_hpa, zenith_apparent_rad)?
+                .in_air(air)?;
+            let mut row = row(air, zenith_rad, argument, it.effective_nm)?;
+            row.wavelength_nm = band.centre_nm();
+            let smear = it.smear(row.refraction_arcsec * ARCSEC_RAD);
+            rows.push(BandRow {
+                row,
+                effective_wavelength_nm: it.effective_nm,
+                centroid_wavelength_nm: it.centroid_nm,
+                smear_mas: smear.spread_mas,
+                smear_rms_mas: smear.rms_mas,
+            });
+        }
+    }
+    Ok(rows)
+}
+
+fn check_zenith(zenith_rad: f64) -> Result<(), AirError> {
+    within(
+        "zenith distance",
+        zenith_rad.to_degrees(),
+        (0.0, 90.0),
+        "deg",
+        "a disk above the horizon",
+    )
+}
+
 fn row(
     air: &StationAir,
     zenith_rad: f64,
     argument: ZenithArgument,
     wavelength_nm: f64,
 ) -> Result<RefractionRow, AirError> {
-    let zenith_deg = zenith_rad.to_degrees();
-    within(
-        "zenith distance",
-        zenith_deg,
-        (0.0, 90.0),
-        "deg",
-        "a disk above the horizon",
-    )?;
+    check_zenith(zenith_rad)?;
     let profile = air.profile(wavelength_nm)?;
     let zenith_true_rad = match argument {
         ZenithArgument::True => zenith_rad,

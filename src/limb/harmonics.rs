@@ -69,12 +69,11 @@ impl Projector {
     /// harmonics is lowered where too few are left.
     pub fn new(angles_rad: &[f64], usable: &[bool], m_max: usize) -> Option<Self> {
         let used: Vec<usize> = (0..angles_rad.len()).filter(|&s| usable[s]).collect();
-        let m_max = if used.len() == angles_rad.len() {
-            m_max.min((used.len() - 1) / 2)
-        } else {
-            m_max.min(used.len() / 8)
-        };
-        if m_max < 4 {
+        // A gap of a harmonic's half wave leaves it open: shorter waves are not asked for.
+        let gap = longest_gap(usable);
+        let open = (angles_rad.len() - 1) / (2 * (gap + 1));
+        let m_max = m_max.min(open).min(used.len() / 4).max(4);
+        if 2 * used.len() < angles_rad.len() || used.len() < 3 * m_max {
             return None;
         }
         let columns = 2 * m_max + 1;
@@ -140,6 +139,16 @@ impl Projector {
             })
             .collect()
     }
+}
+
+/// Longest run of sectors that cannot be used, around the limb.
+fn longest_gap(usable: &[bool]) -> usize {
+    let (mut longest, mut run) = (0, 0);
+    for good in usable.iter().chain(usable) {
+        run = if *good { 0 } else { run + 1 };
+        longest = longest.max(run);
+    }
+    longest.min(usable.len())
 }
 
 #[cfg(test)]

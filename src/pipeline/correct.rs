@@ -35,7 +35,7 @@ pub struct CorrectedSequence {
 const HIGHEST: usize = 30;
 
 /// Takes the air out of a sequence's limbs and projects them on harmonics.
-pub fn correct(sequence: &MeasuredSequence) -> CorrectedSequence {
+pub(super) fn correct(sequence: &MeasuredSequence) -> CorrectedSequence {
     let mut out = CorrectedSequence {
         index: sequence.index,
         frames: Vec::new(),

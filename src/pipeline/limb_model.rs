@@ -15,7 +15,7 @@ use crate::shape::Contribution;
 
 /// Lines of the limb's model.
 #[derive(Clone, Debug)]
-pub struct LimbModel {
+pub(super) struct LimbModel {
     /// The lines.
     pub lines: Vec<Contribution>,
     /// What the extraction itself leaves on a noise-free limb of its own model, mas at 1 AU: taken
@@ -30,7 +30,7 @@ pub struct LimbModel {
 /// # Errors
 ///
 /// Whatever the tables or the extraction refuse.
-pub fn lines(
+pub(super) fn lines(
     session: &Session,
     measured: &[MeasuredSequence],
     _: &SeeingResult,

@@ -80,7 +80,7 @@ pub fn reduce(
     let (measured, set_aside) = measure_all(session, progress)?;
     let limbs: Vec<CorrectedSequence> = measured.iter().map(correct::correct).collect();
     let seeing = solve::seeing(session, &measured, &limbs);
-    let selected = solve::select(&measured, &limbs);
+    let selected = solve::select(&measured, &limbs)?;
     let model = limb_model::lines(session, &measured, &seeing)?;
     let known = solve::known(session, &measured);
     let shape = solve::shape(&selected, &known, &model)?;

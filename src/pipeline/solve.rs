@@ -9,7 +9,8 @@ use crate::seeing::{self, HarmonicSeries, MotionSeeing};
 use crate::select::{self, Candidate, FIRST_JUDGING};
 use crate::session::{Session, WeatherSource};
 use crate::shape::{
-    self, Block, Fit, Known, Observation, RefractivityInput, Separability, ShapeError, SineTerms,
+    self, Block, Fit, Known, LARGEST_ZENITH_DEG, Observation, RefractivityInput, Separability,
+    ShapeError, SineTerms,
 };
 use crate::turbulence::Aperture;
 use crate::units::{DEG_RAD, MAS_RAD};
@@ -17,18 +18,16 @@ use ndarray::Array2;
 
 /// What the air did, by both ways.
 #[derive(Clone, Debug)]
-pub struct SeeingResult {
+pub(super) struct SeeingResult {
     /// By the limb's motion, or why not.
     pub motion: Result<MotionSeeing, String>,
     /// By the limb's width: Fried's parameter at 500 nm at the zenith and towards the Sun, m.
     pub blur: Result<BlurSeeing, String>,
-    /// Fried's parameter of each sequence by its width, 500 nm at the zenith, m.
-    pub blur_by_sequence: Vec<Option<f64>>,
 }
 
 /// Fried's parameter from the limb's width.
 #[derive(Clone, Copy, Debug, PartialEq)]
-pub struct BlurSeeing {
+pub(super) struct BlurSeeing {
     /// At 500 nm at the zenith, m.
     pub zenith_m: f64,
     /// Its standard uncertainty, m.
@@ -53,35 +52,32 @@ const VERTICAL_SIGMA_MAS: f64 = 0.3;
 const FORMULA_SIGMA: f64 = 4e-8;
 
 /// Estimates the seeing from all sequences.
-pub fn seeing(
+pub(super) fn seeing(
     session: &Session,
     measured: &[MeasuredSequence],
     limbs: &[CorrectedSequence],
 ) -> SeeingResult {
     let none = above_the_air(session);
-    let blur_by_sequence: Vec<Option<f64>> = measured.iter().map(blur_r0_m).collect();
     if none {
         let reason = "above the air".to_owned();
         return SeeingResult {
             motion: Err(reason.clone()),
             blur: Err(reason),
-            blur_by_sequence,
         };
     }
     SeeingResult {
         motion: motion(session, measured, limbs),
-        blur: blur(session, measured, &blur_by_sequence),
-        blur_by_sequence,
+        blur: blur(session, measured),
     }
 }
 
 /// Whether the session has no air.
-pub fn above_the_air(session: &Session) -> bool {
+pub(super) fn above_the_air(session: &Session) -> bool {
     matches!(session.weather.source, WeatherSource::None)
 }
 
 /// The telescope's aperture as the kernels take it.
-pub fn aperture(session: &Session) -> Aperture {
+pub(super) fn aperture(session: &Session) -> Aperture {
     Aperture {
         diameter_m: session.telescope.aperture_m,
         obstruction: session.telescope.central_obstruction,
@@ -124,7 +120,10 @@ fn motion(
     let Some(first) = measured.first() else {
         return Err("no sequence".to_owned());
     };
-    let setup = seeing::Setup::new(aperture(session), first.setup.optics.wavelength_nm);
+    let mut setup = seeing::Setup::new(aperture(session), first.setup.optics.wavelength_nm);
+    // Gaps in the limb lower the number of harmonics; all sequences are taken to the same.
+    let highest = list.iter().map(|it| it.cos_mas.ncols()).min().unwrap_or(0);
+    setup.m_max = setup.m_max.min(highest.saturating_sub(1));
     seeing::by_motion(&list, &setup).map_err(|it| it.to_string())
 }
 
@@ -176,7 +175,7 @@ fn blur_r0_m(measured: &MeasuredSequence) -> Option<f64> {
 }
 
 /// Fried's parameter at 500 nm towards the Sun of a blur, m.
-pub fn frame_r0_m(measured: &MeasuredSequence, blur: f64) -> Option<f64> {
+pub(super) fn frame_r0_m(measured: &MeasuredSequence, blur: f64) -> Option<f64> {
     if !(blur > 0.0) {
         return None;
     }
@@ -187,15 +186,11 @@ pub fn frame_r0_m(measured: &MeasuredSequence, blur: f64) -> Option<f64> {
 }
 
 /// From towards the Sun to the zenith.
-pub fn zenith_factor(measured: &MeasuredSequence) -> f64 {
+pub(super) fn zenith_factor(measured: &MeasuredSequence) -> f64 {
     measured.middle.sun.zenith_true_rad.cos().powf(-0.6)
 }
 
-fn blur(
-    session: &Session,
-    measured: &[MeasuredSequence],
-    by_sequence: &[Option<f64>],
-) -> Result<BlurSeeing, String> {
+fn blur(session: &Session, measured: &[MeasuredSequence]) -> Result<BlurSeeing, String> {
     let Some(first) = measured.first() else {
         return Err("no sequence".to_owned());
     };
@@ -205,7 +200,7 @@ fn blur(
             "pixels of {pixel:.2} arcsec are too large for the width of the limb to tell the seeing; up to {LARGEST_PIXEL_ARCSEC} arcsec"
         ));
     }
-    let known: Vec<f64> = by_sequence.iter().flatten().copied().collect();
+    let known: Vec<f64> = measured.iter().filter_map(blur_r0_m).collect();
     if known.is_empty() {
         return Err("the limb is as sharp as the telescope alone makes it".to_owned());
     }
@@ -232,25 +227,39 @@ fn blur(
 
 /// The frames that go to the shape, with weights from the seeing.
 #[derive(Clone, Debug)]
-pub struct Selected {
+pub(super) struct Selected {
     /// All usable frames.
     pub observations: Vec<Observation>,
     /// Which sequence (by position) and corrected frame each is.
     pub origin: Vec<(usize, usize)>,
     /// What selection saw of them.
     pub candidates: Vec<Candidate>,
-    /// Mid-exposure of the session's first frame.
-    pub start: crate::sky::Utc,
 }
 
 /// Weighs every usable frame of the sequences that go to the shape.
-pub fn select(measured: &[MeasuredSequence], limbs: &[CorrectedSequence]) -> Selected {
+///
+/// # Errors
+///
+/// When the Sun stood too low in all of them.
+pub(super) fn select(
+    measured: &[MeasuredSequence],
+    limbs: &[CorrectedSequence],
+) -> Result<Selected, ShapeError> {
+    if measured.iter().all(|it| it.set_aside.is_some()) {
+        let highest_deg = measured
+            .iter()
+            .map(|it| it.middle.sun.zenith_true_rad.to_degrees())
+            .fold(f64::INFINITY, |a, b| if b < a { b } else { a });
+        return Err(ShapeError::TooLow {
+            limit_deg: LARGEST_ZENITH_DEG,
+            highest_deg,
+        });
+    }
     let start = measured[0].frames[0].utc;
     let mut out = Selected {
         observations: Vec::new(),
         origin: Vec::new(),
         candidates: Vec::new(),
-        start,
     };
     for (position, (sequence, corrected)) in measured.iter().zip(limbs).enumerate() {
         if sequence.set_aside.is_some() {
@@ -291,11 +300,11 @@ pub fn select(measured: &[MeasuredSequence], limbs: &[CorrectedSequence]) -> Sel
     {
         it.weight = weight;
     }
-    out
+    Ok(out)
 }
 
 /// What is known before the fit.
-pub fn known(session: &Session, measured: &[MeasuredSequence]) -> Known {
+pub(super) fn known(session: &Session, measured: &[MeasuredSequence]) -> Known {
     let refractivity = if above_the_air(session) {
         Vec::new()
     } else {
@@ -386,7 +395,7 @@ fn refractivity_inputs(session: &Session, measured: &[MeasuredSequence]) -> Vec<
 
 /// The shape of the kept frames and what goes with it.
 #[derive(Clone, Debug)]
-pub struct Shape {
+pub(super) struct Shape {
     /// The fit.
     pub fit: Fit,
     /// The blocks it was made of.
@@ -422,7 +431,7 @@ const MUST_PAY: f64 = 0.85;
 /// # Errors
 ///
 /// When there is nothing to fit.
-pub fn shape(selected: &Selected, known: &Known, model: &LimbModel) -> Result<Shape, Error> {
+pub(super) fn shape(selected: &Selected, known: &Known, model: &LimbModel) -> Result<Shape, Error> {
     let usable = selected.observations.len();
     let mut best: Option<(f64, f64, Vec<bool>)> = None;
     let mut whole_sigma = f64::NAN;

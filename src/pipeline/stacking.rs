@@ -22,7 +22,7 @@ use std::f64::consts::{FRAC_PI_2, TAU};
 
 /// The stacks of a session.
 #[derive(Clone, Debug)]
-pub struct Stacks {
+pub(super) struct Stacks {
     /// By position among the measured sequences.
     by_sequence: Vec<Option<SequenceStack>>,
     /// All of them.
@@ -45,7 +45,7 @@ const TWIN_FRAMES: usize = 16;
 
 impl Stacks {
     /// No stack was asked for.
-    pub fn none() -> Self {
+    pub(super) fn none() -> Self {
         Self {
             by_sequence: Vec::new(),
             whole: None,
@@ -53,7 +53,7 @@ impl Stacks {
     }
 
     /// How many sequences were stacked.
-    pub fn count(&self) -> usize {
+    pub(super) fn count(&self) -> usize {
         self.by_sequence.iter().flatten().count()
     }
 }
@@ -63,7 +63,7 @@ impl Stacks {
 /// # Errors
 ///
 /// When a frame that was read once cannot be read again.
-pub fn combine(
+pub(super) fn combine(
     measured: &[MeasuredSequence],
     limbs: &[CorrectedSequence],
     selected: &Selected,
@@ -234,7 +234,7 @@ fn apparent_radius_arcsec(sequence: &MeasuredSequence) -> f64 {
 }
 
 /// The shape of the stacks' limbs, or why there is none.
-pub fn shape(
+pub(super) fn shape(
     stacks: &Stacks,
     measured: &[MeasuredSequence],
     by_frame: &Shape,

@@ -109,6 +109,16 @@ pub enum ShapeError {
         /// Sequences that hold them.
         sequences: usize,
     },
+    /// Every sequence was set aside because the Sun stood too low.
+    #[error(
+        "every sequence was observed more than {limit_deg} deg from the zenith (the highest Sun at {highest_deg:.1} deg), where refraction is not known well enough for the shape; observe when the Sun stands higher"
+    )]
+    TooLow {
+        /// Limit.
+        limit_deg: f64,
+        /// Smallest zenith distance of the session.
+        highest_deg: f64,
+    },
     /// The normal equations have no solution although prior knowledge was added.
     #[error("the {unknowns} unknowns of the shape are not determined by {blocks} blocks of frames")]
     Singular {

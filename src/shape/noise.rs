@@ -75,7 +75,18 @@ pub fn blocks(observations: &[Observation]) -> (Vec<Block>, [f64; 5], f64) {
                 frames: frames.clone(),
                 mean_mas: mean,
                 variance_mas2: std::array::from_fn(|c| {
-                    factor[HARMONIC[c]] * scatter[c] * squares / (sum * sum)
+                    // Frames that are copies of each other scatter less than their photons must.
+                    let noise = frames
+                        .iter()
+                        .map(|&k| observations[k].noise_mas2[c])
+                        .sum::<f64>()
+                        / frames.len() as f64;
+                    let own = if scatter[c] > noise {
+                        scatter[c]
+                    } else {
+                        noise
+                    };
+                    factor[HARMONIC[c]] * own * squares / (sum * sum)
                 }),
             }
         })

@@ -95,8 +95,7 @@ pub(super) fn seen_limb_arcsec(figure: &Figure, at: &Geometry, angles_rad: &[f64
         points.extend(seen.iter().copied().zip(bearings.iter().copied()));
         at.map.true_from_apparent_each(&mut points);
         for (radius_rad, (true_rad, bearing_rad)) in seen.iter_mut().zip(&points) {
-            *radius_rad -=
-                true_rad - figure.radius_rad(&at.sun, bearing_rad + at.zenith_angle_rad);
+            *radius_rad -= true_rad - figure.radius_rad(&at.sun, bearing_rad + at.zenith_angle_rad);
         }
     }
     seen.iter().map(|it| it / ARCSEC_RAD).collect()

@@ -19,7 +19,7 @@
 //!
 //! # Accuracy
 //!
-//! Limb of a still frame: 0.05 mas in the low harmonics (test in `tests.rs`).
+//! Limb of a still frame: 0.1 mas in the low harmonics (test in `tests.rs`).
 //!
 //! # Source
 //!
@@ -69,7 +69,11 @@ pub(super) fn frame(
         .map(|it| at.geometry.orientation.position_angle_rad(*it).sin_cos())
         .collect();
     let moved_arcsec = turbulence.displacement_arcsec(at, mean_arcsec, &directions);
-    for ((limb, moved), angle) in limb_arcsec.iter_mut().zip(&moved_arcsec).zip(&studio.angles_rad) {
+    for ((limb, moved), angle) in limb_arcsec
+        .iter_mut()
+        .zip(&moved_arcsec)
+        .zip(&studio.angles_rad)
+    {
         *limb += moved + figure::distortion_arcsec(&s.distortion, *angle);
     }
     let middle_px = 0.5 * (s.size_px as f64 - 1.0);
@@ -89,15 +93,18 @@ pub(super) fn frame(
         let (x2, y2) = (x * x, y * y);
         let r_px = (x2 + y2).sqrt();
         let plate = scale_rad * r_px;
-        // atan to rounding: the plate ends below 0.02.
+        // atan to rounding at the disk, whose plate radius is 0.005.
         let p2 = plate * plate;
-        let r_arcsec =
-            plate * (1.0 - p2 * (1.0 / 3.0 - p2 * (0.2 - p2 / 7.0))) / ARCSEC_RAD;
+        let r_arcsec = plate * (1.0 - p2 * (1.0 / 3.0 - p2 * (0.2 - p2 / 7.0))) / ARCSEC_RAD;
         let turn = (y.atan2(x) / TAU).rem_euclid(1.0) * samples;
         let low = (turn as usize).min(limb_arcsec.len() - 2);
         let part = turn - low as f64;
         let limb = limb_arcsec[low] + part * (limb_arcsec[low + 1] - limb_arcsec[low]);
-        let cos2 = if r_px > 0.0 { (x2 - y2) / (x2 + y2) } else { 1.0 };
+        let cos2 = if r_px > 0.0 {
+            (x2 - y2) / (x2 + y2)
+        } else {
+            1.0
+        };
         let share = r_arcsec / limb;
         let brightness = profile
             .at(r_arcsec - limb, 2.0 * cos2 * cos2 - 1.0)

@@ -46,8 +46,10 @@ use super::draw::Draw;
 use crate::turbulence::PHASE_PSD_CONSTANT;
 use crate::units::ARCSEC_RAD;
 
-/// Cells on a side of a field; a power of two.
-const CELLS: usize = 1024;
+/// Cells on a side of a field; a power of two, so that a mask folds an index into the period.
+const CELLS: usize = 1 << CELL_BITS;
+const CELL_BITS: u32 = 10;
+const FOLD: i32 = (1 << CELL_BITS) - 1;
 /// Cells of the fine field to the aperture.
 const CELLS_PER_APERTURE: f64 = 6.0;
 /// Period of the coarse field over that of the fine one.
@@ -162,18 +164,16 @@ impl Field {
         let (u, v) = (x_m / self.step_m, y_m / self.step_m);
         let (u0, v0) = (u.floor(), v.floor());
         let (wu, wv) = (cubic((u - u0) as f32), cubic((v - v0) as f32));
-        let wrap = |base: f64, by: usize| {
-            (base as i64 + by as i64 - 1).rem_euclid(CELLS as i64) as usize
-        };
-        let columns: [usize; 4] = std::array::from_fn(|j| wrap(v0, j));
+        let four = |base: f64| [-1, 0, 1, 2].map(|by| ((base as i32 + by) & FOLD) as usize);
+        let (rows, columns) = (four(u0), four(v0));
         let mut sum = Complex::new(0.0, 0.0);
-        for (i, weight) in wu.iter().enumerate() {
-            let row = &self.cells[wrap(u0, i) * CELLS..][..CELLS];
+        for (row, weight) in rows.iter().zip(wu) {
+            let row = &self.cells[row * CELLS..][..CELLS];
             let mut along = Complex::new(0.0, 0.0);
             for (column, weight) in columns.iter().zip(wv) {
                 along += row[*column] * weight;
             }
-            sum += along * *weight;
+            sum += along * weight;
         }
         sum
     }
@@ -247,11 +247,7 @@ impl Amplitudes {
 /// `[2 J1(x)/x - e^2 2 J1(e x)/(e x)] / (1 - e^2)`.
 fn aperture_mean(x: f64, e: f64) -> f64 {
     let g = |x: f64| {
-        if x < 1e-4 {
-            1.0
-        } else {
-            2.0 * libm::j1(x) / x
-        }
+        if x < 1e-4 { 1.0 } else { 2.0 * libm::j1(x) / x }
     };
     (g(x) - e * e * g(e * x)) / (1.0 - e * e)
 }
@@ -287,4 +283,3 @@ fn transposed(cells: &[Complex<f32>]) -> Vec<Complex<f32>> {
     }
     out
 }
-

@@ -94,7 +94,11 @@ impl Turbulence {
             .par_iter()
             .map(|&(index, scale)| {
                 let own = 2 * (number * count + index as u32) + u32::from(scale == Scale::Coarse);
-                Field::new(&facts(index), scale, &mut Draw::new(seed, Stream::Screen(own)))
+                Field::new(
+                    &facts(index),
+                    scale,
+                    &mut Draw::new(seed, Stream::Screen(own)),
+                )
             })
             .collect();
         let mut fields = fields.into_iter();

@@ -40,8 +40,6 @@ const MARGIN_S: f64 = 2.0;
 pub(super) struct Moment {
     /// Index of its sequence.
     pub(super) sequence: usize,
-    /// Index in the sequence.
-    pub(super) frame: usize,
     /// Start of the exposure.
     pub(super) start: Utc,
     /// Middle of the exposure after the session's start.
@@ -109,7 +107,6 @@ pub(super) fn moments(s: &Scenario, seed: u64) -> Result<Vec<Moment>, SynthError
             let turn_rad = across * ARCMIN_RAD / sun.zenith_true_rad.sin();
             moments.push(Moment {
                 sequence,
-                frame,
                 start: start.plus_s(start_s),
                 middle_s,
                 geometry: Geometry {

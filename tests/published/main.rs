@@ -3,6 +3,7 @@
 //! A file a source; each opens with the source's name and uses the source's own half digit. They
 //! are one binary, so that they share readers and compile once.
 
+mod band;
 mod ciddor_1996;
 mod disk_transform;
 mod finite_fourier_edge_1975;

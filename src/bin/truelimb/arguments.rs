@@ -117,38 +117,65 @@ pub(crate) struct Limb {
 #[command(allow_negative_numbers = true)]
 pub(crate) struct Refraction {
     /// Latitude, degrees, north positive.
-    #[arg(long)]
+    #[arg(long, value_name = "DEG")]
     pub(crate) latitude_deg: f64,
-    /// Height above sea level.
-    #[arg(long)]
+    /// Height above sea level, -400 to 45000 m.
+    #[arg(long, value_name = "M")]
     pub(crate) height_m: f64,
     /// Pressure at the station, not reduced to sea level.
-    #[arg(long)]
+    #[arg(long, value_name = "HPA")]
     pub(crate) pressure_hpa: f64,
     /// Temperature of the free air.
-    #[arg(long)]
+    #[arg(long, value_name = "C")]
     pub(crate) temperature_c: f64,
     /// Relative humidity, a fraction from 0 to 1.
-    #[arg(long)]
+    #[arg(long, value_name = "FRACTION")]
     pub(crate) humidity: f64,
-    /// Wavelengths in vacuum.
-    #[arg(long, value_delimiter = ',', required = true)]
+    /// Wavelengths in vacuum, separated by commas.
+    #[arg(
+        long,
+        value_name = "NM",
+        value_delimiter = ',',
+        required = true,
+        allow_hyphen_values = true
+    )]
     pub(crate) wavelength_nm: Vec<f64>,
-    /// Zenith distances, apparent unless --true.
-    #[arg(long, value_delimiter = ',', required = true)]
+    /// Zenith distances, separated by commas; apparent unless --true.
+    #[arg(
+        long,
+        value_name = "DEG",
+        value_delimiter = ',',
+        required = true,
+        allow_hyphen_values = true
+    )]
     pub(crate) zenith_deg: Vec<f64>,
     /// The zenith distances are true ones.
     #[arg(long = "true")]
     pub(crate) is_true: bool,
+    /// Width of a flat band about each wavelength: rows at the effective wavelength, and the smear.
+    #[arg(long, value_name = "NM")]
+    pub(crate) width_nm: Option<f64>,
+    /// Full width of the seeing, for the flattening that the smear of a band leaves.
+    #[arg(long, value_name = "ARCSEC", default_value_t = 2.0)]
+    pub(crate) seeing_arcsec: f64,
     /// Azimuth of the Sun, north through east: sets the Earth's radius of curvature.
-    #[arg(long, default_value_t = 180.0)]
+    #[arg(long, value_name = "DEG", default_value_t = 180.0)]
     pub(crate) azimuth_deg: f64,
     /// Carbon dioxide.
-    #[arg(long, default_value_t = 420.0)]
+    #[arg(long, value_name = "PPM", default_value_t = 420.0)]
     pub(crate) co2_ppm: f64,
     /// Fall of temperature with height in the troposphere.
-    #[arg(long, default_value_t = 6.5)]
+    #[arg(long, value_name = "K", default_value_t = 6.5)]
     pub(crate) lapse_k_per_km: f64,
+    /// Height of the tropopause above sea level.
+    #[arg(long, value_name = "M", default_value_t = 11_000.0)]
+    pub(crate) tropopause_m: f64,
+    /// Refractivity of air: ciddor-1996, birch-downs-1994, owens-1967, iag-1999, mathar-2007.
+    #[arg(long, value_name = "NAME", default_value = "ciddor-1996")]
+    pub(crate) formula: String,
+    /// What humidity is relative to: water-giacomo, water-iapws, ice-below-zero-iapws.
+    #[arg(long, value_name = "NAME", default_value = "water-giacomo")]
+    pub(crate) humidity_over: String,
     /// A sounding: CSV of height_m, pressure_hpa, temperature_c, relative_humidity.
     #[arg(long, value_name = "FILE")]
     pub(crate) profile: Option<PathBuf>,

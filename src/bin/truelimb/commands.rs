@@ -1,11 +1,10 @@
 //! What each command does.
 
 use crate::Ending;
-use crate::arguments::{Demo, Limb, Reduce, Refraction, Simulate};
+use crate::arguments::{Demo, Limb, Reduce, Simulate};
 use crate::progress::{Bar, say};
 use std::io::Write;
 use std::path::Path;
-use truelimb::air::{self, StationAir, ZenithArgument};
 use truelimb::pipeline::single::{self, Definition, SingleSettings};
 use truelimb::pipeline::{self, Options, Outcome, Progress};
 use truelimb::result::record::{Quantity, Record, ShapeQuantity, Status};
@@ -23,7 +22,7 @@ pub(crate) enum Failure {
     Run(Box<Error>),
     /// A session could not be made.
     #[error("simulation: {0}")]
-    Synth(#[from] SynthError),
+    Synth(SynthError),
 }
 
 impl<E: Into<Error>> From<E> for Failure {
@@ -33,7 +32,7 @@ impl<E: Into<Error>> From<E> for Failure {
 }
 
 /// Prints on stdout; a closed pipe is no failure.
-fn print(text: &str) {
+pub(crate) fn print(text: &str) {
     let _ = writeln!(std::io::stdout().lock(), "{text}");
 }
 
@@ -105,7 +104,8 @@ fn header_number(frame: &Path, keyword: &str) -> Option<f64> {
         .flatten()
 }
 
-fn json<T: serde::Serialize>(value: &T) -> Result<String, Failure> {
+/// A result as JSON.
+pub(crate) fn json<T: serde::Serialize>(value: &T) -> Result<String, Failure> {
     serde_json::to_string_pretty(value).map_err(|source| {
         Failure::Run(Box::new(Error::Record {
             what: "the result",
@@ -175,7 +175,7 @@ pub(crate) fn simulate(it: &Simulate, quiet: bool) -> Result<Ending, Failure> {
             let text = std::fs::read_to_string(path).map_err(|it| {
                 Failure::Usage(format!("{}: could not be read: {it}", path.display()))
             })?;
-            synth::read_scenario(&text)?
+            synth::read_scenario(&text).map_err(Failure::Synth)?
         }
     };
     make(&scenario, it.seed, &it.output, quiet)?;
@@ -189,8 +189,7 @@ fn make(scenario: &synth::Scenario, seed: u64, folder: &Path, quiet: bool) -> Re
     bar.stage("making frames", frames);
     let made = synth::make(scenario, seed, folder, &|| bar.tick());
     bar.finish();
-    made?;
-    Ok(())
+    made.map(|_| ()).map_err(Failure::Synth)
 }
 
 /// `truelimb limb`.
@@ -256,71 +255,6 @@ fn definition(text: &str) -> Result<Definition, Failure> {
             .ok_or_else(refused),
         _ => Err(refused()),
     }
-}
-
-/// `truelimb refraction`.
-pub(crate) fn refraction(it: &Refraction) -> Result<Ending, Failure> {
-    let site = air::Site {
-        latitude_rad: it.latitude_deg.to_radians(),
-        height_m: it.height_m,
-    };
-    let conditions = air::Conditions {
-        pressure_hpa: it.pressure_hpa,
-        temperature_c: it.temperature_c,
-        relative_humidity: it.humidity,
-        co2_ppm: it.co2_ppm,
-    };
-    let mut station = StationAir::new(site, conditions, it.azimuth_deg.to_radians());
-    station.settings.lapse_k_per_m = it.lapse_k_per_km / 1000.0;
-    if let Some(path) = &it.profile {
-        let sounding = session::Sounding::read(path).map_err(|faults| {
-            Failure::from(session::SessionError {
-                path: path.clone(),
-                faults,
-            })
-        })?;
-        station.sounding = Some(sounding.levels);
-    }
-    let zeniths: Vec<f64> = it.zenith_deg.iter().map(|it| it.to_radians()).collect();
-    let argument = if it.is_true {
-        ZenithArgument::True
-    } else {
-        ZenithArgument::Apparent
-    };
-    let rows = air::refraction_table(&station, &zeniths, argument, &it.wavelength_nm)?;
-    if it.json {
-        print(&json(&rows)?);
-        return Ok(Ending::Done);
-    }
-    print(
-        "zenith, deg         wave,  refraction  radius     flattening  m = 3    P4       flattening changes, mas, by 1",
-    );
-    print(
-        "apparent  true      nm     arcsec      change,mas mas         mas      mas      hPa      K        nm       zenith arcmin",
-    );
-    for it in &rows {
-        print(&format!(
-            "{:<9.4} {:<9.4} {:<6.1} {:<11.4} {:<10.3} {:<11.3} {:<8.3} {:<8.4} {:<8.4} {:<8.4} {:<8.4} {:.4}",
-            it.zenith_apparent_deg,
-            it.zenith_true_deg,
-            it.wavelength_nm,
-            it.refraction_arcsec,
-            it.radius_change_mas,
-            it.flattening_mas,
-            it.m3_mas,
-            it.p4_mas,
-            it.sensitivity.pressure_hpa,
-            it.sensitivity.temperature_c,
-            it.sensitivity.wavelength_nm,
-            it.sensitivity.zenith_arcmin,
-        ));
-    }
-    for &nm in &it.wavelength_nm {
-        for warning in air::refractivity_warnings(&conditions, nm, station.formula) {
-            say(&format!("warning: {warning}"));
-        }
-    }
-    Ok(Ending::Done)
 }
 
 /// `truelimb schema`.

@@ -3,6 +3,7 @@
 mod arguments;
 mod commands;
 mod progress;
+mod refraction;
 
 use arguments::{Arguments, Command};
 use clap::Parser;
@@ -31,7 +32,7 @@ fn main() -> ExitCode {
         Command::Reduce(it) => commands::reduce(&it, quiet),
         Command::Simulate(it) => commands::simulate(&it, quiet),
         Command::Limb(it) => commands::limb(&it),
-        Command::Refraction(it) => commands::refraction(&it),
+        Command::Refraction(it) => refraction::refraction(&it, quiet),
         Command::Schema => commands::schema(),
     };
     match ended {
