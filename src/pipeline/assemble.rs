@@ -599,6 +599,12 @@ fn refraction(it: &MeasuredSequence, known: &Known) -> RefractionRecord {
         radius_change_mas: it.middle_air.mean_mas / d,
         flattening_mas: flattening,
         flattening_sigma_mas: (flattening * relative.sqrt()).hypot(tilt),
+        effective_wavelength_nm: it
+            .band
+            .map_or(it.setup.optics.wavelength_nm, |it| it.effective_nm),
+        smear_mas: it.band.map_or(0.0, |band| {
+            band.smear(sun.zenith_true_rad - apparent).spread_mas
+        }),
         refractivity: it.middle.refractivity,
         pressure_hpa: it.conditions.map_or(0.0, |it| it.pressure_hpa),
         temperature_c: it.conditions.map_or(0.0, |it| it.temperature_c),

@@ -51,7 +51,7 @@ pub enum Error {
     #[error("report: {0}")]
     Report(#[from] ReportError),
     /// A sequence gave no frame with a limb.
-    #[error("sequence {}: no frame has a usable limb; the first: {reason}", sequence + 1)]
+    #[error("sequence {}: no frame has a usable limb: {reason}", sequence + 1)]
     NoFrames {
         /// Index in the session file.
         sequence: usize,

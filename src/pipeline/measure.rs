@@ -1,7 +1,7 @@
 //! From the frames of one sequence to limbs: read, calibrate, find the limb, each frame once.
 
-use super::{Error, Progress};
-use crate::air::{Conditions, ProfileSettings, StationAir, local_radius_m};
+use super::{Error, Progress, band};
+use crate::air::{BandInAir, Conditions, ProfileSettings, StationAir, local_radius_m};
 use crate::calibrate::{self, Calibration, Detector};
 use crate::disk::{Darkening, SolarEdge};
 use crate::frames::{self, FrameRef, HeaderMap, Reader};
@@ -76,6 +76,8 @@ pub struct MeasuredSequence {
     pub middle_air: AirResponse,
     /// Relative change of the refractivity by pressure, temperature, humidity, wavelength.
     pub sensitivities: [f64; 4],
+    /// The filter's band in the air; none above it.
+    pub band: Option<BandInAir>,
     /// Why it does not go to the shape.
     pub set_aside: Option<String>,
     /// Middle of the exposure after its start, s.
@@ -174,7 +176,11 @@ pub fn measure(
     progress: &dyn Progress,
 ) -> Result<MeasuredSequence, Error> {
     let sequence = &session.sequences[index];
-    let list = frames::list(&sequence.files)?;
+    // Files that cannot be read cost this sequence, not the others.
+    let list = frames::list(&sequence.files).map_err(|it| Error::NoFrames {
+        sequence: index,
+        reason: it.to_string(),
+    })?;
     let times = times(&list, session)?;
     let (Some(first), Some(last)) = (times.first(), times.last()) else {
         return Err(Error::NoFrames {
@@ -186,7 +192,6 @@ pub fn measure(
     let duration_s = last.0.minus(first.0);
     let middle_utc = first.0.plus_s(0.5 * duration_s);
     let (middle, middle_air, station) = sky.moment(middle_utc)?;
-    sky::require_above_horizon(middle_utc, &middle.sun)?;
     let setup = setup(session, sequence, &list, &middle, shared)?;
     let nodes = sky.nodes(first.0, duration_s)?;
     let model_radii = predicted(&setup, &middle);
@@ -262,7 +267,7 @@ pub fn measure(
         )
     });
     let sensitivities = match &station {
-        Some((it, _)) => refraction::refractivity_sensitivities(it, sequence.filter.centre_nm)?,
+        Some((it, _)) => refraction::refractivity_sensitivities(it, sky.wavelength_nm())?,
         None => [0.0; 4],
     };
     let middle_response = refraction::response(
@@ -283,6 +288,7 @@ pub fn measure(
         middle_utc,
         middle_air: middle_response,
         sensitivities,
+        band: sky.band,
         set_aside,
         exposure_s: times[0].1.unwrap_or(0.0),
     })
@@ -293,6 +299,8 @@ struct Sky<'a> {
     session: &'a Session,
     sequence: &'a Sequence,
     track: SunTrack,
+    /// The filter's band at mid sequence; none above the air.
+    band: Option<BandInAir>,
 }
 
 /// Room about the track, so that rates can be had at its ends, s.
@@ -307,11 +315,24 @@ impl<'a> Sky<'a> {
     ) -> Result<Self, Error> {
         let (from, to) = (first.plus_s(-TRACK_MARGIN_S), last.plus_s(TRACK_MARGIN_S));
         let track = SunTrack::new(from, to, &place(session), session.time.ut1_minus_utc_s)?;
+        let middle = first.plus_s(0.5 * last.minus(first));
+        let sun = track.at(middle)?;
+        sky::require_above_horizon(middle, &sun)?;
+        let band = match station_air(session, middle, sun.azimuth_rad)? {
+            Some((it, _)) => Some(band::in_air(&sequence.filter, &it, sun.zenith_true_rad)?),
+            None => None,
+        };
         Ok(Self {
             session,
             sequence,
             track,
+            band,
         })
+    }
+
+    /// Wavelength at which the air bends the band's light as it does on average.
+    fn wavelength_nm(&self) -> f64 {
+        self.band.map_or(self.sequence.filter.centre_nm, |it| it.effective_nm)
     }
 
     /// Sun, camera and air at a time.
@@ -319,7 +340,7 @@ impl<'a> Sky<'a> {
         let sun = self.track.at(at)?;
         let station = station_air(self.session, at, sun.azimuth_rad)?;
         let air = match &station {
-            Some((it, _)) => Air::over(it, self.sequence.filter.centre_nm)?,
+            Some((it, _)) => Air::over(it, self.wavelength_nm())?,
             None => Air::none(),
         };
         let orientation = sky::orientation(

@@ -1,6 +1,7 @@
 //! The main job: the stages in order, each called once.
 
 mod assemble;
+mod band;
 mod correct;
 mod definitions;
 mod error;

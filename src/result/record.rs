@@ -342,6 +342,10 @@ pub struct RefractionRecord {
     pub flattening_mas: f64,
     /// Standard uncertainty of the flattening, mas.
     pub flattening_sigma_mas: f64,
+    /// Wavelength at which the refraction is that of the whole band, nm.
+    pub effective_wavelength_nm: f64,
+    /// How far the air draws the band's half-power wavelengths apart, mas.
+    pub smear_mas: f64,
     /// Refractivity `n - 1` at the telescope.
     pub refractivity: f64,
     /// Pressure at mid sequence, hPa.

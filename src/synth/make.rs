@@ -279,9 +279,14 @@ fn calibration(
     folder: &Folder,
 ) -> Result<(), SynthError> {
     let flat_e = (FLAT_LEVEL * f64::from(s.saturation_adu) - s.dark_adu) * s.gain_e_adu;
-    let (dark, flat): (fn(u32) -> Stream, fn(u32) -> Stream) = (Stream::Dark, Stream::Flat);
-    let kinds = [("dark.fits", 0.0, dark), ("flat.fits", flat_e, flat)];
-    for (name, light_e, stream) in kinds {
+    for (name, light_e) in [("dark.fits", 0.0), ("flat.fits", flat_e)] {
+        let stream = |it| {
+            if light_e == 0.0 {
+                Stream::Dark(it)
+            } else {
+                Stream::Flat(it)
+            }
+        };
         let planes: Vec<_> = (0..CALIBRATION_FRAMES)
             .into_par_iter()
             .map(|it| detector.exposed(|_, _| light_e, &mut Draw::new(seed, stream(it))))

@@ -262,6 +262,8 @@ pub(super) fn refraction(sequence: usize, zenith_deg: f64) -> RefractionRecord {
         radius_change_mas: -refractivity * radius_mas * (1.0 + 0.5 * tan2),
         flattening_mas,
         flattening_sigma_mas: 0.004 * flattening_mas + 0.4,
+        effective_wavelength_nm: 550.1,
+        smear_mas: 30.0,
         refractivity,
         pressure_hpa: 778.2,
         temperature_c: 9.4 + 0.6 * sequence as f64,
