@@ -524,38 +524,35 @@ fn refraction_prints_the_agreed_names() {
     let table = json(&arguments);
     let rows = table.as_array().unwrap();
     assert_eq!(rows.len(), 2);
-    let keys = |it: &Value| {
-        let mut keys: Vec<String> = it.as_object().unwrap().keys().cloned().collect();
-        keys.sort();
-        keys
-    };
+    let keys = |it: &Value| -> Vec<String> { it.as_object().unwrap().keys().cloned().collect() };
     for row in rows {
         assert_eq!(
             keys(row),
             [
-                "dispersion_mas_per_nm",
-                "dr_dz",
-                "flattening_mas",
-                "m3_mas",
-                "p4_mas",
-                "radius_change_mas",
-                "refraction_arcsec",
-                "refractivity",
-                "sensitivity",
-                "wavelength_nm",
                 "zenith_apparent_deg",
                 "zenith_true_deg",
+                "wavelength_nm",
+                "refractivity",
+                "refraction_arcsec",
+                "dr_dz",
+                "radius_change_mas",
+                "flattening_mas",
+                "p4_mas",
+                "m3_mas",
+                "dispersion_mas_per_nm",
+                "sensitivity",
+                "warnings",
             ]
         );
         assert_eq!(
             keys(&row["sensitivity"]),
             [
-                "humidity",
                 "pressure_hpa",
                 "temperature_c",
-                "vertical_arcmin",
+                "humidity",
                 "wavelength_nm",
                 "zenith_arcmin",
+                "vertical_arcmin",
             ]
         );
         // Refraction lifts, so the true zenith distance is the larger, and flattens upright.
@@ -567,6 +564,55 @@ fn refraction_prints_the_agreed_names() {
     // First order, R = (n - 1) tan z: a textbook formula, good to a part in a thousand at 30 deg.
     let plane = number(&rows[0], "refractivity") * 30f64.to_radians().tan() * 206_264.806;
     assert!((number(&rows[0], "refraction_arcsec") / plane - 1.0).abs() < 2e-3);
+}
+
+#[test]
+fn refraction_of_a_band_says_where_its_light_is() {
+    let mut arguments = STATION.to_vec();
+    arguments.extend(["--zenith-deg", "60,72", "--width-nm", "100", "--json"]);
+    let table = json(&arguments);
+    let rows = table.as_array().unwrap();
+    let of = |row: usize, name: &str| number(&rows[row], name);
+    for row in 0..2 {
+        assert!((of(row, "wavelength_nm") - 550.0).abs() < 1e-9);
+        // Steeper in the blue: the mean of the refraction lies on the blue side of the light's.
+        let blueward = of(row, "centroid_wavelength_nm") - of(row, "effective_wavelength_nm");
+        assert!((1.5..3.0).contains(&blueward), "{blueward}");
+        // A flat band's spread is root 12 of its standard deviation.
+        let ratio = of(row, "smear_mas") / of(row, "smear_rms_mas");
+        assert!((3.3..3.7).contains(&ratio), "{ratio}");
+        assert!(of(row, "smear_flattening_mas") > 0.0);
+    }
+    // More air reddens the light.
+    assert!(of(1, "centroid_wavelength_nm") > of(0, "centroid_wavelength_nm"));
+    let warnings = |row: usize| rows[row]["warnings"].to_string();
+    assert!(!warnings(0).contains("above"), "{}", warnings(0));
+    assert!(warnings(1).contains("above 70"), "{}", warnings(1));
+}
+
+#[test]
+fn refraction_names_the_argument_that_cannot_be() {
+    let changed = |index: usize, value: &'static str| {
+        let mut arguments = STATION.to_vec();
+        arguments[index] = value;
+        arguments.extend(["--zenith-deg", "45"]);
+        arguments
+    };
+    assert_refused_in_a_line(&changed(10, "45"), &["--humidity", "fraction", "percent"]);
+    assert_refused_in_a_line(&changed(6, "1013"), &["--pressure-hpa", "sea level"]);
+    assert_refused_in_a_line(&changed(8, "-300"), &["--temperature-c", "absolute zero"]);
+    assert_refused_in_a_line(&changed(12, "50"), &["--wavelength-nm", "50 nm", "300"]);
+    assert_refused_in_a_line(
+        &changed(12, "20000"),
+        &["--wavelength-nm", "20000 nm", "2500"],
+    );
+    assert_refused_in_a_line(&changed(4, "46000"), &["--height-m", "45000 m"]);
+    let path = Path::new(env!("CARGO_MANIFEST_DIR")).join("demo-data/sounding.csv");
+    let sounding = path.to_str().unwrap();
+    let mut arguments = changed(4, "2000");
+    arguments[6] = "800";
+    arguments.extend(["--profile", sounding]);
+    assert_refused_in_a_line(&arguments, &["--profile", "2210 m", "2000 m"]);
 }
 
 #[test]

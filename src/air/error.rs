@@ -197,7 +197,7 @@ pub enum AirError {
 pub enum AirWarning {
     /// Pressure outside the range stated by the author of the formula.
     #[error(
-        "pressure {pressure_hpa} hPa is outside {min_hpa} to {max_hpa} hPa, where {formula} was fitted"
+        "pressure {pressure_hpa:.1} hPa is outside {min_hpa} to {max_hpa} hPa, where {formula} was fitted"
     )]
     Pressure {
         /// Name of the formula.
@@ -211,7 +211,7 @@ pub enum AirWarning {
     },
     /// Temperature outside the range stated by the author of the formula.
     #[error(
-        "temperature {temperature_c} C is outside {min_c} to {max_c} C, where {formula} was fitted"
+        "temperature {temperature_c:.1} C is outside {min_c} to {max_c} C, where {formula} was fitted"
     )]
     Temperature {
         /// Name of the formula.

@@ -230,10 +230,12 @@ pub fn refractivity_warnings(
 
 /// Caution due to the zenith distance of the disk; none up to 60 degrees.
 pub fn zenith_warning(zenith_rad: f64) -> Option<AirWarning> {
+    /// A disk at 60 degrees, there and back through radians, is not above 60.
+    const ROUNDING_DEG: f64 = 1e-9;
     let zenith_deg = zenith_rad.to_degrees();
-    if zenith_deg > 70.0 {
+    if zenith_deg > 70.0 + ROUNDING_DEG {
         Some(AirWarning::ZenithAbove70 { zenith_deg })
-    } else if zenith_deg > 60.0 {
+    } else if zenith_deg > 60.0 + ROUNDING_DEG {
         Some(AirWarning::ZenithAbove60 { zenith_deg })
     } else {
         None

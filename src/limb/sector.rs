@@ -79,7 +79,7 @@ impl Fit {
         let per_electron = 1.0 / setup.detector.gain_e_adu;
         let prior_sigma = BLUR_PRIOR.0 * setup.blur_start.abs() + BLUR_PRIOR.1;
         let mut normal = SMatrix::<f64, PARAMETERS, PARAMETERS>::zeros();
-        let mut used = 0;
+        let mut used = 0_usize;
         let mut chi2 = 0.0;
         for _ in 0..rounds {
             let rows = setup.table.rows(sector, self.blur);

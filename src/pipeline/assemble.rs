@@ -5,7 +5,7 @@ use super::limb_model::LimbModel;
 use super::measure::MeasuredSequence;
 use super::solve::{SeeingResult, Selected, Shape, frame_r0_m, zenith_factor};
 use super::stacking::Stacks;
-use super::{Error, Options, SetAside, definitions};
+use super::{Options, SetAside, definitions};
 use crate::budget;
 use crate::result::record::{
     AirRecord, BudgetLine, ByStack, Covariance, DistortionRecord, FrameTrace, HarmonicRecord,
@@ -14,6 +14,7 @@ use crate::result::record::{
     SequenceRecord, ShapeQuantity, ShapeRecord, SourceFile, Status, Traces, TurbulenceRecord,
     WarningRecord,
 };
+use crate::seeing::LEAST_FRAMES;
 use crate::session::Session;
 use crate::shape::{Contribution, Fit, Known, REFERENCE_RADIUS_MAS};
 use crate::stack::Stack;
@@ -39,7 +40,7 @@ pub(super) struct Parts<'a> {
 }
 
 /// The record and what the figures show beside it.
-pub(super) fn record(p: &Parts<'_>) -> Result<(Record, Traces), Error> {
+pub(super) fn record(p: &Parts<'_>) -> (Record, Traces) {
     let first = &p.measured[0];
     let last = &p.measured[p.measured.len() - 1];
     let end = last.frames.last().map_or(last.middle_utc, |it| it.utc);
@@ -67,7 +68,7 @@ pub(super) fn record(p: &Parts<'_>) -> Result<(Record, Traces), Error> {
         warnings: warnings(p),
     };
     record.summary = crate::report::summary_sentence(&record);
-    Ok((record, traces(p)))
+    (record, traces(p))
 }
 
 /// All lines of the budget.
@@ -549,7 +550,7 @@ fn predicted_frame_mas(p: &Parts<'_>) -> Result<f64, String> {
     for (sequence, own) in p
         .measured
         .iter()
-        .filter(|it| it.frames.len() >= 8)
+        .filter(|it| it.frames.len() >= LEAST_FRAMES)
         .zip(&it.sequences)
     {
         let view = crate::seeing::View {
@@ -571,7 +572,7 @@ fn predicted_frame_mas(p: &Parts<'_>) -> Result<f64, String> {
         count += n;
     }
     if count == 0.0 {
-        Err("no sequence of eight frames".to_owned())
+        Err("no sequence has enough frames".to_owned())
     } else {
         Ok((sum / count).sqrt())
     }
@@ -745,14 +746,14 @@ fn sequence(
                 .measured
                 .iter()
                 .take(position)
-                .filter(|it| it.frames.len() >= 8)
+                .filter(|it| it.frames.len() >= LEAST_FRAMES)
                 .count();
-            match it.sequences.get(before).filter(|_| m.frames.len() >= 8) {
+            match it.sequences.get(before).filter(|_| m.frames.len() >= LEAST_FRAMES) {
                 Some(it) => {
                     let up = zenith_factor(m);
                     Quantity::measured(it.r0_los_500nm_m * up, it.r0_los_sigma_m * up, "m")
                 }
-                None => Quantity::missing("m", "fewer than 8 frames"),
+                None => Quantity::missing("m", "too few frames"),
             }
         }
         Err(reason) => Quantity::missing("m", reason),
@@ -810,7 +811,7 @@ fn masked(m: &MeasuredSequence) -> Vec<MaskedArc> {
         let to_deg = (middle + 0.5 * width).to_degrees();
         match (out.last_mut(), last) {
             (Some(arc), Some(before)) if before + 1 == s && arc.reason == blemish.words() => {
-                arc.to_deg = to_deg
+                arc.to_deg = to_deg;
             }
             _ => out.push(MaskedArc {
                 sequence: m.index,
@@ -823,6 +824,16 @@ fn masked(m: &MeasuredSequence) -> Vec<MaskedArc> {
         last = Some(s);
     }
     out
+}
+
+/// Standard uncertainty by the refractivity formula above which its range deserves a word, mas of
+/// oblateness and of radius.
+const FORMULA_WORD_MAS: [f64; 2] = [0.1, 1.0];
+
+fn formula_weighs(p: &Parts<'_>) -> bool {
+    lines(p, &p.shape.fit).filter(|it| it.term == "refractivity formula").any(|it| {
+        it.oblateness_mas2.sqrt() > FORMULA_WORD_MAS[0] || it.radius_mas2.sqrt() > FORMULA_WORD_MAS[1]
+    })
 }
 
 /// Zenith distances above these deserve a word.
@@ -870,7 +881,12 @@ fn warnings(p: &Parts<'_>) -> Vec<WarningRecord> {
             let formula = p.session.refractivity.formula;
             let nm = m.setup.optics.wavelength_nm;
             for it in crate::air::refractivity_warnings(&it, nm, formula) {
-                say("refractivity", it.to_string());
+                // Every mountain lies outside the stated range of pressure: the budget has its line, and
+                // a word is due where that line weighs.
+                let of_pressure = matches!(it, crate::air::AirWarning::Pressure { .. });
+                if !of_pressure || formula_weighs(p) {
+                    say("refractivity", it.to_string());
+                }
             }
         }
         if !m.lost.is_empty() {

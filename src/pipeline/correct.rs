@@ -46,13 +46,11 @@ pub(super) fn correct(sequence: &MeasuredSequence) -> CorrectedSequence {
         let limb = refraction::remove(&frame.limb, sequence.setup.plate, &frame.moment);
         let usable = usable(frame, sequence);
         if last.as_ref().is_none_or(|it| it.0 != usable) {
-            match Projector::new(&limb.angles_rad, &usable, HIGHEST) {
-                Some(it) => last = Some((usable.clone(), it)),
-                None => {
-                    out.gaps.push(k);
-                    continue;
-                }
-            }
+            let Some(it) = Projector::new(&limb.angles_rad, &usable, HIGHEST) else {
+                out.gaps.push(k);
+                continue;
+            };
+            last = Some((usable.clone(), it));
         }
         let Some((_, projector)) = &last else {
             continue;

@@ -64,14 +64,14 @@ pub enum Error {
     )]
     NoSequence,
     /// A file could not be written or read.
-    #[error("{}: {what}: {source}", path.display())]
+    #[error("{}: {what}: {reason}", path.display())]
     File {
         /// The file.
         path: PathBuf,
         /// What was tried.
         what: &'static str,
         /// What the system said.
-        source: std::io::Error,
+        reason: String,
     },
     /// A record could not be put into text.
     #[error("{what}: {source}")]

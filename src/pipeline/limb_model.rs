@@ -124,7 +124,7 @@ fn blur_family(
     }
     let optics = LimbOptics {
         exposure: Exposure::Long,
-        ..setup.optics.clone()
+        ..setup.optics
     };
     let mut share = 0.5;
     let mut found = with(&optics, share * blur)?;
@@ -149,7 +149,7 @@ fn other_law(
     let Ok(darkening) = Darkening::new(DarkeningLaw::NeckelLabs1994, wavelength_nm) else {
         return Ok(None);
     };
-    let mut optics = setup.optics.clone();
+    let mut optics = setup.optics;
     optics.edge.darkening = darkening;
     Ok(Some(with(&optics, blur)?.radius_mas))
 }

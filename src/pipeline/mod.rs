@@ -107,7 +107,7 @@ pub fn reduce(
         stacks: &stacks,
         sources: products::sources(session)?,
     };
-    let (record, traces) = assemble::record(&parts)?;
+    let (record, traces) = assemble::record(&parts);
     Ok(Outcome {
         record,
         traces,

@@ -105,7 +105,7 @@ fn motion(
     let list: Vec<HarmonicSeries<'_>> = owned
         .iter()
         .zip(measured)
-        .filter(|(it, _)| it.time_s.len() >= 8)
+        .filter(|(it, _)| it.time_s.len() >= seeing::LEAST_FRAMES)
         .map(|(it, m)| HarmonicSeries {
             time_s: &it.time_s,
             cos_mas: &it.cos_mas,

@@ -19,7 +19,7 @@
 //!
 //! # Valid for
 //!
-//! 8 frames or more in a sequence.
+//! 6 frames or more in a sequence.
 //!
 //! # Accuracy
 //!
@@ -34,7 +34,7 @@ use super::error::SeeingError;
 use ndarray::Array2;
 
 /// Fewest frames of a sequence.
-const LEAST_FRAMES: usize = 8;
+pub const LEAST_FRAMES: usize = 6;
 
 /// One sequence's harmonics of the limb's radial displacement, in the detector's frame.
 #[derive(Clone, Copy, Debug)]

@@ -30,9 +30,9 @@ use super::screens::{Field, LayerFacts, Scale, Screens, coarse_period_m};
 use super::sky_above::Moment;
 use crate::units::ARCSEC_RAD;
 
-/// How many periods of the coarse field the fastest layer may blow before new screens are drawn:
-/// on its slanting way it does not meet itself within an outer scale.
-const PERIODS: f64 = 3.0;
+/// Share of the coarse field's period that the fastest layer may blow before new screens are drawn:
+/// no layer comes back to where it began, whatever the wind's direction.
+const PERIODS: f64 = 0.9;
 
 /// Seconds for which one set of screens serves.
 pub(super) fn stretch_s(s: &Scenario) -> f64 {

@@ -74,7 +74,7 @@ impl Profile {
                     .filter(|&l| l != k)
                     .map(|l| (t - f64::from(l)) / f64::from(k - l))
                     .product();
-                weight * self.values[(i as i64 + i64::from(k)) as usize]
+                weight * self.values[i.checked_add_signed(k as isize).unwrap()]
             })
             .sum()
     }

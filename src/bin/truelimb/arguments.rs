@@ -176,7 +176,7 @@ pub(crate) struct Refraction {
     /// What humidity is relative to: water-giacomo, water-iapws, ice-below-zero-iapws.
     #[arg(long, value_name = "NAME", default_value = "water-giacomo")]
     pub(crate) humidity_over: String,
-    /// A sounding: CSV of height_m, pressure_hpa, temperature_c, relative_humidity.
+    /// A sounding: CSV of `height_m`, `pressure_hpa`, `temperature_c`, `relative_humidity`.
     #[arg(long, value_name = "FILE")]
     pub(crate) profile: Option<PathBuf>,
     /// Print JSON.

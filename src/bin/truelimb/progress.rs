@@ -12,7 +12,7 @@ pub(crate) fn say(text: &str) {
 
 /// Progress on stderr.
 pub(crate) struct Bar {
-    bar: Mutex<Option<ProgressBar>>,
+    shown: Mutex<Option<ProgressBar>>,
     quiet: bool,
     terminal: bool,
 }
@@ -21,7 +21,7 @@ impl Bar {
     /// A bar, or silence.
     pub(crate) fn new(quiet: bool) -> Self {
         Self {
-            bar: Mutex::new(None),
+            shown: Mutex::new(None),
             quiet,
             terminal: std::io::stderr().is_terminal(),
         }
@@ -29,7 +29,7 @@ impl Bar {
 
     /// Takes the bar away.
     pub(crate) fn finish(&self) {
-        if let Ok(mut slot) = self.bar.lock()
+        if let Ok(mut slot) = self.shown.lock()
             && let Some(it) = slot.take()
         {
             it.finish_and_clear();
@@ -54,13 +54,13 @@ impl Progress for Bar {
             bar.set_style(it);
         }
         bar.set_message(name.to_owned());
-        if let Ok(mut slot) = self.bar.lock() {
+        if let Ok(mut slot) = self.shown.lock() {
             *slot = Some(bar);
         }
     }
 
     fn tick(&self) {
-        if let Ok(slot) = self.bar.lock()
+        if let Ok(slot) = self.shown.lock()
             && let Some(it) = slot.as_ref()
         {
             it.inc(1);

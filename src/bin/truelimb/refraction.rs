@@ -15,7 +15,7 @@ use truelimb::optics::{Blur, Exposure, LimbOptics, OpticsError, ProfileMaker, Te
 use truelimb::session;
 use truelimb::units::{ARCSEC_RAD, FWHM_PER_SIGMA};
 
-/// A line of the table: the names of old first, then what a band adds, then what must be known.
+/// A line of the table: the agreed names first, then what a band adds, then what must be known.
 #[derive(Debug, Serialize)]
 struct Line {
     #[serde(flatten)]
@@ -392,7 +392,7 @@ fn block(columns: &[Column], lines: &[Line]) -> String {
         .collect();
     for line in lines {
         for (cells, (_, _, digits, number)) in cells.iter_mut().zip(columns) {
-            cells.push(number(line).map_or_else(|| "-".to_owned(), |it| format!("{it:.digits$}")));
+            cells.push(number(line).map_or_else(|| "-".to_owned(), |it| printed(it, *digits)));
         }
     }
     let widths: Vec<usize> = cells
@@ -410,4 +410,13 @@ fn block(columns: &[Column], lines: &[Line]) -> String {
         })
         .collect();
     rows.join("\n")
+}
+
+/// A number with so many digits, without the sign of a zero.
+fn printed(number: f64, digits: usize) -> String {
+    let text = format!("{number:.digits$}");
+    let is_zero = text.bytes().all(|it| matches!(it, b'-' | b'0' | b'.'));
+    text.strip_prefix('-')
+        .filter(|_| is_zero)
+        .map_or_else(|| text.clone(), ToOwned::to_owned)
 }

@@ -113,7 +113,6 @@ fn a_still_limb_stands_where_the_map_of_the_disk_says() {
                 / 45.0
         };
         let (cos, sin) = (part(f64::cos), part(f64::sin));
-        eprintln!("still limb, m = {m}: {cos:.4} {sin:.4} mas");
         assert!(
             cos.abs() < LIMB_MAS && sin.abs() < LIMB_MAS,
             "m = {m}: {cos} {sin} mas"
@@ -184,7 +183,6 @@ fn harmonics(draws: u32, tolerance_sigma: f64) {
         for (m, (power, kernel)) in power.iter().zip(kernels).enumerate() {
             let ratio = power / count / (factor * kernel);
             let sigma = f64::sqrt(if m == 0 { 2.0 } else { 1.0 } / count);
-            eprintln!("ring {ring_m} m, m = {m}: {ratio:.4} +- {sigma:.4}");
             let allowed = tolerance_sigma * sigma + 0.01;
             assert!(
                 (ratio - 1.0).abs() < allowed,
