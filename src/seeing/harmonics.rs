@@ -77,7 +77,7 @@ const GROUPS: [(usize, usize); 4] = [(0, 1), (2, 4), (5, 10), (11, usize::MAX)];
 ///
 /// # Errors
 ///
-/// [`SeeingError`] for fewer than 8 frames, harmonics that end before m = 6, or inputs of unlike
+/// [`SeeingError`] for fewer than 6 frames, harmonics that end before m = 6, or inputs of unlike
 /// length.
 pub fn harmonic_power(
     sequence: usize,

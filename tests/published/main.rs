@@ -17,6 +17,7 @@ mod meeus_1998;
 mod motion_sessions;
 mod reda_andreas_2004;
 mod refraction_integral;
+mod refraction_properties;
 mod refraction_tables;
 mod refractivity_formulas;
 mod seeing_scales;

@@ -303,7 +303,7 @@ fn what_cannot_be_measured_is_refused() {
         measure(&[few], &setup),
         Err(SeeingError::TooFewFrames {
             found: 5,
-            least: 8,
+            least: 6,
             ..
         })
     ));
