@@ -31,6 +31,10 @@ const SMALLEST_GAIN: f64 = 0.012;
 /// Least relative deviation of the misfit that counts.
 const SMALLEST_MISFIT: f64 = 0.6;
 
+/// Misfit below which nothing is wrong with a sector, whatever its neighbours: the noise expected of
+/// it, with room for chance.
+const ORDINARY_MISFIT: f64 = 1.5;
+
 /// Half width of the running median, as a share of the limb.
 const RUNNING_SHARE: f64 = 0.06;
 
@@ -100,7 +104,7 @@ pub fn judge(limbs: &[&ObservedLimb]) -> Vec<Option<Blemish>> {
                 Some(Blemish::Seldom)
             } else if bright[s] {
                 Some(Blemish::Brightness)
-            } else if odd[s] {
+            } else if odd[s] && misfit[s] > ORDINARY_MISFIT {
                 Some(Blemish::Profile)
             } else {
                 None

@@ -81,9 +81,17 @@ fn levels(image: ArrayView2<'_, f32>) -> Result<(f64, f64), LimbError> {
     let mut sample: Vec<f64> = image
         .slice(ndarray::s![..;step, ..;step])
         .iter()
-        .filter(|it| it.is_finite())
         .map(|&it| f64::from(it))
         .collect();
+    // What is blanked beyond the limb counts as the darkest that is left.
+    let darkest = sample
+        .iter()
+        .copied()
+        .filter(|it| it.is_finite())
+        .fold(f64::INFINITY, |a, b| if b < a { b } else { a });
+    for it in sample.iter_mut().filter(|it| !it.is_finite()) {
+        *it = darkest;
+    }
     sample.sort_by(f64::total_cmp);
     let at = |share: f64| {
         sample

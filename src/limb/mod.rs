@@ -84,6 +84,14 @@ pub enum LimbError {
         /// Radius predicted.
         expected_px: f64,
     },
+    /// The disk is too small for its limb to be resolved.
+    #[error("the disk's radius is {found_px:.1} px; a limb needs at least {needed_px:.0} px of it")]
+    TooSmall {
+        /// Radius found.
+        found_px: f64,
+        /// Radius needed.
+        needed_px: f64,
+    },
     /// Too much of the limb is outside the field, masked or unusable.
     #[error(
         "only {found} of {sectors} sectors of the limb could be measured; at least {needed} are needed"

@@ -87,7 +87,7 @@ impl EdgeTable {
         pixel_arcsec: f64,
         angles_rad: &[f64],
     ) -> Result<Self, OpticsError> {
-        let span_arcsec = 24.0_f64.max(7.0 * pixel_arcsec);
+        let span_arcsec = (7.0 * pixel_arcsec).clamp(24.0, 90.0);
         let step_arcsec = (pixel_arcsec / 64.0).clamp(0.008, 0.04);
         let maker = ProfileMaker::new(optics, span_arcsec, step_arcsec, pixel_arcsec)?;
         let mut classes: Vec<f64> = Vec::new();

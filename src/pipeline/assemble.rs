@@ -748,7 +748,11 @@ fn sequence(
                 .take(position)
                 .filter(|it| it.frames.len() >= LEAST_FRAMES)
                 .count();
-            match it.sequences.get(before).filter(|_| m.frames.len() >= LEAST_FRAMES) {
+            match it
+                .sequences
+                .get(before)
+                .filter(|_| m.frames.len() >= LEAST_FRAMES)
+            {
                 Some(it) => {
                     let up = zenith_factor(m);
                     Quantity::measured(it.r0_los_500nm_m * up, it.r0_los_sigma_m * up, "m")
@@ -831,9 +835,12 @@ fn masked(m: &MeasuredSequence) -> Vec<MaskedArc> {
 const FORMULA_WORD_MAS: [f64; 2] = [0.1, 1.0];
 
 fn formula_weighs(p: &Parts<'_>) -> bool {
-    lines(p, &p.shape.fit).filter(|it| it.term == "refractivity formula").any(|it| {
-        it.oblateness_mas2.sqrt() > FORMULA_WORD_MAS[0] || it.radius_mas2.sqrt() > FORMULA_WORD_MAS[1]
-    })
+    lines(p, &p.shape.fit)
+        .filter(|it| it.term == "refractivity formula")
+        .any(|it| {
+            it.oblateness_mas2.sqrt() > FORMULA_WORD_MAS[0]
+                || it.radius_mas2.sqrt() > FORMULA_WORD_MAS[1]
+        })
 }
 
 /// Zenith distances above these deserve a word.

@@ -28,5 +28,7 @@ pub(super) fn in_air(
     let reddened = known(low_nm) && known(band.centre_nm()) && known(high_nm);
     let photons = |nm: f64| air::solar_photons(nm) * if reddened { edge(nm) } else { 1.0 };
     let pressure_hpa = station.conditions.pressure_hpa;
-    Ok(band.light_through_air(photons, pressure_hpa, zenith_rad)?.in_air(station)?)
+    Ok(band
+        .light_through_air(photons, pressure_hpa, zenith_rad)?
+        .in_air(station)?)
 }

@@ -332,7 +332,8 @@ impl<'a> Sky<'a> {
 
     /// Wavelength at which the air bends the band's light as it does on average.
     fn wavelength_nm(&self) -> f64 {
-        self.band.map_or(self.sequence.filter.centre_nm, |it| it.effective_nm)
+        self.band
+            .map_or(self.sequence.filter.centre_nm, |it| it.effective_nm)
     }
 
     /// Sun, camera and air at a time.
@@ -652,6 +653,7 @@ fn short(error: &LimbError) -> &'static str {
         LimbError::NoDisk { .. } => "no disk in the frame",
         LimbError::TooFewCrossings { .. } => "disk cut by the field",
         LimbError::WrongRadius { .. } => "radius disagrees with the plate scale",
+        LimbError::TooSmall { .. } => "disk too small",
         LimbError::TooFewSectors { .. } => "less than half of the limb usable",
         LimbError::Unstable { .. } => "no stable centre",
     }

@@ -33,7 +33,11 @@ pub fn sources(session: &Session) -> Result<Vec<SourceFile>, Error> {
         .par_iter()
         .map(|path| {
             let bytes = std::fs::metadata(path)
-                .map_err(|it| Error::File { path: (*path).clone(), what: "could not be read", reason: it.to_string() })?
+                .map_err(|it| Error::File {
+                    path: (*path).clone(),
+                    what: "could not be read",
+                    reason: it.to_string(),
+                })?
                 .len();
             let shown = path.strip_prefix(folder).unwrap_or(path);
             Ok(SourceFile {
@@ -52,7 +56,11 @@ pub fn sources(session: &Session) -> Result<Vec<SourceFile>, Error> {
 /// When the folder or a file cannot be written; what was there before under a name stays whole.
 pub fn write(outcome: &Outcome, session: &Session, folder: &Path) -> Result<(), Error> {
     let figures = folder.join("figures");
-    std::fs::create_dir_all(&figures).map_err(|it| Error::File { path: figures.clone(), what: "the folder could not be made", reason: it.to_string() })?;
+    std::fs::create_dir_all(&figures).map_err(|it| Error::File {
+        path: figures.clone(),
+        what: "the folder could not be made",
+        reason: it.to_string(),
+    })?;
     limbs(outcome, session, &folder.join("limbs.fits"))?;
     stack(outcome, session, &folder.join("stack.fits"))?;
     seeing_table(outcome, &folder.join("seeing.ecsv"))?;

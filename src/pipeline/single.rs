@@ -2,7 +2,8 @@
 //!
 //! The plate scale is taken from the disk itself (a Sun of 959.6 arcsec), which only sets how limb
 //! darkening and blur look; every result is in pixels. Errors come from the scatter of the sectors
-//! about the fitted harmonics, which holds photon noise and whatever the air did to this image.
+//! about the fitted harmonics, which holds photon noise and whatever the air did to this image; that
+//! of the radius also holds what is not known of the camera's blur and of the Sun's edge.
 
 use super::Error;
 use crate::calibrate::{Calibration, Detector};
@@ -112,6 +113,16 @@ const RADIUS_ARCSEC: f64 = 959.6;
 /// Scale height of the Sun's edge, arcsec.
 const EDGE_ARCSEC: f64 = 0.11;
 
+/// Smallest radius whose limb is measured, px: 10 arcsec a pixel.
+const SMALLEST_PX: f64 = 96.0;
+
+/// Standard uncertainty of the radius by the thickness of the Sun's edge and its darkening, arcsec.
+const EDGE_SIGMA_ARCSEC: f64 = 0.015;
+
+/// Share of the limb's displacement by blur that depends on the blur's shape: the difference of a
+/// Gaussian and a turbulent blur of one width.
+const BLUR_SIGMA_SHARE: f64 = 0.08;
+
 /// Electrons that the disk's centre is taken to hold, for the weights.
 const ELECTRONS: f64 = 30_000.0;
 
@@ -144,6 +155,13 @@ pub fn limb_of_file(path: &Path, settings: &SingleSettings) -> Result<SingleLimb
 pub fn limb_of_image(image: &Array2<f32>, settings: &SingleSettings) -> Result<SingleLimb, Error> {
     let disk = limb::locate::find(image.view())?;
     let scale = RADIUS_ARCSEC / disk.radius_px;
+    if disk.radius_px < SMALLEST_PX {
+        return Err(LimbError::TooSmall {
+            found_px: disk.radius_px,
+            needed_px: SMALLEST_PX,
+        }
+        .into());
+    }
     let optics = LimbOptics {
         edge: SolarEdge {
             radius_arcsec: RADIUS_ARCSEC,
@@ -198,7 +216,12 @@ pub fn limb_of_image(image: &Array2<f32>, settings: &SingleSettings) -> Result<S
     // A sky that is not zero would count as photons in the weights; the fit's background takes it.
     let found = limb::extract(image.view(), disk, &extraction)?;
     let shift = displacement_arcsec(&optics, settings.definition, &found)?;
-    summed_up(&found, &angles, scale, shift, settings.definition)
+    // How far blur moves the limb, and how well that is known of an unknown camera.
+    let moved = displacement_arcsec(&optics, Definition::Inflection, &found)?;
+    let model_sigma_arcsec = EDGE_SIGMA_ARCSEC.hypot(BLUR_SIGMA_SHARE * moved);
+    let mut out = summed_up(&found, &angles, scale, shift, settings.definition)?;
+    out.radius_sigma_px = out.radius_sigma_px.hypot(model_sigma_arcsec / scale);
+    Ok(out)
 }
 
 /// Displacement of a definition from the template's limb at the image's mean blur, arcsec.
