@@ -24,6 +24,8 @@
 //!
 //! Independence of limb harmonics in isotropic turbulence: [`crate::turbulence`].
 
+use std::ops::Range;
+
 /// First harmonic that judges a frame.
 pub const FIRST_JUDGING: usize = 5;
 
@@ -41,17 +43,22 @@ pub struct Candidate {
     pub high_power: Vec<f64>,
 }
 
+/// The runs of neighbouring frames of one sequence.
+fn runs(candidates: &[Candidate]) -> impl Iterator<Item = Range<usize>> {
+    candidates
+        .chunk_by(|a, b| a.sequence == b.sequence)
+        .scan(0, |end, run| {
+            let at = *end;
+            *end += run.len();
+            Some(at..*end)
+        })
+}
+
 /// The weights of frames, 1 on average over each sequence.
 pub fn weights(candidates: &[Candidate]) -> Vec<f64> {
     let mut out = vec![1.0; candidates.len()];
-    let mut at = 0;
-    while at < candidates.len() {
-        let end = at
-            + candidates[at..]
-                .iter()
-                .take_while(|it| it.sequence == candidates[at].sequence)
-                .count();
-        let group = &candidates[at..end];
+    for run in runs(candidates) {
+        let group = &candidates[run.clone()];
         let modes = group
             .iter()
             .map(|it| it.high_power.len())
@@ -70,13 +77,12 @@ pub fn weights(candidates: &[Candidate]) -> Vec<f64> {
                     .map(|(p, m)| if *m > 0.0 { 2.0 * p / m } else { 2.0 })
                     .sum();
                 let v = (PRIOR_DOF + sum) / (PRIOR_DOF + dof);
-                out[at + k] = if v > 0.05 { 1.0 / v } else { 20.0 };
+                out[run.start + k] = if v > 0.05 { 1.0 / v } else { 20.0 };
             }
-            let total: f64 = out[at..end].iter().sum();
-            let n = (end - at) as f64;
-            out[at..end].iter_mut().for_each(|it| *it *= n / total);
+            let total: f64 = out[run.clone()].iter().sum();
+            let n = run.len() as f64;
+            out[run].iter_mut().for_each(|it| *it *= n / total);
         }
-        at = end;
     }
     out
 }
@@ -84,20 +90,13 @@ pub fn weights(candidates: &[Candidate]) -> Vec<f64> {
 /// The sharpest share of every sequence's frames, so that no roll loses more than another.
 pub fn sharpest(candidates: &[Candidate], fraction: f64) -> Vec<bool> {
     let mut out = vec![false; candidates.len()];
-    let mut at = 0;
-    while at < candidates.len() {
-        let end = at
-            + candidates[at..]
-                .iter()
-                .take_while(|it| it.sequence == candidates[at].sequence)
-                .count();
-        let mut order: Vec<usize> = (at..end).collect();
+    for run in runs(candidates) {
+        let keep = (run.len() as f64 * fraction).round().max(2.0) as usize;
+        let mut order: Vec<usize> = run.collect();
         order.sort_by(|&a, &b| candidates[a].blur.total_cmp(&candidates[b].blur));
-        let keep = ((end - at) as f64 * fraction).round().max(2.0) as usize;
         for &k in order.iter().take(keep) {
             out[k] = true;
         }
-        at = end;
     }
     out
 }

@@ -1,0 +1,105 @@
+//! What is known before the fit: the air's refractivity, the camera, the clock, the instrument.
+
+use super::above_the_air;
+use crate::pipeline::measure::MeasuredSequence;
+use crate::session::Session;
+use crate::shape::{Known, RefractivityInput};
+use crate::units::DEG_RAD;
+
+/// Residual fixed to the vertical that the fit allows for, mas.
+const VERTICAL_SIGMA_MAS: f64 = 0.3;
+
+/// Standard uncertainty of the refractivity formula, in `n - 1`: 2e-8 stated for laboratory
+/// pressures, doubled for mountain stations outside the stated range.
+const FORMULA_SIGMA: f64 = 4e-8;
+
+/// What is known before the fit.
+pub(in crate::pipeline) fn known(session: &Session, measured: &[MeasuredSequence]) -> Known {
+    let refractivity = if above_the_air(session) {
+        Vec::new()
+    } else {
+        refractivity_inputs(session, measured)
+    };
+    let camera = &session.camera;
+    Known {
+        vertical_sigma_mas: if refractivity.is_empty() {
+            0.0
+        } else {
+            VERTICAL_SIGMA_MAS
+        },
+        refractivity,
+        camera_angle_sigma_rad: camera.angle_sigma_deg * DEG_RAD,
+        scale_sigma_rel: camera.scale_sigma_rel,
+        clock_sigma_s: session.time.clock_sigma_s,
+        tilt_sigma_arcmin: if above_the_air(session) {
+            0.0
+        } else {
+            session.refractivity.layer_tilt_sigma_arcmin
+        },
+        tilt_tau_s: 60.0 * session.refractivity.layer_tilt_tau_min,
+        distortion_sigma_mas: session.instrument.distortion_sigma_mas,
+    }
+}
+
+/// What makes the air's refractivity uncertain, each with its relative standard uncertainty.
+fn refractivity_inputs(session: &Session, measured: &[MeasuredSequence]) -> Vec<RefractivityInput> {
+    let n = measured.len() as f64;
+    let mean = |k: usize| (measured.iter().map(|it| it.sensitivities[k]).sum::<f64>() / n).abs();
+    let refractivity = measured
+        .iter()
+        .map(|it| it.middle.refractivity)
+        .sum::<f64>()
+        / n;
+    let weather = &session.weather;
+    let line = |term, sigma_rel, scope, how: String| RefractivityInput {
+        term,
+        sigma_rel,
+        scope,
+        how,
+    };
+    vec![
+        line(
+            "pressure",
+            mean(0) * weather.pressure_sigma_hpa,
+            "session",
+            format!(
+                "weather.pressure_sigma_hpa = {} through the refractivity",
+                weather.pressure_sigma_hpa
+            ),
+        ),
+        line(
+            "temperature",
+            mean(1) * weather.temperature_sigma_c,
+            "session",
+            format!(
+                "weather.temperature_sigma_c = {} through the refractivity",
+                weather.temperature_sigma_c
+            ),
+        ),
+        line(
+            "humidity",
+            mean(2) * weather.humidity_sigma,
+            "session",
+            format!(
+                "weather.humidity_sigma = {} through the refractivity",
+                weather.humidity_sigma
+            ),
+        ),
+        line(
+            "wavelength",
+            mean(3) * session.refractivity.wavelength_sigma_nm,
+            "session",
+            format!(
+                "refractivity.wavelength_sigma_nm = {} through the dispersion",
+                session.refractivity.wavelength_sigma_nm
+            ),
+        ),
+        line(
+            "refractivity formula",
+            FORMULA_SIGMA / refractivity,
+            "model",
+            "4e-8 in n: the formula's stated 2e-8, doubled outside its range of pressure"
+                .to_owned(),
+        ),
+    ]
+}

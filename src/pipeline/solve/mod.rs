@@ -1,0 +1,27 @@
+//! Seeing, selection and shape of the corrected limbs.
+
+mod seeing;
+mod select;
+mod known;
+mod shape;
+
+use crate::session::{Session, WeatherSource};
+use crate::turbulence::Aperture;
+
+pub(super) use known::known;
+pub(super) use seeing::{SeeingResult, frame_r0_m, seeing, zenith_factor};
+pub(super) use select::{Selected, select};
+pub(super) use shape::{Shape, shape};
+
+/// Whether the session has no air.
+pub(super) fn above_the_air(session: &Session) -> bool {
+    matches!(session.weather.source, WeatherSource::None)
+}
+
+/// The telescope's aperture as the kernels take it.
+pub(super) fn aperture(session: &Session) -> Aperture {
+    Aperture {
+        diameter_m: session.telescope.aperture_m,
+        obstruction: session.telescope.central_obstruction,
+    }
+}

@@ -1,0 +1,161 @@
+//! The shape of the kept frames, and how it depends on what is kept.
+
+use super::Selected;
+use crate::pipeline::Error;
+use crate::pipeline::limb_model::LimbModel;
+use crate::result::record::KeptPoint;
+use crate::select;
+use crate::shape::{self, Block, Fit, Known, Observation, Separability, ShapeError, SineTerms};
+
+/// The shape of the kept frames and what goes with it.
+#[derive(Clone, Debug)]
+pub(in crate::pipeline) struct Shape {
+    /// The fit.
+    pub fit: Fit,
+    /// The blocks it was made of.
+    pub blocks: Vec<Block>,
+    /// What can be told apart.
+    pub separability: Separability,
+    /// Sine terms about the Sun's axis.
+    pub sines: Option<SineTerms>,
+    /// Inflation of the variance of a mean for m = 0, 2, 3, 4 by correlation in time.
+    pub factor: [f64; 5],
+    /// Which of the usable frames were kept.
+    pub kept: Vec<bool>,
+    /// Kept fraction.
+    pub fraction: f64,
+    /// Error with all frames over error with the kept ones.
+    pub gain: f64,
+    /// Shape against kept fraction.
+    pub curve: Vec<KeptPoint>,
+    /// Early minus late half of the session: oblateness and its uncertainty, mas.
+    pub halves: Option<(f64, f64)>,
+    /// The frames that were fitted.
+    pub observations: Vec<Observation>,
+}
+
+/// Fractions of the curve of the shape against what is kept.
+const FRACTIONS: [f64; 6] = [1.0, 0.8, 0.6, 0.4, 0.2, 0.1];
+
+/// A smaller fraction must lower the random error by this to be taken: the errors are estimates.
+const MUST_PAY: f64 = 0.85;
+
+/// Fits the shape, to all usable frames unless fewer of them do better.
+///
+/// # Errors
+///
+/// When there is nothing to fit.
+pub(in crate::pipeline) fn shape(
+    selected: &Selected,
+    known: &Known,
+    model: &LimbModel,
+) -> Result<Shape, Error> {
+    let usable = selected.observations.len();
+    let mut best: Option<(f64, f64, Vec<bool>)> = None;
+    let mut whole_sigma = f64::NAN;
+    let mut curve = Vec::new();
+    for fraction in FRACTIONS {
+        let kept = if fraction < 1.0 {
+            select::sharpest(&selected.candidates, fraction)
+        } else {
+            vec![true; usable]
+        };
+        let Ok((fit, .., separability)) = fitted(&picked(selected, &kept), known) else {
+            continue;
+        };
+        let [radius, oblateness, _] = fit.sigmas_mas(true);
+        if fraction >= 1.0 {
+            whole_sigma = oblateness;
+        }
+        curve.push(KeptPoint {
+            fraction,
+            frames: kept.iter().filter(|it| **it).count(),
+            oblateness_mas: separability.oblateness.then(|| fit.oblateness_mas()),
+            oblateness_sigma_mas: separability.oblateness.then_some(oblateness),
+            radius_arcsec: (fit.radius_mas() - model.radius_bias_mas) / 1000.0,
+            radius_sigma_mas: radius,
+        });
+        if best
+            .as_ref()
+            .is_none_or(|it| separability.oblateness && oblateness < MUST_PAY * it.1)
+        {
+            best = Some((fraction, oblateness, kept));
+        }
+    }
+    let Some((fraction, sigma, kept)) = best else {
+        return Err(ShapeError::TooFew {
+            frames: usable,
+            sequences: 0,
+        }
+        .into());
+    };
+    let observations = picked(selected, &kept);
+    let (fit, blocks, factor, separability) = fitted(&observations, known)?;
+    let sines = shape::sine_terms(&observations, &blocks, known, &separability);
+    let halves = halves(&observations, known);
+    Ok(Shape {
+        gain: whole_sigma / sigma,
+        fit,
+        blocks,
+        separability,
+        sines,
+        factor,
+        kept,
+        fraction,
+        curve,
+        halves,
+        observations,
+    })
+}
+
+/// The kept observations.
+fn picked(selected: &Selected, kept: &[bool]) -> Vec<Observation> {
+    selected
+        .observations
+        .iter()
+        .zip(kept)
+        .filter(|(_, kept)| **kept)
+        .map(|(it, _)| *it)
+        .collect()
+}
+
+/// A fit, its blocks, the inflation by correlation in time, what can be told apart.
+type Fitted = (Fit, Vec<Block>, [f64; 5], Separability);
+
+/// Fits the shape to all of these frames.
+fn fitted(observations: &[Observation], known: &Known) -> Result<Fitted, ShapeError> {
+    let sequences = {
+        let mut it: Vec<usize> = observations.iter().map(|it| it.sequence).collect();
+        it.dedup();
+        it.len()
+    };
+    if observations.len() < sequences + 1 {
+        return Err(ShapeError::TooFew {
+            frames: observations.len(),
+            sequences,
+        });
+    }
+    let (blocks, factor, _) = shape::blocks(observations);
+    let separability = shape::judge(observations, &blocks, known.distortion_sigma_mas.is_some());
+    let fit = shape::fit(observations, &blocks, known, &separability)?;
+    Ok((fit, blocks, factor, separability))
+}
+
+/// Oblateness of the early half of the sequences minus the late half, where both can tell it.
+fn halves(observations: &[Observation], known: &Known) -> Option<(f64, f64)> {
+    let mut sequences: Vec<usize> = observations.iter().map(|it| it.sequence).collect();
+    sequences.dedup();
+    let middle = *sequences.get(sequences.len() / 2)?;
+    let half = |early: bool| -> Option<Fit> {
+        let part: Vec<Observation> = observations
+            .iter()
+            .filter(|it| (it.sequence < middle) == early)
+            .copied()
+            .collect();
+        let (fit, .., separability) = fitted(&part, known).ok()?;
+        separability.oblateness.then_some(fit)
+    };
+    let (a, b) = (half(true)?, half(false)?);
+    let sigma = a.sigmas_mas(true)[1].hypot(b.sigmas_mas(true)[1]);
+    Some((a.oblateness_mas() - b.oblateness_mas(), sigma))
+}
