@@ -176,7 +176,8 @@ impl Annulus {
         for (&dx, &dy) in offsets.dx.iter().zip(&offsets.dy) {
             let vx = f64::from(dx) - ex;
             let vy = f64::from(dy) - ey;
-            let r = vx.hypot(vy);
+            // The plain root: numbers of some hundred pixels cannot overflow.
+            let r = (vx * vx + vy * vy).sqrt();
             let along = (vy * ct - vx * st) / r;
             let x = r * self.scale_arcsec_px - model - slope * along;
             if x < -self.inside_arcsec || x > self.outside_arcsec {

@@ -212,6 +212,9 @@ pub struct Extraction<'a> {
 /// Steps of the centre's refinement before it is called unstable.
 const MAX_STEPS: usize = 6;
 
+/// Steps after the first that are always taken.
+const LEAST_STEPS: usize = 2;
+
 /// A centre is settled when it moves by less than this, px.
 const SETTLED_PX: f64 = 0.004;
 
@@ -233,7 +236,8 @@ pub fn extract(
     let mut scratch = geometry::Pixels::default();
     let mut moved = f64::INFINITY;
     for step in 0..MAX_STEPS {
-        let rounds = if step == 0 { 4 } else { 2 };
+        // Each round brings the fit a factor of some hundred nearer; the later steps start there.
+        let rounds = if step == 0 { 3 } else { 1 };
         for (s, fit) in fits.iter_mut().enumerate() {
             setup.annulus.gather(s, raw, centre, setup, &mut scratch);
             fit.refine(&scratch, setup, s, rounds);
@@ -244,7 +248,7 @@ pub fn extract(
         if !moved.is_finite() {
             break;
         }
-        if moved < SETTLED_PX && step > 0 {
+        if moved < SETTLED_PX && step >= LEAST_STEPS {
             return finished(centre, &fits, setup);
         }
         centre = (centre.0 + dx / scale, centre.1 + dy / scale);
