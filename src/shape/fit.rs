@@ -30,6 +30,8 @@ pub struct Known {
     pub scale_sigma_rel: f64,
     /// Standard uncertainty of the clock, s.
     pub clock_sigma_s: f64,
+    /// Standard uncertainty of the station's vertical against the plumb line, each axis, arcmin.
+    pub vertical_direction_sigma_arcmin: f64,
     /// Standard deviation of the air's own zenith, each axis, arcmin.
     pub tilt_sigma_arcmin: f64,
     /// Its correlation time, s.
@@ -300,6 +302,19 @@ fn unknowns(blocks: &[Block], known: &Known, separability: &Separability) -> Vec
         Some(known.clock_sigma_s),
         design::clock,
     ));
+    let plumb = Some(known.vertical_direction_sigma_arcmin);
+    out.push(Unknown::new(
+        "plumb line along",
+        "arcmin",
+        plumb,
+        design::tilt_along,
+    ));
+    out.push(Unknown::new(
+        "plumb line across",
+        "arcmin",
+        plumb,
+        design::tilt_across,
+    ));
     let mut sequences: Vec<usize> = blocks.iter().map(|it| it.sequence).collect();
     sequences.dedup();
     for s in sequences {
@@ -540,6 +555,13 @@ fn contributions(
     ] {
         out.push(line(term, group(&|it| it == name), false, scope, how));
     }
+    out.push(line(
+        "direction of the vertical",
+        group(&|it| it.starts_with("plumb line")),
+        false,
+        "session",
+        "deflection of the vertical at the station, as far as the session gives it",
+    ));
     out.push(line(
         "tilted layers",
         group(&|it| it.starts_with("layers")),

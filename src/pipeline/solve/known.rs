@@ -30,6 +30,7 @@ pub(in crate::pipeline) fn known(session: &Session, measured: &[MeasuredSequence
         refractivity,
         camera_angle_sigma_rad: camera.angle_sigma_deg * DEG_RAD,
         scale_sigma_rel: camera.scale_sigma_rel,
+        vertical_direction_sigma_arcmin: plumb_sigma_arcmin(session),
         clock_sigma_s: session.time.clock_sigma_s,
         tilt_sigma_arcmin: if above_the_air(session) {
             0.0
@@ -38,6 +39,20 @@ pub(in crate::pipeline) fn known(session: &Session, measured: &[MeasuredSequence
         },
         tilt_tau_s: 60.0 * session.refractivity.layer_tilt_tau_min,
         distortion_sigma_mas: session.instrument.distortion_sigma_mas,
+    }
+}
+
+/// Deflection of the vertical where the session gives none, and what is left where it does: common
+/// practice, no source (10 to 60 arcsec in mountains), arcmin.
+const PLUMB_SIGMA_ARCMIN: (f64, f64) = (0.25, 0.03);
+
+/// How well the station's vertical is known, each axis.
+fn plumb_sigma_arcmin(session: &Session) -> f64 {
+    let site = &session.site;
+    if site.deflection_north_arcsec == 0.0 && site.deflection_east_arcsec == 0.0 {
+        PLUMB_SIGMA_ARCMIN.0
+    } else {
+        PLUMB_SIGMA_ARCMIN.1
     }
 }
 
