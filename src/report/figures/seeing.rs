@@ -30,8 +30,8 @@ pub(super) fn plate(record: &Record, traces: &Traces) -> Option<Plate> {
         ),
         reading:
             "Above: Fried's parameter from the width of each frame's limb, towards the Sun at \
-                  500 nm; the line and band are the session's own value, from motion and width \
-                  together. Below: the share of frames kept along the same time. Time runs to the \
+                  500 nm; the line and band are the session's own value, from the limb's \
+                  motion. Below: the share of frames kept along the same time. Time runs to the \
                   right; gaps between sequences are closed up."
                 .to_owned(),
         table: frame_table(traces),
