@@ -3,7 +3,6 @@
 
 use super::Error;
 use super::measure::{MeasuredSequence, Setup, limb_optics, predicted};
-use super::solve::SeeingResult;
 use crate::budget::{self, Displacement};
 use crate::disk::{Darkening, DarkeningLaw};
 use crate::limb::Extraction;
@@ -30,11 +29,7 @@ pub(super) struct LimbModel {
 /// # Errors
 ///
 /// Whatever the tables or the extraction refuse.
-pub(super) fn lines(
-    session: &Session,
-    measured: &[MeasuredSequence],
-    _: &SeeingResult,
-) -> Result<LimbModel, Error> {
+pub(super) fn lines(session: &Session, measured: &[MeasuredSequence]) -> Result<LimbModel, Error> {
     let first = &measured[0];
     let setup = &first.setup;
     let (model, slope) = predicted(setup, &first.middle);

@@ -82,7 +82,7 @@ pub fn reduce(
     let limbs: Vec<CorrectedSequence> = measured.iter().map(correct::correct).collect();
     let seeing = solve::seeing(session, &measured, &limbs);
     let selected = solve::select(&measured, &limbs)?;
-    let model = limb_model::lines(session, &measured, &seeing)?;
+    let model = limb_model::lines(session, &measured)?;
     let known = solve::known(session, &measured);
     let shape = solve::shape(&selected, &known, &model)?;
     let stacks = if options.stack {

@@ -13,10 +13,10 @@ use crate::limb::geometry::Annulus;
 use crate::limb::harmonics::Projector;
 use crate::limb::template::EdgeTable;
 use crate::limb::{self, Disk, Extraction, Flag};
-use crate::shape::{self, Block, COMPONENTS, Fit, Known, Observation, REFERENCE_RADIUS_MAS};
+use crate::shape::{self, Block, COMPONENTS, Fit, Known, Observation};
 use crate::sky::Parity;
 use crate::stack::{Placed, Stack};
-use crate::units::{ARCSEC_RAD, MAS_RAD};
+use crate::units::ARCSEC_RAD;
 use ndarray::Array2;
 use std::f64::consts::{FRAC_PI_2, TAU};
 
@@ -230,7 +230,7 @@ fn bounds(values: &[f64]) -> (f64, f64) {
 
 /// Apparent radius of a sequence's Sun without the air, arcsec.
 fn apparent_radius_arcsec(sequence: &MeasuredSequence) -> f64 {
-    ((REFERENCE_RADIUS_MAS * MAS_RAD).sin() / sequence.middle.sun.distance_au).asin() / ARCSEC_RAD
+    shape::reference_radius_rad(sequence.middle.sun.distance_au) / ARCSEC_RAD
 }
 
 /// The shape of the stacks' limbs, or why there is none.
@@ -416,10 +416,7 @@ fn limb_of(
     let radii: Vec<f64> = limb
         .sectors
         .iter()
-        .map(|it| {
-            (distance * (it.radius_arcsec * ARCSEC_RAD).atan().sin()).asin() / MAS_RAD
-                - REFERENCE_RADIUS_MAS
-        })
+        .map(|it| shape::beyond_reference_mas((it.radius_arcsec * ARCSEC_RAD).atan(), distance))
         .collect();
     let found = projector.apply(&radii);
     let variances: Vec<f64> = limb

@@ -25,9 +25,9 @@
 use crate::air::{self, AirError, Bending, Conditions, DiskMap, Profile, StationAir};
 use crate::limb::{Flag, ObservedLimb};
 use crate::session::{Projection, ScaleOf};
-use crate::shape::{AirResponse, REFERENCE_RADIUS_MAS};
+use crate::shape::{self, AirResponse};
 use crate::sky::{Orientation, SunPlace};
-use crate::units::{ARCMIN_RAD, ARCSEC_RAD, MAS_RAD};
+use crate::units::{ARCMIN_RAD, ARCSEC_RAD};
 
 /// The plate: how pixels become directions.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -144,7 +144,7 @@ pub struct Moment {
 pub struct TrueLimb {
     /// Detector angle of every sector's middle, rad.
     pub angles_rad: Vec<f64>,
-    /// Radius at 1 AU minus [`REFERENCE_RADIUS_MAS`], mas; NaN where there is none.
+    /// Radius at 1 AU minus [`shape::REFERENCE_RADIUS_MAS`], mas; NaN where there is none.
     pub radius_mas: Vec<f64>,
     /// Photon noise, mas.
     pub sigma_mas: Vec<f64>,
@@ -177,7 +177,7 @@ impl Moment {
 
     /// Apparent radius on the plate of a round Sun of the reference radius at a detector angle, arcsec.
     pub fn predicted_arcsec(&self, plate: Plate, theta_rad: f64) -> f64 {
-        let true_rad = ((REFERENCE_RADIUS_MAS * MAS_RAD).sin() / self.sun.distance_au).asin();
+        let true_rad = shape::reference_radius_rad(self.sun.distance_au);
         let bearing = self.orientation.position_angle_rad(theta_rad) - self.sun.parallactic_rad;
         let apparent_rad = match &self.map {
             Some(map) => map.apparent_from_true(true_rad, bearing).0,
@@ -222,7 +222,7 @@ impl Moment {
             Some(map) => map.true_from_apparent(apparent, bearing).0,
             None => apparent,
         };
-        (self.sun.distance_au * radius.sin()).asin() / MAS_RAD - REFERENCE_RADIUS_MAS
+        shape::beyond_reference_mas(radius, self.sun.distance_au)
     }
 }
 
@@ -265,7 +265,7 @@ pub fn response(
             ..AirResponse::default()
         });
     };
-    let radius = ((REFERENCE_RADIUS_MAS * MAS_RAD).sin() / sun.distance_au).asin();
+    let radius = shape::reference_radius_rad(sun.distance_au);
     let here = air::distortion(&map, radius);
     let step = ARCMIN_RAD;
     let shifted = |by: f64| -> Result<air::Distortion, AirError> {
@@ -292,7 +292,9 @@ pub fn response(
 mod tests {
     use super::*;
     use crate::air::{Conditions, Site};
+    use crate::shape::REFERENCE_RADIUS_MAS;
     use crate::sky::Parity;
+    use crate::units::MAS_RAD;
 
     fn moment(zenith_true_deg: f64) -> Moment {
         let conditions = Conditions {

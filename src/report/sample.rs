@@ -53,20 +53,6 @@ fn shape(value: f64, random: f64, systematic: f64, unit: &str) -> ShapeQuantity 
     }
 }
 
-fn refused(unit: &str, reason: &str) -> ShapeQuantity {
-    ShapeQuantity {
-        value: None,
-        sigma: None,
-        unit: unit.to_owned(),
-        sigma_random: None,
-        sigma_systematic: None,
-        interval_68: None,
-        interval_95: None,
-        status: Status::NotSeparated,
-        reason: Some(reason.to_owned()),
-    }
-}
-
 const REASON: &str = "a distortion of the instrument at m = 2 has the same signature as the Sun in \
                       this one roll; observe at rolls 45 degrees apart, or over several hours";
 
@@ -102,7 +88,7 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
     let oblateness = match which {
         Session::Short => shape(9.1, 11.2, 5.32, "mas"),
         Session::Season => shape(8.0, 0.52, 0.30, "mas"),
-        Session::Refused => refused("mas", REASON),
+        Session::Refused => ShapeQuantity::not_separated("mas", REASON),
     };
     let radius = match which {
         Session::Season => shape(959.9417, 0.0021, 0.0124, "arcsec"),
@@ -139,7 +125,7 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
         seed: 20_260_621,
         shape: ShapeRecord {
             p4: if separated { shape(-1.3 * scale, 9.4 * scale, 1.8 * scale, "mas") }
-                else { refused("mas", REASON) },
+                else { ShapeQuantity::not_separated("mas", REASON) },
             null_tests: null_tests(scale, separated),
             instrument: instrument(scale, separated),
             air: AirRecord {
@@ -161,10 +147,10 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
             },
             by_stack: ByStack {
                 oblateness: if separated { shape(11.8 - 3.6 * (1.0 - scale), 13.0 * scale, 5.6 * scale, "mas") }
-                    else { refused("mas", REASON) },
+                    else { ShapeQuantity::not_separated("mas", REASON) },
                 radius: shape(959.866, 0.047, 0.192, "arcsec"),
                 p4: if separated { shape(0.6, 10.2 * scale, 1.8 * scale, "mas") }
-                    else { refused("mas", REASON) },
+                    else { ShapeQuantity::not_separated("mas", REASON) },
                 difference_sigma: separated.then_some(0.43),
                 stacks: 8,
                 reason: (!separated).then(|| "the oblateness was not separated".to_owned()),

@@ -93,6 +93,23 @@ pub struct ShapeQuantity {
     pub reason: Option<String>,
 }
 
+impl ShapeQuantity {
+    /// No value: the observation does not separate it, and why.
+    pub fn not_separated(unit: &str, reason: &str) -> Self {
+        Self {
+            value: None,
+            sigma: None,
+            unit: unit.to_owned(),
+            sigma_random: None,
+            sigma_systematic: None,
+            interval_68: None,
+            interval_95: None,
+            status: Status::NotSeparated,
+            reason: Some(reason.to_owned()),
+        }
+    }
+}
+
 /// A distortion fixed to the detector: `amplitude cos m (theta - angle)`, apparent minus true.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 pub struct DistortionRecord {

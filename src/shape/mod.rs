@@ -45,8 +45,20 @@ pub use fit::{Contribution, Fit, Known, RefractivityInput, SineTerms, fit, sine_
 pub use noise::{Block, blocks};
 pub use separation::{Separability, judge};
 
+use crate::units::MAS_RAD;
+
 /// Radius about which everything is measured, mas at 1 AU.
 pub const REFERENCE_RADIUS_MAS: f64 = 959_230.0;
+
+/// Angular radius of a Sun of the reference radius at a distance, rad.
+pub fn reference_radius_rad(distance_au: f64) -> f64 {
+    ((REFERENCE_RADIUS_MAS * MAS_RAD).sin() / distance_au).asin()
+}
+
+/// The radius at 1 AU of a disk seen at a distance, minus [`REFERENCE_RADIUS_MAS`], mas.
+pub fn beyond_reference_mas(radius_rad: f64, distance_au: f64) -> f64 {
+    (distance_au * radius_rad.sin()).asin() / MAS_RAD - REFERENCE_RADIUS_MAS
+}
 
 /// Zenith distance above which a sequence is set aside for the shape, degrees.
 pub const LARGEST_ZENITH_DEG: f64 = 75.0;

@@ -105,18 +105,3 @@ fn quantity(value: f64, random: f64, systematic: f64, degrees: f64, unit: &str) 
         reason: None,
     }
 }
-
-/// A quantity of the shape that the session does not separate, and why.
-fn open(unit: &str, reason: String) -> ShapeQuantity {
-    ShapeQuantity {
-        value: None,
-        sigma: None,
-        unit: unit.to_owned(),
-        sigma_random: None,
-        sigma_systematic: None,
-        interval_68: None,
-        interval_95: None,
-        status: Status::NotSeparated,
-        reason: Some(reason),
-    }
-}

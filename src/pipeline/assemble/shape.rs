@@ -1,7 +1,7 @@
 //! The record of the shape: radius, oblateness and the next harmonic by frames and by stacks, with
 //! null tests, the instrument's distortion and the quadrupole moment.
 
-use super::{Parts, lines, open, quantity};
+use super::{Parts, lines, quantity};
 use crate::budget;
 use crate::pipeline::definitions;
 use crate::result::record::{
@@ -70,12 +70,12 @@ fn three(p: &Parts<'_>, fit: &Fit) -> [ShapeQuantity; 3] {
             "mas",
         )
     } else {
-        open("mas", why_not(p, "the oblateness"))
+        ShapeQuantity::not_separated("mas", &why_not(p, "the oblateness"))
     };
     let p4 = if separability.p4 {
         quantity(fit.p4_mas(), random[2], systematic[2], degrees, "mas")
     } else {
-        open("mas", why_not(p, "the next harmonic"))
+        ShapeQuantity::not_separated("mas", &why_not(p, "the next harmonic"))
     };
     let radius = quantity(
         (fit.radius_mas() - p.model.radius_bias_mas) / 1000.0,
@@ -200,7 +200,7 @@ fn by_stack(p: &Parts<'_>, by_frame: &ShapeQuantity) -> ByStack {
         Err(reason) => {
             let none = |unit: &str| ShapeQuantity {
                 reason: None,
-                ..open(unit, String::new())
+                ..ShapeQuantity::not_separated(unit, "")
             };
             ByStack {
                 oblateness: none("mas"),

@@ -151,9 +151,7 @@ pub(in crate::pipeline) fn limb_optics(
     edge_scale_km: f64,
 ) -> Result<LimbOptics, Error> {
     let distance = middle.sun.distance_au;
-    let radius_arcsec =
-        ((crate::shape::REFERENCE_RADIUS_MAS * crate::units::MAS_RAD).sin() / distance).asin()
-            / ARCSEC_RAD;
+    let radius_arcsec = crate::shape::reference_radius_rad(distance) / ARCSEC_RAD;
     let km_arcsec = 1000.0 / (crate::constants::ASTRONOMICAL_UNIT.value * distance) / ARCSEC_RAD;
     Ok(LimbOptics {
         edge: SolarEdge {
