@@ -7,6 +7,7 @@ mod definitions;
 mod error;
 mod limb_model;
 pub mod measure;
+mod frame_table;
 pub mod products;
 pub mod single;
 mod solve;

@@ -1,6 +1,6 @@
 //! The files of a result: each whole under its name, or not there.
 
-use super::{Error, Outcome};
+use super::{Error, Outcome, frame_table};
 use crate::frames::{self, Card, Column, FitsWriter, Value, Values, write_ecsv, write_whole};
 use crate::report;
 use crate::result::record::SourceFile;
@@ -107,7 +107,7 @@ fn common(outcome: &Outcome, session: &Session) -> Vec<Card> {
     ]
 }
 
-/// `limbs.fits`: a row for every frame and sector.
+/// `limbs.fits`: a row for every frame and sector, then a row for every frame.
 fn limbs(outcome: &Outcome, session: &Session, path: &Path) -> Result<(), Error> {
     let mut sequence = Vec::new();
     let mut frame = Vec::new();
@@ -195,6 +195,11 @@ fn limbs(outcome: &Outcome, session: &Session, path: &Path) -> Result<(), Error>
     ));
     let mut file = FitsWriter::create(path)?;
     file.table("LIMBS", &columns, &cards)?;
+    file.table(
+        "FRAMES",
+        &frame_table::columns(&outcome.traces.frames),
+        &cards[cards.len() - 1..],
+    )?;
     file.finish()?;
     Ok(())
 }

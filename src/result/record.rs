@@ -564,6 +564,13 @@ pub struct FrameTrace {
     pub cos2_mas: f64,
     /// `sin 2 theta` on the detector, air taken out, mas.
     pub sin2_mas: f64,
+    /// Detector angle of celestial north, degrees.
+    pub north_deg: f64,
+    /// Mean radius minus the reference, then cosine and sine of m = 2, 3, 4 on the detector, air
+    /// taken out, mas at 1 AU.
+    pub harmonics_mas: [f64; 7],
+    /// How much one mas of each of these moves radius, oblateness and P4; zero where not kept.
+    pub influence: [[f64; 7]; 3],
 }
 
 /// The mean limb about the fitted circle, for the figure.

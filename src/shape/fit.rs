@@ -84,6 +84,8 @@ pub struct Fit {
     pub covariance: DMatrix<f64>,
     /// Where the variances come from.
     pub contributions: Vec<Contribution>,
+    /// How much one unit of each harmonic of each observation moves radius, oblateness and `R c4`.
+    pub influence: Vec<[Component; 3]>,
     /// Chi square of the blocks' m = 2 and 4 and its degrees of freedom.
     pub chi2: (f64, f64),
     /// Factor on the blocks' variances where they scatter more than their frames say.
@@ -387,7 +389,8 @@ fn solve(
         })?
         .inverse();
     let covariance = DMatrix::from_fn(n, n, |i, j| inverse[(i, j)] / (scale[i] * scale[j]));
-    let values = &covariance * (weighted.transpose() * &data);
+    let response = &covariance * weighted.transpose();
+    let values = &response * &data;
     let residual = &data - &design * &values;
     let mut chi2 = (0.0, 0.0);
     for b in 0..blocks.len() {
@@ -415,6 +418,7 @@ fn solve(
         terms: unknowns.iter().map(|it| it.name.clone()).collect(),
         units: unknowns.iter().map(|it| it.unit).collect(),
         contributions: contributions(&covariance, &information, &prior, known, unknowns),
+        influence: by_observation(observations, blocks, &response),
         values,
         covariance,
         chi2,
@@ -422,6 +426,24 @@ fn solve(
         degrees,
         free_instrument: known.distortion_sigma_mas.is_none(),
     })
+}
+
+/// The answer of radius, oblateness and `R c4` to every observation, through its block's mean.
+fn by_observation(
+    observations: &[Observation],
+    blocks: &[Block],
+    response: &DMatrix<f64>,
+) -> Vec<[Component; 3]> {
+    let mut out = vec![[[0.0; COMPONENTS]; 3]; observations.len()];
+    for (b, block) in blocks.iter().enumerate() {
+        let total: f64 = block.frames.iter().map(|&k| observations[k].weight).sum();
+        for &k in &block.frames {
+            let share = observations[k].weight / total;
+            out[k] = [RADIUS, OBLATENESS, P4]
+                .map(|i| std::array::from_fn(|c| share * response[(i, b * COMPONENTS + c)]));
+        }
+    }
+    out
 }
 
 /// Precision of what is known before: independent terms, and the layers' tilt as a first-order

@@ -330,6 +330,9 @@ pub(super) fn traces(
                 radius_mas: 210.0 * factor * noise.normal(),
                 cos2_mas: -18.0 + 150.0 * factor * noise.normal(),
                 sin2_mas: 11.0 + 150.0 * factor * noise.normal(),
+                north_deg: 90.0,
+                harmonics_mas: [0.0; 7],
+                influence: [[0.0; 7]; 3],
             });
         }
     }
