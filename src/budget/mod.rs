@@ -37,6 +37,100 @@ pub struct Displacement {
     pub blur_ratio: f64,
 }
 
+/// What a gradient that the flat field leaves does to a limb: measured minus true, mas as seen.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct ShadeEffect {
+    /// Mean radius.
+    pub radius_mas: f64,
+    /// Amplitude of m = 2, fixed to the detector.
+    pub second_mas: f64,
+    /// Amplitude of m = 4.
+    pub fourth_mas: f64,
+}
+
+/// Measures a noise-free limb of the extraction's own model whose brightness is shaded by `1 + g x +
+/// g x^2`, `x` from -1 to 1 across the disk along the detector's rows and `g` the relative gradient.
+///
+/// # Errors
+///
+/// Whatever the extraction refuses.
+pub fn shaded(
+    extraction: &Extraction<'_>,
+    blur: f64,
+    gradient_rel: f64,
+    radius_px: f64,
+) -> Result<ShadeEffect, LimbError> {
+    let clear = noise_free(extraction.table, blur, extraction, (0.13, 0.37), |_| 1.0)?;
+    let dim = noise_free(extraction.table, blur, extraction, (0.13, 0.37), |x| {
+        let x = x / radius_px;
+        1.0 + gradient_rel * (x + x * x)
+    })?;
+    let mut sum = [0.0; 5];
+    let mut count = 0.0;
+    for (s, (a, b)) in dim.sectors.iter().zip(&clear.sectors).enumerate() {
+        if a.flag != Flag::Good || b.flag != Flag::Good {
+            continue;
+        }
+        let moved = 1000.0 * (a.radius_arcsec - b.radius_arcsec);
+        let angle = extraction.annulus.angle_rad(s);
+        count += 1.0;
+        sum[0] += moved;
+        for (k, m) in [(1, 2.0), (3, 4.0)] {
+            sum[k] += 2.0 * moved * (m * angle).cos();
+            sum[k + 1] += 2.0 * moved * (m * angle).sin();
+        }
+    }
+    let it = sum.map(|it| it / count);
+    Ok(ShadeEffect {
+        radius_mas: it[0],
+        second_mas: it[1].hypot(it[2]),
+        fourth_mas: it[3].hypot(it[4]),
+    })
+}
+
+/// The limb that the extraction finds in a noise-free frame made with the tables `truth`, the disk's
+/// centre off a pixel's by `phase_px`, each pixel's brightness times `shade` of its distance from the
+/// centre along the rows, px.
+fn noise_free(
+    truth: &EdgeTable,
+    truth_blur: f64,
+    extraction: &Extraction<'_>,
+    phase_px: (f64, f64),
+    shade: impl Fn(f64) -> f64,
+) -> Result<limb::ObservedLimb, LimbError> {
+    let annulus = extraction.annulus;
+    let size = annulus.size_px();
+    let calibration = Calibration::neutral(size, size);
+    let half = (size / 2) as f64;
+    let centre = (half + phase_px.0, half + phase_px.1);
+    let mut frame = annulus.synthetic(
+        centre,
+        (size, size),
+        extraction.model_arcsec,
+        extraction.model_slope,
+        |s, x| LEVEL_ADU * truth.value(s, truth_blur, x),
+    );
+    for ((_, x), value) in frame.indexed_iter_mut() {
+        *value *= shade(x as f64 - centre.0) as f32;
+    }
+    let start = Disk {
+        x_px: centre.0,
+        y_px: centre.1,
+        radius_px: 0.0,
+        level_adu: LEVEL_ADU,
+        sky_adu: 0.0,
+    };
+    let clean = Extraction {
+        calibration: &calibration,
+        detector: crate::calibrate::Detector {
+            saturation_adu: None,
+            ..extraction.detector
+        },
+        ..extraction.clone()
+    };
+    limb::extract(frame.view(), start, &clean)
+}
+
 /// Level of the noise-free limb: only ratios matter.
 const LEVEL_ADU: f64 = 30_000.0;
 
@@ -50,38 +144,11 @@ pub fn displacement(
     truth_blur: f64,
     extraction: &Extraction<'_>,
 ) -> Result<Displacement, LimbError> {
-    let annulus = extraction.annulus;
-    let size = annulus.size_px();
-    let calibration = Calibration::neutral(size, size);
     let mut radius = 0.0;
     let mut ratio = 0.0;
     let phases = [(0.13, 0.37), (-0.31, 0.08), (0.42, -0.22)];
-    for (dx, dy) in phases {
-        let half = (size / 2) as f64;
-        let centre = (half + dx, half + dy);
-        let frame = annulus.synthetic(
-            centre,
-            (size, size),
-            extraction.model_arcsec,
-            extraction.model_slope,
-            |s, x| LEVEL_ADU * truth.value(s, truth_blur, x),
-        );
-        let start = Disk {
-            x_px: centre.0,
-            y_px: centre.1,
-            radius_px: 0.0,
-            level_adu: LEVEL_ADU,
-            sky_adu: 0.0,
-        };
-        let clean = Extraction {
-            calibration: &calibration,
-            detector: crate::calibrate::Detector {
-                saturation_adu: None,
-                ..extraction.detector
-            },
-            ..extraction.clone()
-        };
-        let limb = limb::extract(frame.view(), start, &clean)?;
+    for phase in phases {
+        let limb = noise_free(truth, truth_blur, extraction, phase, |_| 1.0)?;
         let good: Vec<f64> = limb
             .sectors
             .iter()
@@ -99,13 +166,13 @@ pub fn displacement(
     })
 }
 
-/// A systematic line of the limb's model: it moves the radius alone.
-pub fn limb_model_line(term: &str, sigma_radius_mas: f64, how: &str) -> Contribution {
+/// A systematic line of the limb's model: standard uncertainties of radius, oblateness and `R c4`, mas.
+pub fn limb_model_line(term: &str, [radius, oblateness, p4]: [f64; 3], how: &str) -> Contribution {
     Contribution {
         term: term.to_owned(),
-        radius_mas2: sigma_radius_mas * sigma_radius_mas,
-        oblateness_mas2: 0.0,
-        p4_mas2: 0.0,
+        radius_mas2: radius * radius,
+        oblateness_mas2: oblateness * oblateness,
+        p4_mas2: p4 * p4,
         random: false,
         scope: "model",
         how: how.to_owned(),

@@ -85,7 +85,7 @@ pub fn reduce(
     let selected = solve::select(&measured, &limbs)?;
     let model = limb_model::lines(session, &measured)?;
     let known = solve::known(session, &measured);
-    let shape = solve::shape(&selected, &known, &model)?;
+    let shape = solve::shape(&selected, &known, &model, options.seed)?;
     let stacks = if options.stack {
         stacking::combine(&measured, &limbs, &selected, &shape.kept, progress)?
     } else {

@@ -265,6 +265,12 @@ pub(super) fn shape(
             frames: vec![k],
             mean_mas: harmonics,
             variance_mas2: std::array::from_fn(|c| variance[c] + noise[c]),
+            degrees: by_frame
+                .blocks
+                .iter()
+                .filter(|it| it.sequence == sequence.index)
+                .map(|it| it.degrees)
+                .sum(),
         });
         observations.push(observation);
     }

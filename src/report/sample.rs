@@ -3,8 +3,8 @@
 mod parts;
 
 use parts::{
-    budget, covariance, definitions, instrument, kept_curve, null_tests, refraction, seeing,
-    sequence, traces,
+    budget, covariance, definitions, instrument, kept_curve, null_tests, random_error, refraction,
+    seeing, sequence, traces,
 };
 
 use crate::result::record::*;
@@ -158,6 +158,7 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
             covariance: covariance(&terms, &units, scale),
             definitions: definitions(&radius, &oblateness),
             kept_curve: kept_curve(&mut noise, scale, &oblateness, &radius),
+            random_error: random_error(),
             quadrupole: Quadrupole {
                 j2: match which {
                     Session::Season => Quantity::measured(2.18e-7, 4.3e-7, "1"),

@@ -218,6 +218,62 @@ pub struct KeptPoint {
     pub radius_sigma_mas: f64,
 }
 
+/// Inflation of the variance of a mean by correlation in time, one harmonic.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct FactorRecord {
+    /// Harmonic number.
+    pub m: usize,
+    /// Variance of a mean over that of independent frames.
+    pub factor: f64,
+}
+
+/// The same by batches of one length, m = 2.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct BatchRecord {
+    /// Length of a batch, seconds.
+    pub length_s: f64,
+    /// Variance of batch means over that of independent frames.
+    pub factor: f64,
+    /// Degrees of freedom behind it.
+    pub degrees_of_freedom: f64,
+}
+
+/// The random error once more, by resampling runs of frames.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct BootstrapRecord {
+    /// Standard error of the radius, mas.
+    pub sigma_radius_mas: f64,
+    /// Standard error of the oblateness, mas; null where it is not separated.
+    pub sigma_oblateness_mas: Option<f64>,
+    /// Standard error of P4, mas; null where it is not separated.
+    pub sigma_p4_mas: Option<f64>,
+    /// Frames in a run.
+    pub run_frames: usize,
+    /// Runs in the session.
+    pub runs: usize,
+    /// Resampled sessions.
+    pub resamples: usize,
+    /// Seed of the drawing.
+    pub seed: u64,
+}
+
+/// How the random error was judged.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct RandomErrorRecord {
+    /// Inflation by correlation in time: the larger of initial positive sequence and batch means.
+    pub correlation_factor: Vec<FactorRecord>,
+    /// Factor on the variances where sequences scatter more than their frames say; 1 where not.
+    pub excess: f64,
+    /// Degrees of freedom of the intervals.
+    pub degrees_of_freedom: f64,
+    /// The inflation by batches of growing length, m = 2.
+    pub batches: Vec<BatchRecord>,
+    /// Whether it stays as it is in longer batches; null where there are too few to say.
+    pub converged: Option<bool>,
+    /// The check by resampling; null where there is nothing to resample.
+    pub bootstrap: Option<BootstrapRecord>,
+}
+
 /// The covariance of the fitted terms.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 pub struct Covariance {
@@ -265,6 +321,8 @@ pub struct ShapeRecord {
     pub definitions: Vec<DefinitionRecord>,
     /// Shape against kept fraction.
     pub kept_curve: Vec<KeptPoint>,
+    /// How the random error was judged.
+    pub random_error: RandomErrorRecord,
     /// J2 and the perihelion.
     pub quadrupole: Quadrupole,
 }

@@ -15,6 +15,7 @@ mod limb_map;
 mod limb_motion_kernels;
 mod meeus_1998;
 mod motion_sessions;
+mod orientation_design;
 mod reda_andreas_2004;
 mod refraction_integral;
 mod refraction_properties;

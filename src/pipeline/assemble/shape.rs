@@ -5,8 +5,8 @@ use super::{Parts, lines, quantity};
 use crate::budget;
 use crate::pipeline::definitions;
 use crate::result::record::{
-    AirRecord, ByStack, Covariance, DistortionRecord, NullTest, Quadrupole, Quantity, Separation,
-    ShapeQuantity, ShapeRecord,
+    AirRecord, BatchRecord, BootstrapRecord, ByStack, Covariance, DistortionRecord, FactorRecord,
+    NullTest, Quadrupole, Quantity, RandomErrorRecord, Separation, ShapeQuantity, ShapeRecord,
 };
 use crate::shape::{Fit, REFERENCE_RADIUS_MAS};
 
@@ -48,6 +48,7 @@ pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
         },
         definitions: definitions::list(p.measured, &radius, &oblateness, p.model.blur),
         kept_curve: p.shape.curve.clone(),
+        random_error: random_error(p),
         quadrupole: quadrupole(&oblateness),
         oblateness,
         radius,
@@ -95,6 +96,41 @@ pub(super) fn why_not(p: &Parts<'_>, what: &str) -> String {
     )
 }
 
+/// How the random error was judged.
+fn random_error(p: &Parts<'_>) -> RandomErrorRecord {
+    let correlation = &p.shape.correlation;
+    let separability = &p.shape.separability;
+    RandomErrorRecord {
+        correlation_factor: [0, 2, 3, 4]
+            .map(|m| FactorRecord {
+                m,
+                factor: correlation.factor[m],
+            })
+            .to_vec(),
+        excess: p.shape.fit.excess,
+        degrees_of_freedom: p.shape.fit.degrees,
+        batches: correlation
+            .growth
+            .iter()
+            .map(|it| BatchRecord {
+                length_s: it.length_s,
+                factor: it.factor,
+                degrees_of_freedom: it.degrees,
+            })
+            .collect(),
+        converged: correlation.converged(),
+        bootstrap: p.shape.bootstrap.map(|it| BootstrapRecord {
+            sigma_radius_mas: it.sigma_mas[0],
+            sigma_oblateness_mas: separability.oblateness.then_some(it.sigma_mas[1]),
+            sigma_p4_mas: separability.p4.then_some(it.sigma_mas[2]),
+            run_frames: it.run_frames,
+            runs: it.runs,
+            resamples: it.resamples,
+            seed: p.options.seed,
+        }),
+    }
+}
+
 /// Quantities that are zero when all is well.
 fn null_tests(p: &Parts<'_>) -> Vec<NullTest> {
     let fit = &p.shape.fit;
@@ -107,21 +143,42 @@ fn null_tests(p: &Parts<'_>) -> Vec<NullTest> {
         reason: found.is_none().then(|| reason.to_owned()),
     };
     let open = "not separated from the instrument";
+    let apart = "one of the parts alone does not separate Sun and instrument";
     vec![
         test(
             "sine of m = 2 about the solar axis",
-            p.shape.sines.map(|it| it.second_mas),
+            p.shape.sines.map(|it| it[0]),
             open,
         ),
         test(
             "sine of m = 4 about the solar axis",
-            p.shape.sines.map(|it| it.fourth_mas),
+            p.shape.sines.map(|it| it[1]),
+            open,
+        ),
+        test(
+            "cosine of m = 3 about the solar axis (north limb against south)",
+            p.shape.odd.map(|it| it[0]),
+            open,
+        ),
+        test(
+            "sine of m = 3 about the solar axis (east limb against west)",
+            p.shape.odd.map(|it| it[1]),
             open,
         ),
         test(
             "oblateness of the early half of the sequences minus the late half",
-            p.shape.halves,
-            "one of the halves alone does not separate Sun and instrument",
+            p.shape.parts.halves,
+            apart,
+        ),
+        test(
+            "oblateness of the middle half of the sequences minus first and last quarter",
+            p.shape.parts.inner,
+            apart,
+        ),
+        test(
+            "oblateness before the Sun's passage through the meridian minus after it",
+            p.shape.parts.meridian,
+            apart,
         ),
         test(
             "oblateness against kept fraction: sharpest 40 percent minus all",

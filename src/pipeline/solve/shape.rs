@@ -5,7 +5,10 @@ use crate::pipeline::Error;
 use crate::pipeline::limb_model::LimbModel;
 use crate::result::record::KeptPoint;
 use crate::select;
-use crate::shape::{self, Block, Fit, Known, Observation, Separability, ShapeError, SineTerms};
+use crate::shape::{
+    self, Block, Bootstrap, Correlation, Fit, Known, NullTerms, Observation, Separability,
+    ShapeError,
+};
 
 /// The shape of the kept frames and what goes with it.
 #[derive(Clone, Debug)]
@@ -17,9 +20,13 @@ pub(in crate::pipeline) struct Shape {
     /// What can be told apart.
     pub separability: Separability,
     /// Sine terms about the Sun's axis.
-    pub sines: Option<SineTerms>,
-    /// Inflation of the variance of a mean for m = 0, 2, 3, 4 by correlation in time.
-    pub factor: [f64; 5],
+    pub sines: Option<NullTerms>,
+    /// Cosine and sine of m = 3 about the Sun's axis.
+    pub odd: Option<NullTerms>,
+    /// What correlation in time does to the variance of a mean.
+    pub correlation: Correlation,
+    /// The random error by resampling.
+    pub bootstrap: Option<Bootstrap>,
     /// Which of the usable frames were kept.
     pub kept: Vec<bool>,
     /// Kept fraction.
@@ -28,8 +35,8 @@ pub(in crate::pipeline) struct Shape {
     pub gain: f64,
     /// Shape against kept fraction.
     pub curve: Vec<KeptPoint>,
-    /// Early minus late half of the session: oblateness and its uncertainty, mas.
-    pub halves: Option<(f64, f64)>,
+    /// Differences of the oblateness between parts of the session, mas.
+    pub parts: PartTests,
     /// The frames that were fitted.
     pub observations: Vec<Observation>,
 }
@@ -49,6 +56,7 @@ pub(in crate::pipeline) fn shape(
     selected: &Selected,
     known: &Known,
     model: &LimbModel,
+    seed: u64,
 ) -> Result<Shape, Error> {
     let usable = selected.observations.len();
     let mut best: Option<(f64, f64, Vec<bool>)> = None;
@@ -90,20 +98,24 @@ pub(in crate::pipeline) fn shape(
         .into());
     };
     let observations = picked(selected, &kept);
-    let (fit, blocks, factor, separability) = fitted(&observations, known)?;
+    let (fit, blocks, correlation, separability) = fitted(&observations, known)?;
     let sines = shape::sine_terms(&observations, &blocks, known, &separability);
-    let halves = halves(&observations, known);
+    let odd = shape::odd_terms(&observations, &blocks, known, &separability);
+    let bootstrap = shape::bootstrap(&observations, &blocks, &fit, correlation.factor[2], seed);
+    let parts = PartTests::of(&observations, known);
     Ok(Shape {
         gain: whole_sigma / sigma,
         fit,
         blocks,
         separability,
         sines,
-        factor,
+        odd,
+        correlation,
+        bootstrap,
         kept,
         fraction,
         curve,
-        halves,
+        parts,
         observations,
     })
 }
@@ -119,8 +131,8 @@ fn picked(selected: &Selected, kept: &[bool]) -> Vec<Observation> {
         .collect()
 }
 
-/// A fit, its blocks, the inflation by correlation in time, what can be told apart.
-type Fitted = (Fit, Vec<Block>, [f64; 5], Separability);
+/// A fit, its blocks, what correlation in time does to them, what can be told apart.
+type Fitted = (Fit, Vec<Block>, Correlation, Separability);
 
 /// Fits the shape to all of these frames.
 fn fitted(observations: &[Observation], known: &Known) -> Result<Fitted, ShapeError> {
@@ -135,27 +147,58 @@ fn fitted(observations: &[Observation], known: &Known) -> Result<Fitted, ShapeEr
             sequences,
         });
     }
-    let (blocks, factor, _) = shape::blocks(observations);
+    let (blocks, correlation) = shape::blocks(observations);
     let separability = shape::judge(observations, &blocks, known.distortion_sigma_mas.is_some());
     let fit = shape::fit(observations, &blocks, known, &separability)?;
-    Ok((fit, blocks, factor, separability))
+    Ok((fit, blocks, correlation, separability))
 }
 
-/// Oblateness of the early half of the sequences minus the late half, where both can tell it.
-fn halves(observations: &[Observation], known: &Known) -> Option<(f64, f64)> {
-    let mut sequences: Vec<usize> = observations.iter().map(|it| it.sequence).collect();
-    sequences.dedup();
-    let middle = *sequences.get(sequences.len() / 2)?;
-    let half = |early: bool| -> Option<Fit> {
-        let part: Vec<Observation> = observations
-            .iter()
-            .filter(|it| (it.sequence < middle) == early)
-            .copied()
-            .collect();
-        let (fit, .., separability) = fitted(&part, known).ok()?;
+/// Oblateness of one part of the session minus that of the rest, with its random uncertainty, mas; none
+/// where one of them alone does not separate Sun and instrument.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(in crate::pipeline) struct PartTests {
+    /// Early half of the sequences minus the late half.
+    pub halves: Option<(f64, f64)>,
+    /// Middle half of the sequences minus the first and last quarters.
+    pub inner: Option<(f64, f64)>,
+    /// Before the Sun's passage through the meridian minus after it.
+    pub meridian: Option<(f64, f64)>,
+}
+
+impl PartTests {
+    fn of(observations: &[Observation], known: &Known) -> Self {
+        let mut sequences: Vec<usize> = observations.iter().map(|it| it.sequence).collect();
+        sequences.dedup();
+        let n = sequences.len();
+        let order = |it: &Observation| {
+            sequences
+                .iter()
+                .position(|s| *s == it.sequence)
+                .unwrap_or(0)
+        };
+        let difference =
+            |part: &dyn Fn(&Observation) -> bool| difference(observations, known, part);
+        Self {
+            halves: difference(&|it| order(it) < n / 2),
+            inner: difference(&|it| (n / 4..n - n / 4).contains(&order(it))),
+            meridian: difference(&|it| it.air.zenith_rate_arcmin_s < 0.0),
+        }
+    }
+}
+
+/// Oblateness of the frames in a part minus that of the others.
+fn difference(
+    observations: &[Observation],
+    known: &Known,
+    part: &dyn Fn(&Observation) -> bool,
+) -> Option<(f64, f64)> {
+    let (inside, outside): (Vec<Observation>, Vec<Observation>) =
+        observations.iter().copied().partition(|it| part(it));
+    let answer = |some: &[Observation]| -> Option<Fit> {
+        let (fit, .., separability) = fitted(some, known).ok()?;
         separability.oblateness.then_some(fit)
     };
-    let (a, b) = (half(true)?, half(false)?);
+    let (a, b) = (answer(&inside)?, answer(&outside)?);
     let sigma = a.sigmas_mas(true)[1].hypot(b.sigmas_mas(true)[1]);
     Some((a.oblateness_mas() - b.oblateness_mas(), sigma))
 }

@@ -174,6 +174,33 @@ pub(super) fn definitions(
     .collect()
 }
 
+pub(super) fn random_error() -> RandomErrorRecord {
+    RandomErrorRecord {
+        correlation_factor: [(0, 2.1), (2, 1.9), (3, 1.6), (4, 1.4)]
+            .map(|(m, factor)| FactorRecord { m, factor })
+            .to_vec(),
+        excess: 1.0,
+        degrees_of_freedom: 820.0,
+        batches: [(14.0, 1.6, 112.0), (28.0, 1.8, 48.0), (56.0, 1.7, 16.0)]
+            .map(|(length_s, factor, degrees_of_freedom)| BatchRecord {
+                length_s,
+                factor,
+                degrees_of_freedom,
+            })
+            .to_vec(),
+        converged: Some(true),
+        bootstrap: Some(BootstrapRecord {
+            sigma_radius_mas: 9.1,
+            sigma_oblateness_mas: Some(13.2),
+            sigma_p4_mas: Some(11.8),
+            run_frames: 10,
+            runs: 64,
+            resamples: 2000,
+            seed: 1,
+        }),
+    }
+}
+
 pub(super) fn kept_curve(
     noise: &mut Noise,
     scale: f64,
