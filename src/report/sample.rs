@@ -3,8 +3,8 @@
 mod parts;
 
 use parts::{
-    budget, covariance, definitions, instrument, kept_curve, null_tests, refraction, seeing,
-    sequence, traces,
+    budget, covariance, definitions, instrument, kept_curve, kept_slope, null_tests, refraction,
+    seeing, sequence, traces,
 };
 
 use crate::result::record::*;
@@ -158,6 +158,7 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
             covariance: covariance(&terms, &units, scale),
             definitions: definitions(&radius, &oblateness),
             kept_curve: kept_curve(&mut noise, scale, &oblateness, &radius),
+            kept_slope: kept_slope(scale, &oblateness),
             quadrupole: Quadrupole {
                 j2: match which {
                     Session::Season => Quantity::measured(2.18e-7, 4.3e-7, "1"),
@@ -199,6 +200,8 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
             blind_to_shape: "the criterion is the same for any change of radius, ellipse or P4"
                 .to_owned(),
             gain: 1.13,
+            sigma_all_and_kept_mas: separated.then_some([12.7 * scale, 11.2 * scale]),
+            weighting_gain: separated.then_some(1.06),
         },
         budget,
         sequences: sequences

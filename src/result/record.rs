@@ -218,6 +218,35 @@ pub struct KeptPoint {
     pub radius_sigma_mas: f64,
 }
 
+/// How a quantity runs with the kept fraction, tested against zero.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct SlopeTest {
+    /// Change from none to all of the frames kept, mas.
+    pub slope_mas: f64,
+    /// Its standard uncertainty; frames that several fractions share and correlation in time are in it.
+    pub sigma_mas: f64,
+    /// Slope over its standard uncertainty.
+    pub pull: f64,
+    /// Probability of a slope as far from zero by chance.
+    pub chance: f64,
+    /// Degrees of freedom of the uncertainty.
+    pub degrees: f64,
+}
+
+/// The slopes of the curve of the shape against the kept fraction.
+#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
+pub struct KeptSlope {
+    /// Of the oblateness; null where it is not separated or there are too few frames.
+    pub oblateness: Option<SlopeTest>,
+    /// Of the radius.
+    pub radius: Option<SlopeTest>,
+    /// The kept fractions that the line was laid through.
+    pub fractions: Vec<f64>,
+    /// Why there is no slope.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub reason: Option<String>,
+}
+
 /// The covariance of the fitted terms.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 pub struct Covariance {
@@ -265,6 +294,9 @@ pub struct ShapeRecord {
     pub definitions: Vec<DefinitionRecord>,
     /// Shape against kept fraction.
     pub kept_curve: Vec<KeptPoint>,
+    /// The slopes of that curve against zero.
+    #[serde(default)]
+    pub kept_slope: KeptSlope,
     /// J2 and the perihelion.
     pub quadrupole: Quadrupole,
 }
@@ -401,6 +433,13 @@ pub struct SelectionRecord {
     pub blind_to_shape: String,
     /// Error with all usable frames weighted over the error with this selection; above 1 it paid.
     pub gain: f64,
+    /// Random error of the oblateness with all usable frames and with the kept ones, mas; null where
+    /// it is not separated.
+    #[serde(default)]
+    pub sigma_all_and_kept_mas: Option<[f64; 2]>,
+    /// Random error with the same frames at equal weights over the error at the weights used.
+    #[serde(default)]
+    pub weighting_gain: Option<f64>,
 }
 
 /// One line of the error budget.

@@ -90,6 +90,8 @@ pub struct Fit {
     pub excess: f64,
     /// Degrees of freedom behind the random error.
     pub degrees: f64,
+    /// Answer of radius and oblateness to each component of each block's mean, in the blocks' order.
+    pub gain: [Vec<Component>; 2],
     /// Whether the distortion was free.
     pub free_instrument: bool,
 }
@@ -388,6 +390,12 @@ fn solve(
         .inverse();
     let covariance = DMatrix::from_fn(n, n, |i, j| inverse[(i, j)] / (scale[i] * scale[j]));
     let values = &covariance * (weighted.transpose() * &data);
+    let gain = [RADIUS, OBLATENESS].map(|i| {
+        let row = covariance.row(i) * weighted.transpose();
+        (0..blocks.len())
+            .map(|b| std::array::from_fn(|c| row[b * COMPONENTS + c]))
+            .collect()
+    });
     let residual = &data - &design * &values;
     let mut chi2 = (0.0, 0.0);
     for b in 0..blocks.len() {
@@ -420,6 +428,7 @@ fn solve(
         chi2,
         excess,
         degrees,
+        gain,
         free_instrument: known.distortion_sigma_mas.is_none(),
     })
 }

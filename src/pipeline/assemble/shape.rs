@@ -48,6 +48,7 @@ pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
         },
         definitions: definitions::list(p.measured, &radius, &oblateness, p.model.blur),
         kept_curve: p.shape.curve.clone(),
+        kept_slope: p.shape.slope.clone(),
         quadrupole: quadrupole(&oblateness),
         oblateness,
         radius,
