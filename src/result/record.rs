@@ -181,9 +181,31 @@ pub struct ByStack {
     pub difference_sigma: Option<f64>,
     /// How many stacks went into the fit.
     pub stacks: usize,
+    /// What resampling and the residual motion's blur had added to the stacks' radius and oblateness,
+    /// predicted by noise-free twins and taken off, mas.
+    #[serde(default)]
+    pub removed_mas: Option<[f64; 2]>,
+    /// How much sharper the stacks are than the mean of the frames.
+    #[serde(default)]
+    pub sharpness: Option<StackSharpness>,
     /// Why there is no value.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub reason: Option<String>,
+}
+
+/// How much sharper the stacks are than the plain mean of the frames.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct StackSharpness {
+    /// Energy of the edge in the stacks, 1/arcsec.
+    pub stack_per_arcsec: f64,
+    /// The same in the mean of the frames as they came.
+    pub mean_per_arcsec: f64,
+    /// The first over the second.
+    pub gain: f64,
+    /// That ratio as the limbs of the single frames predict it.
+    pub gain_predicted: f64,
+    /// What was measured.
+    pub how: String,
 }
 
 /// Radius and oblateness by one definition of the limb.
