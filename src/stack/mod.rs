@@ -16,8 +16,11 @@
 //!
 //! # Accuracy
 //!
-//! Cubic convolution reproduces parabolas; on an edge of 2 pixels it leaves a few mas, the reason why
-//! the stack is a check and the frames' limbs are the answer.
+//! Cubic convolution reproduces parabolas; on an edge of 2 pixels it leaves a few mas to some tens of mas
+//! in the radius, the reason why the stack is a check and the frames' limbs are the answer. With that
+//! predicted and taken off, the stack's limb is within 0.1 mas of the frames' where pixels sample the
+//! edge (`tests/selected_and_stacked.rs`); an aperture of 0.15 m in quiet air on pixels of 2 and 4 arcsec
+//! leaves 0.5 and 2 mas of the radius, 0.1 and 6 mas of the oblateness.
 //!
 //! # Source
 //!

@@ -1,3 +1,5 @@
+//! The stack by hand-made frames: brightness, flux, variance, weight.
+
 use super::*;
 use crate::air::{Conditions, Site, StationAir};
 use crate::refraction::Air;
