@@ -87,11 +87,18 @@ pub fn reduce(
     let known = solve::known(session, &measured);
     let shape = solve::shape(&selected, &known, &model, options.seed)?;
     let stacks = if options.stack {
-        stacking::combine(&measured, &limbs, &selected, &shape.kept, progress)?
+        stacking::combine(
+            &measured,
+            &limbs,
+            &selected,
+            &shape.kept,
+            model.blur,
+            progress,
+        )?
     } else {
         stacking::Stacks::none()
     };
-    let by_stack = stacking::shape(&stacks, &measured, &shape, &known, &model);
+    let by_stack = stacking::shape(&stacks, &shape, &known);
 
     let parts = assemble::Parts {
         session,

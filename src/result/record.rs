@@ -181,9 +181,31 @@ pub struct ByStack {
     pub difference_sigma: Option<f64>,
     /// How many stacks went into the fit.
     pub stacks: usize,
+    /// What resampling and the residual motion's blur had added to the stacks' radius and oblateness,
+    /// predicted by noise-free twins and taken off, mas.
+    #[serde(default)]
+    pub removed_mas: Option<[f64; 2]>,
+    /// How much sharper the stacks are than the mean of the frames.
+    #[serde(default)]
+    pub sharpness: Option<StackSharpness>,
     /// Why there is no value.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub reason: Option<String>,
+}
+
+/// How much sharper the stacks are than the plain mean of the frames.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct StackSharpness {
+    /// Energy of the edge in the stacks, 1/arcsec.
+    pub stack_per_arcsec: f64,
+    /// The same in the mean of the frames as they came.
+    pub mean_per_arcsec: f64,
+    /// The first over the second.
+    pub gain: f64,
+    /// That ratio as the limbs of the single frames predict it.
+    pub gain_predicted: f64,
+    /// What was measured.
+    pub how: String,
 }
 
 /// Radius and oblateness by one definition of the limb.
@@ -274,6 +296,35 @@ pub struct RandomErrorRecord {
     pub bootstrap: Option<BootstrapRecord>,
 }
 
+/// How a quantity runs with the kept fraction, tested against zero.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct SlopeTest {
+    /// Change from none to all of the frames kept, mas.
+    pub slope_mas: f64,
+    /// Its standard uncertainty; frames that several fractions share and correlation in time are in it.
+    pub sigma_mas: f64,
+    /// Slope over its standard uncertainty.
+    pub pull: f64,
+    /// Probability of a slope as far from zero by chance.
+    pub chance: f64,
+    /// Degrees of freedom of the uncertainty.
+    pub degrees: f64,
+}
+
+/// The slopes of the curve of the shape against the kept fraction.
+#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
+pub struct KeptSlope {
+    /// Of the oblateness; null where it is not separated or there are too few frames.
+    pub oblateness: Option<SlopeTest>,
+    /// Of the radius.
+    pub radius: Option<SlopeTest>,
+    /// The kept fractions that the line was laid through.
+    pub fractions: Vec<f64>,
+    /// Why there is no slope.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub reason: Option<String>,
+}
+
 /// The covariance of the fitted terms.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 pub struct Covariance {
@@ -323,6 +374,9 @@ pub struct ShapeRecord {
     pub kept_curve: Vec<KeptPoint>,
     /// How the random error was judged.
     pub random_error: RandomErrorRecord,
+    /// The slopes of that curve against zero.
+    #[serde(default)]
+    pub kept_slope: KeptSlope,
     /// J2 and the perihelion.
     pub quadrupole: Quadrupole,
 }
@@ -459,6 +513,13 @@ pub struct SelectionRecord {
     pub blind_to_shape: String,
     /// Error with all usable frames weighted over the error with this selection; above 1 it paid.
     pub gain: f64,
+    /// Random error of the oblateness with all usable frames and with the kept ones, mas; null where
+    /// it is not separated.
+    #[serde(default)]
+    pub sigma_all_and_kept_mas: Option<[f64; 2]>,
+    /// Random error with the same frames at equal weights over the error at the weights used.
+    #[serde(default)]
+    pub weighting_gain: Option<f64>,
 }
 
 /// One line of the error budget.

@@ -86,6 +86,8 @@ pub struct Fit {
     pub excess: f64,
     /// Degrees of freedom behind the random error.
     pub degrees: f64,
+    /// Answer of radius and oblateness to each component of each block's mean, in the blocks' order.
+    pub gain: [Vec<Component>; 2],
     /// Whether the distortion was free.
     pub free_instrument: bool,
 }
@@ -429,6 +431,11 @@ fn solve(
     let covariance = DMatrix::from_fn(n, n, |i, j| inverse[(i, j)] / (scale[i] * scale[j]));
     let response = &covariance * weighted.transpose();
     let values = &response * &data;
+    let gain = [RADIUS, OBLATENESS].map(|i| {
+        (0..blocks.len())
+            .map(|b| std::array::from_fn(|c| response[(i, b * COMPONENTS + c)]))
+            .collect()
+    });
     let residual = &data - &design * &values;
     let mut chi2 = (0.0, 0.0);
     for b in 0..blocks.len() {
@@ -461,6 +468,7 @@ fn solve(
         chi2,
         excess,
         degrees,
+        gain,
         free_instrument: known.distortion_sigma_mas.is_none(),
     })
 }

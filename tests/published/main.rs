@@ -22,6 +22,7 @@ mod refraction_properties;
 mod refraction_tables;
 mod refractivity_formulas;
 mod seeing_scales;
+mod selection_bias;
 mod sky_orientation;
 mod sky_track;
 mod sun_place;

@@ -17,7 +17,7 @@ use super::{Options, SetAside};
 use crate::budget;
 use crate::result::record::{Record, SCHEMA_VERSION, ShapeQuantity, SourceFile, Status, Traces};
 use crate::session::Session;
-use crate::shape::{Contribution, Fit, Known};
+use crate::shape::{Block, Contribution, Fit, Known};
 
 /// Everything the record is made from.
 pub(super) struct Parts<'a> {
@@ -29,7 +29,7 @@ pub(super) struct Parts<'a> {
     pub(super) seeing: &'a SeeingResult,
     pub(super) selected: &'a Selected,
     pub(super) shape: &'a Shape,
-    pub(super) by_stack: &'a Result<Fit, String>,
+    pub(super) by_stack: &'a Result<(Fit, Vec<Block>), String>,
     pub(super) model: &'a LimbModel,
     pub(super) known: &'a Known,
     pub(super) stacks: &'a Stacks,

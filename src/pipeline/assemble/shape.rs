@@ -13,7 +13,7 @@ use crate::shape::{Fit, REFERENCE_RADIUS_MAS};
 /// The record of the shape.
 pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
     let fit = &p.shape.fit;
-    let [radius, oblateness, p4] = three(p, fit);
+    let [radius, oblateness, p4] = three(p, fit, p.model.radius_bias_mas);
     let (with_instrument, with_air) = fit.correlations();
     let separability = &p.shape.separability;
     let [scale, vertical] = fit.air();
@@ -49,6 +49,7 @@ pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
         definitions: definitions::list(p.measured, &radius, &oblateness, p.model.blur),
         kept_curve: p.shape.curve.clone(),
         random_error: random_error(p),
+        kept_slope: p.shape.slope.clone(),
         quadrupole: quadrupole(&oblateness),
         oblateness,
         radius,
@@ -56,8 +57,8 @@ pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
     }
 }
 
-/// The three quantities of a fit.
-fn three(p: &Parts<'_>, fit: &Fit) -> [ShapeQuantity; 3] {
+/// The three quantities of a fit whose radius the extraction has moved by `bias_mas`.
+fn three(p: &Parts<'_>, fit: &Fit, bias_mas: f64) -> [ShapeQuantity; 3] {
     let random = budget::total(lines(p, fit).filter(|it| it.random));
     let systematic = budget::total(lines(p, fit).filter(|it| !it.random));
     let degrees = fit.degrees;
@@ -79,7 +80,7 @@ fn three(p: &Parts<'_>, fit: &Fit) -> [ShapeQuantity; 3] {
         ShapeQuantity::not_separated("mas", &why_not(p, "the next harmonic"))
     };
     let radius = quantity(
-        (fit.radius_mas() - p.model.radius_bias_mas) / 1000.0,
+        (fit.radius_mas() - bias_mas) / 1000.0,
         random[0] / 1000.0,
         systematic[0] / 1000.0,
         degrees,
@@ -238,8 +239,9 @@ fn distortion(p: &Parts<'_>, m: usize) -> DistortionRecord {
 /// The shape from stacks, beside that from single frames.
 fn by_stack(p: &Parts<'_>, by_frame: &ShapeQuantity) -> ByStack {
     match p.by_stack {
-        Ok(fit) => {
-            let [radius, oblateness, p4] = three(p, fit);
+        Ok((fit, blocks)) => {
+            // The twins show what extraction leaves on their limbs as well: it is off already.
+            let [radius, oblateness, p4] = three(p, fit, 0.0);
             let difference_sigma = match (oblateness.value, by_frame.value, by_frame.sigma) {
                 (Some(a), Some(b), Some(sigma)) if sigma > 0.0 => Some((a - b) / sigma),
                 _ => None,
@@ -251,6 +253,8 @@ fn by_stack(p: &Parts<'_>, by_frame: &ShapeQuantity) -> ByStack {
                 p4,
                 difference_sigma,
                 stacks,
+                removed_mas: p.stacks.removed_mas(fit, blocks),
+                sharpness: p.stacks.sharpness.clone(),
                 reason: None,
             }
         }
@@ -265,6 +269,8 @@ fn by_stack(p: &Parts<'_>, by_frame: &ShapeQuantity) -> ByStack {
                 p4: none("mas"),
                 difference_sigma: None,
                 stacks: 0,
+                removed_mas: None,
+                sharpness: p.stacks.sharpness.clone(),
                 reason: Some(reason.clone()),
             }
         }

@@ -3,6 +3,7 @@
 mod seeing;
 mod select;
 mod known;
+mod slope;
 mod shape;
 
 use crate::session::{Session, WeatherSource};

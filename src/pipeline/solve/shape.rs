@@ -1,10 +1,11 @@
 //! The shape of the kept frames, and how it depends on what is kept.
 
 use super::Selected;
+use super::slope::{self, FractionFit};
 use crate::pipeline::Error;
 use crate::pipeline::limb_model::LimbModel;
-use crate::result::record::KeptPoint;
-use crate::select;
+use crate::result::record::{KeptPoint, KeptSlope};
+use crate::select::{self, Candidate};
 use crate::shape::{
     self, Block, Bootstrap, Correlation, Fit, Known, NullTerms, Observation, Separability,
     ShapeError,
@@ -33,16 +34,22 @@ pub(in crate::pipeline) struct Shape {
     pub fraction: f64,
     /// Error with all frames over error with the kept ones.
     pub gain: f64,
+    /// Random error of the oblateness with all frames and with the kept ones, mas.
+    pub sigma_all_and_kept_mas: [f64; 2],
+    /// Error with the kept frames at equal weights over the error at their own.
+    pub weighting_gain: Option<f64>,
     /// Shape against kept fraction.
     pub curve: Vec<KeptPoint>,
     /// Differences of the oblateness between parts of the session, mas.
     pub parts: PartTests,
+    /// The slopes of that curve.
+    pub slope: KeptSlope,
     /// The frames that were fitted.
     pub observations: Vec<Observation>,
 }
 
 /// Fractions of the curve of the shape against what is kept.
-const FRACTIONS: [f64; 6] = [1.0, 0.8, 0.6, 0.4, 0.2, 0.1];
+pub(super) const FRACTIONS: [f64; 6] = [1.0, 0.8, 0.6, 0.4, 0.2, 0.1];
 
 /// A smaller fraction must lower the random error by this to be taken: the errors are estimates.
 const MUST_PAY: f64 = 0.85;
@@ -62,33 +69,38 @@ pub(in crate::pipeline) fn shape(
     let mut best: Option<(f64, f64, Vec<bool>)> = None;
     let mut whole_sigma = f64::NAN;
     let mut curve = Vec::new();
+    let mut fits = Vec::new();
     for fraction in FRACTIONS {
-        let kept = if fraction < 1.0 {
-            select::sharpest(&selected.candidates, fraction)
-        } else {
-            vec![true; usable]
-        };
-        let Ok((fit, .., separability)) = fitted(&picked(selected, &kept), known) else {
+        let Ok(it) = fraction_fit(
+            &selected.observations,
+            &selected.candidates,
+            fraction,
+            known,
+        ) else {
             continue;
         };
+        let fit = &it.fit;
         let [radius, oblateness, _] = fit.sigmas_mas(true);
         if fraction >= 1.0 {
             whole_sigma = oblateness;
         }
         curve.push(KeptPoint {
             fraction,
-            frames: kept.iter().filter(|it| **it).count(),
-            oblateness_mas: separability.oblateness.then(|| fit.oblateness_mas()),
-            oblateness_sigma_mas: separability.oblateness.then_some(oblateness),
+            frames: it.frames.len(),
+            oblateness_mas: it.separated.then(|| fit.oblateness_mas()),
+            oblateness_sigma_mas: it.separated.then_some(oblateness),
             radius_arcsec: (fit.radius_mas() - model.radius_bias_mas) / 1000.0,
             radius_sigma_mas: radius,
         });
         if best
             .as_ref()
-            .is_none_or(|it| separability.oblateness && oblateness < MUST_PAY * it.1)
+            .is_none_or(|best| it.separated && oblateness < MUST_PAY * best.1)
         {
+            let mut kept = vec![false; usable];
+            it.frames.iter().for_each(|&k| kept[k] = true);
             best = Some((fraction, oblateness, kept));
         }
+        fits.push(it);
     }
     let Some((fraction, sigma, kept)) = best else {
         return Err(ShapeError::TooFew {
@@ -97,7 +109,7 @@ pub(in crate::pipeline) fn shape(
         }
         .into());
     };
-    let observations = picked(selected, &kept);
+    let observations = picked(&selected.observations, &kept);
     let (fit, blocks, correlation, separability) = fitted(&observations, known)?;
     let sines = shape::sine_terms(&observations, &blocks, known, &separability);
     let odd = shape::odd_terms(&observations, &blocks, known, &separability);
@@ -105,6 +117,9 @@ pub(in crate::pipeline) fn shape(
     let parts = PartTests::of(&observations, known);
     Ok(Shape {
         gain: whole_sigma / sigma,
+        sigma_all_and_kept_mas: [whole_sigma, sigma],
+        weighting_gain: weighting_gain(&observations, known, sigma),
+        slope: slope::slope(&selected.observations, &fits),
         fit,
         blocks,
         separability,
@@ -121,9 +136,8 @@ pub(in crate::pipeline) fn shape(
 }
 
 /// The kept observations.
-fn picked(selected: &Selected, kept: &[bool]) -> Vec<Observation> {
-    selected
-        .observations
+fn picked(observations: &[Observation], kept: &[bool]) -> Vec<Observation> {
+    observations
         .iter()
         .zip(kept)
         .filter(|(_, kept)| **kept)
@@ -133,6 +147,46 @@ fn picked(selected: &Selected, kept: &[bool]) -> Vec<Observation> {
 
 /// A fit, its blocks, what correlation in time does to them, what can be told apart.
 type Fitted = (Fit, Vec<Block>, Correlation, Separability);
+/// The fit to the sharpest share of the frames.
+///
+/// # Errors
+///
+/// When too few are left for a fit.
+pub(super) fn fraction_fit(
+    observations: &[Observation],
+    candidates: &[Candidate],
+    fraction: f64,
+    known: &Known,
+) -> Result<FractionFit, ShapeError> {
+    let kept = if fraction < 1.0 {
+        select::sharpest(candidates, fraction)
+    } else {
+        vec![true; observations.len()]
+    };
+    let some = picked(observations, &kept);
+    let (fit, blocks, _, separability) = fitted(&some, known)?;
+    Ok(FractionFit {
+        fraction,
+        frames: (0..kept.len()).filter(|&k| kept[k]).collect(),
+        observations: some,
+        blocks,
+        fit,
+        separated: separability.oblateness,
+    })
+}
+
+/// The error of the oblateness at equal weights over `sigma_mas`, the error at the weights used; none
+/// where it is not separated.
+fn weighting_gain(observations: &[Observation], known: &Known, sigma_mas: f64) -> Option<f64> {
+    let equal: Vec<Observation> = observations
+        .iter()
+        .map(|it| Observation { weight: 1.0, ..*it })
+        .collect();
+    let (fit, .., separability) = fitted(&equal, known).ok()?;
+    separability
+        .oblateness
+        .then(|| fit.sigmas_mas(true)[1] / sigma_mas)
+}
 
 /// Fits the shape to all of these frames.
 fn fitted(observations: &[Observation], known: &Known) -> Result<Fitted, ShapeError> {

@@ -228,6 +228,27 @@ pub(super) fn kept_curve(
         .collect()
 }
 
+pub(super) fn kept_slope(scale: f64, oblateness: &ShapeQuantity) -> KeptSlope {
+    let test = |slope: f64, sigma: f64, chance: f64| SlopeTest {
+        slope_mas: slope,
+        sigma_mas: sigma,
+        pull: slope / sigma,
+        chance,
+        degrees: 56.0,
+    };
+    KeptSlope {
+        oblateness: oblateness
+            .value
+            .map(|_| test(-6.2 * scale, 14.8 * scale, 0.677)),
+        radius: Some(test(21.3 * scale, 33.1 * scale, 0.523)),
+        fractions: vec![1.0, 0.8, 0.6, 0.4, 0.2, 0.1],
+        reason: oblateness
+            .value
+            .is_none()
+            .then(|| "the oblateness is not separated".to_owned()),
+    }
+}
+
 pub(super) fn seeing(separated: bool) -> SeeingRecord {
     SeeingRecord {
         r0: Quantity::measured(0.0743, 0.0031, "m"),
