@@ -50,7 +50,10 @@ pub fn measure_air(session: &Session, progress: &dyn Progress) -> Result<Air, Er
         );
     }
     for (index, reason) in &set_aside {
-        say("set-aside", format!("sequence {} was not measured: {reason}", index + 1));
+        say(
+            "set-aside",
+            format!("sequence {} was not measured: {reason}", index + 1),
+        );
     }
     if let Ok(it) = &found.motion {
         for text in &it.warnings {
@@ -109,16 +112,15 @@ fn sequence(
     });
     // The session's floor, as strong as this sequence's own turbulence.
     let floor = match (&found.floors, &own.motion, &found.motion) {
-        (Ok(floors), Ok((r0_m, _)), Ok(session_motion)) => floors
-            .iter()
-            .find(|it| it.m == 2)
-            .map_or_else(
+        (Ok(floors), Ok((r0_m, _)), Ok(session_motion)) => {
+            floors.iter().find(|it| it.m == 2).map_or_else(
                 || Quantity::missing("mas", "no harmonic m = 2"),
                 |it| {
                     let relative = (session_motion.r0_los_500nm_m / r0_m).powf(5.0 / 6.0);
                     Quantity::computed(it.frame_predicted_mas * relative, "mas")
                 },
-            ),
+            )
+        }
         (Err(reason), ..) | (_, Err(reason), _) | (.., Err(reason)) => {
             Quantity::missing("mas", reason)
         }
@@ -190,7 +192,12 @@ pub fn write_time_series(air: &Air, path: &Path) -> Result<(), Error> {
     };
     let real = |f: &dyn Fn(&AirFrame) -> f64| Values::F64(frames.iter().map(f).collect());
     let gaps = |f: &dyn Fn(&AirFrame) -> Option<f64>| {
-        Values::Gaps(frames.iter().map(|it| f(it).filter(|v| v.is_finite())).collect())
+        Values::Gaps(
+            frames
+                .iter()
+                .map(|it| f(it).filter(|v| v.is_finite()))
+                .collect(),
+        )
     };
     let columns = [
         Column::new("sequence", whole(&|it| it.sequence)).describe("index in the session file, from 0"),

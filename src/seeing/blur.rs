@@ -4,8 +4,8 @@
 //!
 //! ```text
 //! J_k  = (lambda / r0_k)^(5/3)                                             of the air, towards the Sun
-//! read_k - M_k = c_k q + M_k g + e_k d + noise_k                            M_k: J by motion
-//! r0   = [ mean over frames of  (read_k - c_k q) cos z_k ... ]^(-3/5)       500 nm, zenith
+//! read_k - c_k w_k - M_k = c_k q + M_k g + e_k d + noise_k                 M_k: J by motion
+//! r0   = [ mean over frames of  (read_k - c_k (w_k + q)) cos z_k ... ]^(-3/5)   500 nm, zenith
 //! ```
 //!
 //! The blur that a sequence's limbs are read with grows with that of the air, with a blur of the
@@ -17,6 +17,7 @@
 //! | symbol | meaning | unit |
 //! |--------|---------|------|
 //! | `q` | square of the instrument's own blur, standard deviation on an axis | arcsec^2 |
+//! | `w_k` | variance of the limb's displacement within a sector, which blurs the sector's edge | arcsec^2 |
 //! | `c_k`, `e_k` | change of what is read by `q` and by `d` | arcsec^(-1/3), arcsec^(5/3) |
 //! | `g` | common relative error of `M`: motion, and the family of transfer functions | - |
 //!
@@ -71,6 +72,15 @@ pub struct BlurReading {
     pub per_own: f64,
     /// Change of what is read by one standard deviation of the edge's thickness.
     pub per_edge: f64,
+    /// Variance of the displacement within a sector, from the motion: it blurs as the instrument would.
+    pub within_arcsec2: f64,
+}
+
+impl BlurReading {
+    /// What is read, less what the motion within a sector adds.
+    fn still(&self) -> f64 {
+        self.blur - self.per_own * self.within_arcsec2
+    }
 }
 
 /// The instrument, and how well the motion knows what all sequences share.
@@ -214,7 +224,7 @@ pub fn by_blur(readings: &[BlurReading], setup: &BlurSetup) -> Result<BlurSeeing
         .map(|it| {
             let per_blur = strength_per_blur(it);
             let share = it.frames as f64 / total;
-            let air = it.blur - it.per_own * taken.q;
+            let air = it.still() - it.per_own * taken.q;
             strength += share * per_blur * air;
             sight += share * air;
             noise += (share * per_blur * it.blur_sigma).powi(2);
@@ -238,7 +248,9 @@ pub fn by_blur(readings: &[BlurReading], setup: &BlurSetup) -> Result<BlurSeeing
     }
     let r0_zenith_500nm_m = strength.powf(-0.6);
     let model = 0.6 * model_variance(by_own, by_edge, &taken).sqrt() / strength;
-    let relative = (0.6 * noise.sqrt() / strength).hypot(model).hypot(FAMILY_SIGMA);
+    let relative = (0.6 * noise.sqrt() / strength)
+        .hypot(model)
+        .hypot(FAMILY_SIGMA);
     Ok(BlurSeeing {
         r0_zenith_500nm_m,
         r0_zenith_sigma_m: r0_zenith_500nm_m * relative,
@@ -250,7 +262,8 @@ pub fn by_blur(readings: &[BlurReading], setup: &BlurSetup) -> Result<BlurSeeing
 
 /// Variance of `c q + e d`; never below zero by rounding.
 fn model_variance(per_own: f64, per_edge: f64, it: &Regression) -> f64 {
-    let sum = per_own * per_own * it.qq + 2.0 * per_own * per_edge * it.qd + per_edge * per_edge * it.dd;
+    let sum =
+        per_own * per_own * it.qq + 2.0 * per_own * per_edge * it.qd + per_edge * per_edge * it.dd;
     if sum > 0.0 { sum } else { 0.0 }
 }
 
@@ -266,10 +279,13 @@ fn regression(readings: &[BlurReading], setup: &BlurSetup) -> Option<Regression>
         };
         let motion = blur_of_r0(r0_m, it);
         let row = Vector3::new(it.per_own, motion, it.per_edge);
-        let sigma = it.blur_sigma.hypot(5.0 / 3.0 * relative * motion).hypot(0.01 * motion);
+        let sigma = it
+            .blur_sigma
+            .hypot(5.0 / 3.0 * relative * motion)
+            .hypot(0.01 * motion);
         let weight = sigma.powi(-2);
         normal += weight * row * row.transpose();
-        right += weight * (it.blur - motion) * row;
+        right += weight * (it.still() - motion) * row;
         compared += 1;
     }
     let covariance = normal.try_inverse().filter(|_| compared > 0)?;
@@ -303,6 +319,7 @@ mod tests {
             by_motion: None,
             per_own: 4.0,
             per_edge: 0.15,
+            within_arcsec2: 0.0,
         };
         let r0_los_m = r0_m * it.zenith_rad.cos().powf(0.6);
         it.blur = blur_of_r0(r0_los_m, &it) + it.per_own * own_arcsec * own_arcsec;
@@ -321,7 +338,9 @@ mod tests {
         assert!((found.r0_zenith_500nm_m / 0.07 - 1.0).abs() < 1e-12);
         assert!(matches!(found.own, OwnBlur::Below { .. }));
         // Family 6 percent, edge 0.6 x 0.15 / J.
-        let wanted = 0.06_f64.hypot(0.6 * 0.15 / it.blur).hypot(0.6 * 0.02 / it.blur);
+        let wanted = 0.06_f64
+            .hypot(0.6 * 0.15 / it.blur)
+            .hypot(0.6 * 0.02 / it.blur);
         assert!((found.r0_zenith_sigma_m / found.r0_zenith_500nm_m - wanted).abs() < 1e-9);
     }
 
@@ -330,14 +349,28 @@ mod tests {
         let sky = [0.04, 0.06, 0.09, 0.13];
         let blurred: Vec<BlurReading> = sky.iter().map(|&it| reading(it, 0.8)).collect();
         let found = by_blur(&blurred, &SETUP).unwrap();
-        let OwnBlur::Seen { sigma_arcsec, uncertainty_arcsec } = found.own else {
+        let OwnBlur::Seen {
+            sigma_arcsec,
+            uncertainty_arcsec,
+        } = found.own
+        else {
             panic!("{:?}", found.own);
         };
-        assert!((sigma_arcsec - 0.8).abs() < 0.02 && uncertainty_arcsec < 0.1, "{:?}", found.own);
+        assert!(
+            (sigma_arcsec - 0.8).abs() < 0.02 && uncertainty_arcsec < 0.1,
+            "{:?}",
+            found.own
+        );
         let mean = sky.iter().map(|it: &f64| it.powf(-5.0 / 3.0)).sum::<f64>() / 4.0;
         assert!((found.r0_zenith_500nm_m / mean.powf(-0.6) - 1.0).abs() < 0.02);
         // Taken for the air, it would have read much worse seeing.
-        let blind: Vec<BlurReading> = blurred.iter().map(|it| BlurReading { by_motion: None, ..*it }).collect();
+        let blind: Vec<BlurReading> = blurred
+            .iter()
+            .map(|it| BlurReading {
+                by_motion: None,
+                ..*it
+            })
+            .collect();
         let worse = by_blur(&blind, &SETUP).unwrap();
         assert_eq!(worse.own, OwnBlur::NoMotion);
         assert!(worse.r0_zenith_500nm_m < 0.85 * found.r0_zenith_500nm_m);
@@ -357,15 +390,31 @@ mod tests {
             })
             .collect();
         let found = by_blur(&readings, &SETUP).unwrap();
-        assert!(matches!(found.own, OwnBlur::Below { .. }), "{:?}", found.own);
+        assert!(
+            matches!(found.own, OwnBlur::Below { .. }),
+            "{:?}",
+            found.own
+        );
     }
 
     #[test]
     fn where_the_width_cannot_tell_there_is_a_reason() {
-        let coarse = BlurSetup { pixel_arcsec: 4.1, ..SETUP };
-        assert!(matches!(by_blur(&[reading(0.05, 0.0)], &coarse), Err(BlurRefusal::Pixels { .. })));
-        assert!(matches!(by_blur(&[reading(0.4, 0.0)], &SETUP), Err(BlurRefusal::TooGood { .. })));
-        let sharp = BlurReading { blur: -0.02, ..reading(0.4, 0.0) };
+        let coarse = BlurSetup {
+            pixel_arcsec: 4.1,
+            ..SETUP
+        };
+        assert!(matches!(
+            by_blur(&[reading(0.05, 0.0)], &coarse),
+            Err(BlurRefusal::Pixels { .. })
+        ));
+        assert!(matches!(
+            by_blur(&[reading(0.4, 0.0)], &SETUP),
+            Err(BlurRefusal::TooGood { .. })
+        ));
+        let sharp = BlurReading {
+            blur: -0.02,
+            ..reading(0.4, 0.0)
+        };
         assert_eq!(by_blur(&[sharp], &SETUP), Err(BlurRefusal::Sharp));
         assert_eq!(by_blur(&[], &SETUP), Err(BlurRefusal::NoSequence));
     }

@@ -112,7 +112,9 @@ pub fn coherence(
         return Err(NoCoherence::TooFewFrames { found });
     }
     let model = |it: &dyn std::fmt::Display| NoCoherence::Model(it.to_string());
-    let power = harmonic_power(0, series).map_err(|it| model(&it))?.power_mas2;
+    let power = harmonic_power(0, series)
+        .map_err(|it| model(&it))?
+        .power_mas2;
     let orders: Vec<usize> = (FIRST..power.len())
         .filter(|&m| power[m] > 4.0 * series.noise_variance_mas2[m])
         .collect();
@@ -126,14 +128,13 @@ pub fn coherence(
         .iter()
         .flat_map(|&m| {
             let unit = (power[m] - series.noise_variance_mas2[m]).sqrt();
-            [series.cos_mas, series.sin_mas].map(|table| {
-                table.column(m).iter().map(|it| it / unit).collect()
-            })
+            [series.cos_mas, series.sin_mas]
+                .map(|table| table.column(m).iter().map(|it| it / unit).collect())
         })
         .collect();
     let columns: Vec<&[f64]> = scaled.iter().map(Vec::as_slice).collect();
-    let memory = Autocovariance::of(series.time_s, &columns)
-        .ok_or(NoCoherence::TooFewFrames { found })?;
+    let memory =
+        Autocovariance::of(series.time_s, &columns).ok_or(NoCoherence::TooFewFrames { found })?;
     let correlation = memory.gamma[1];
     if !(correlation >= LEAST_CORRELATION) {
         return Err(NoCoherence::Forgotten {
@@ -167,7 +168,8 @@ pub fn coherence(
     let steepest = (1..=used)
         .map(|k| {
             let drift_m = wind_m_s * memory.spacing_s * k as f64;
-            let slope = (curve.at(1.05 * drift_m) - curve.at(drift_m / 1.05)) / (2.0 * 1.05_f64.ln());
+            let slope =
+                (curve.at(1.05 * drift_m) - curve.at(drift_m / 1.05)) / (2.0 * 1.05_f64.ln());
             slope.abs()
         })
         .fold(1e-3, |a, b| if b > a { b } else { a });

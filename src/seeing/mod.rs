@@ -26,7 +26,7 @@ pub use convert::{
 };
 pub use effective::{EffectiveCount, effective_count, effective_count_of_power};
 pub use error::SeeingError;
-pub use floor::{View, floor_correlation_time_s, floor_variance_mas2};
+pub use floor::{View, floor_correlation_time_s, floor_variance_mas2, within_sector_variance_mas2};
 pub use harmonics::{HarmonicPower, HarmonicSeries, LEAST_FRAMES, harmonic_power};
 pub use motion::{MotionSeeing, PowerRow, SequenceSeeing, Setup, by_motion};
 pub use prior::{LayerPrior, ProfilePrior};

@@ -149,7 +149,12 @@ mod tests {
         for (a, b) in at(0.0)?.iter().zip(&still) {
             assert!((a.mean / b - 1.0).abs() < 1e-9 && a.swing == 0.0);
         }
-        assert!(at(200.0)?.iter().zip(&still).all(|(a, b)| a.mean.abs() < 0.02 * b));
+        assert!(
+            at(200.0)?
+                .iter()
+                .zip(&still)
+                .all(|(a, b)| a.mean.abs() < 0.02 * b)
+        );
         Ok(())
     }
 
@@ -163,7 +168,10 @@ mod tests {
         let step = 0.02;
         let mut sum = -0.5 * still;
         for k in 0..1500 {
-            sum += harmonic_lag_kernels(&aperture, Tilt::Gradient, 25.0, rho, m, step * f64::from(k))?[m].mean;
+            sum +=
+                harmonic_lag_kernels(&aperture, Tilt::Gradient, 25.0, rho, m, step * f64::from(k))?
+                    [m]
+                    .mean;
         }
         let found = 2.0 * step * sum / still;
         assert!((found / wanted - 1.0).abs() < 0.02, "{found} {wanted}");

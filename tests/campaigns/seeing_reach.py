@@ -1,13 +1,15 @@
 """Fried's parameter by motion and by blur against sessions of an independent forward model.
 
-Slow: half a second of CPU for a frame of 512 px, some 1.5 s at 1024 px, 6 s at 2048 px. Not part of
-the tests; its figures stand in the headings of src/seeing/motion.rs and src/seeing/blur.rs.
+Slow: 0.04 s of CPU for a frame of 512 px, some 0.3 s at 1024 px, 1 s at 2048 px: ten minutes for all.
+Not part of the tests; its figures stand in the headings of src/seeing/motion.rs and src/seeing/blur.rs.
 
-    python3 tests/campaigns/seeing_reach.py make motion DIR    10 sessions, one burst of 160 frames, 4.1 arcsec a pixel
-    python3 tests/campaigns/seeing_reach.py make blur DIR      10 sessions at 2.05 and 1.02 arcsec a pixel
+    python3 tests/campaigns/seeing_reach.py make motion DIR    20 sessions, one burst of 500 frames, 4.1 arcsec a pixel
+    python3 tests/campaigns/seeing_reach.py make blur DIR      20 sessions at 2.05 and 1.02 arcsec a pixel
     python3 tests/campaigns/seeing_reach.py make own DIR       2 sessions of four seeings through an instrument that blurs
     python3 tests/campaigns/seeing_reach.py run DIR --cmd 'truelimb seeing {session} --json -q'
     python3 tests/campaigns/seeing_reach.py judge DIR
+
+With --cmd given to make, each session is measured when it is made and its frames are deleted.
 
 The forward model is the folder of the variable SKYSIM (../shared/sim by default); it shares no code
 with this program. Needs numpy, scipy, astropy, pyerfa, palpy.
@@ -33,15 +35,15 @@ def common(rng, r0, aperture):
                 distortion_mas=dict(m2=[float(rng.uniform(0, 120)), 20], m3=[float(rng.uniform(0, 60)), 50], m4=[10, 5]))
 
 
-def motion(rng, i, n):
+def motion(rng, i, n, frames):
     """r0 from 3 to 20 cm in even steps of its logarithm."""
     r0 = 0.03 * (0.20 / 0.03) ** (i / (n - 1))
     case = common(rng, r0, [0.10, 0.15, 0.20, 0.30][i % 4])
-    case.update(npix=512, scale_as_px=4.1, bursts=[dict(kind="burst", frames=160, dt_s=0.8, at_min=0)])
+    case.update(npix=512, scale_as_px=4.1, bursts=[dict(kind="burst", frames=frames or 500, dt_s=0.8, at_min=0)])
     return [case]
 
 
-def blur(rng, i, n):
+def blur(rng, i, n, frames):
     """Fried's parameter at the wavelength from 0.3 to 1.1 apertures."""
     aperture = [0.10, 0.15, 0.20][i % 3]
     r0 = max(0.03, aperture * rng.uniform(0.3, 1.1) / (550 / 500) ** 1.2)
@@ -52,7 +54,7 @@ def blur(rng, i, n):
     return [case]
 
 
-def own(rng, i, n):
+def own(rng, i, n, frames):
     """Four bursts of different seeing through an instrument with a blur of its own, 0.5 or 0.8 arcsec rms on an axis."""
     base = common(rng, 0.1, 0.15)
     cases = []
@@ -63,15 +65,16 @@ def own(rng, i, n):
     return cases
 
 
-COUNT = dict(motion=10, blur=10, own=2)
+COUNT = dict(motion=20, blur=20, own=2)
 
 
 def make(a):
     sys.path.insert(0, SIM)
     import skysim
-    for i in range(COUNT[a.what]):
+    n = a.n or COUNT[a.what]
+    for i in range(n):
         rng = np.random.default_rng([a.seed, i])
-        cases = dict(motion=motion, blur=blur, own=own)[a.what](rng, i, COUNT[a.what])
+        cases = dict(motion=motion, blur=blur, own=own)[a.what](rng, i, n, a.frames)
         out = os.path.join(a.dir, f"{i:03d}")
         if os.path.exists(os.path.join(out, "truth.json")):
             continue
@@ -86,16 +89,24 @@ def make(a):
         open(os.path.join(out, "session.toml"), "w").write(text)
         json.dump(truth, open(os.path.join(out, "truth.json"), "w"), indent=1)
         print(out, flush=True)
+        if a.cmd:
+            measure(a.cmd, os.path.join(out, "session.toml"))
+            for f in glob.glob(os.path.join(out, "*.fits")):
+                os.remove(f)
 
 
 def run(a):
     for session in sorted(glob.glob(os.path.join(a.dir, "*", "session.toml"))):
-        done = subprocess.run([c.format(session=session) for c in shlex.split(a.cmd)], capture_output=True, text=True)
-        folder = os.path.dirname(session)
-        if done.returncode != 0:
-            print(folder, "exit", done.returncode, done.stderr.strip()[-300:], flush=True)
-            continue
-        open(os.path.join(folder, "seeing.json"), "w").write(done.stdout)
+        measure(a.cmd, session)
+
+
+def measure(cmd, session):
+    done = subprocess.run([c.format(session=session) for c in shlex.split(cmd)], capture_output=True, text=True)
+    folder = os.path.dirname(session)
+    if done.returncode != 0:
+        print(folder, "exit", done.returncode, done.stderr.strip()[-300:], flush=True)
+        return
+    open(os.path.join(folder, "seeing.json"), "w").write(done.stdout)
 
 
 def judge(a):
@@ -138,6 +149,7 @@ if __name__ == "__main__":
     p = argparse.ArgumentParser(description=__doc__, formatter_class=argparse.RawDescriptionHelpFormatter)
     s = p.add_subparsers(dest="do", required=True)
     m = s.add_parser("make"); m.add_argument("what", choices=sorted(COUNT)); m.add_argument("dir"); m.add_argument("--seed", type=int, default=1)
+    m.add_argument("--n", type=int); m.add_argument("--frames", type=int); m.add_argument("--cmd")
     m = s.add_parser("run"); m.add_argument("dir"); m.add_argument("--cmd", required=True)
     m = s.add_parser("judge"); m.add_argument("dir")
     a = p.parse_args()

@@ -70,7 +70,14 @@ fn layers_are_inverted_as_in_the_table() {
         let mut variance = [0.0; M_MAX + 1];
         let unit = (500e-9 / MAS_RAD).powi(2) * 0.05_f64.powf(-5.0 / 3.0);
         for (height_m, share) in heights.iter().zip(&shares) {
-            let k = harmonic_kernels(&aperture, Tilt::Gradient, true_m, height_m * LIMB_RAD, M_MAX).unwrap();
+            let k = harmonic_kernels(
+                &aperture,
+                Tilt::Gradient,
+                true_m,
+                height_m * LIMB_RAD,
+                M_MAX,
+            )
+            .unwrap();
             for (to, k) in variance.iter_mut().zip(k) {
                 *to += unit * share * k;
             }
@@ -105,13 +112,21 @@ fn layers_are_inverted_as_in_the_table() {
             found_cm.push(100.0 * by_motion(&[one], &setup).unwrap().r0_zenith_500nm_m);
         }
         let mean = found_cm.iter().sum::<f64>() / f64::from(runs);
-        let scatter = (found_cm.iter().map(|it| (it - mean).powi(2)).sum::<f64>() / f64::from(runs - 1)).sqrt();
+        let scatter = (found_cm.iter().map(|it| (it - mean).powi(2)).sum::<f64>()
+            / f64::from(runs - 1))
+        .sqrt();
         // The mean within three of its own errors and one percent: positive strengths cut off at zero
         // there, strengths positive by their logarithm here. The scatter of 24 runs is known to 15
         // percent; a posterior mean scatters less than least squares where layers are degenerate.
         let tolerance = 3.0 * after[2] / f64::from(runs).sqrt() + 0.01 * after[1];
-        assert!((mean - after[1]).abs() < tolerance, "{line}: {mean} +- {scatter}");
-        assert!((0.4..1.45).contains(&(scatter / after[2])), "{line}: {mean} +- {scatter}");
+        assert!(
+            (mean - after[1]).abs() < tolerance,
+            "{line}: {mean} +- {scatter}"
+        );
+        assert!(
+            (0.4..1.45).contains(&(scatter / after[2])),
+            "{line}: {mean} +- {scatter}"
+        );
         count += 1;
     }
     assert_eq!(count, 6);
@@ -155,17 +170,38 @@ fn errors_of_a_mean_over_frozen_flow() {
     let mean = |it: LagKernel| it.mean;
     let crosswind = |it: LagKernel| it.mean - it.swing;
     for (case, height_m, of, noise, estimated) in [
-        ("a2 h=500 L0=25 D=.1 wind-avg", 500.0, mean as fn(LagKernel) -> f64, 0.0, true),
+        (
+            "a2 h=500 L0=25 D=.1 wind-avg",
+            500.0,
+            mean as fn(LagKernel) -> f64,
+            0.0,
+            true,
+        ),
         ("a2 h=2000 L0=25 D=.1 wind-avg", 2000.0, mean, 0.0, true),
         ("a2 h=500 + white noise (var equal)", 500.0, mean, 1.0, true),
-        ("a2 h=2000 L0=25 wind at 45deg (c=-1)", 2000.0, crosswind, 0.0, false),
+        (
+            "a2 h=2000 L0=25 wind at 45deg (c=-1)",
+            2000.0,
+            crosswind,
+            0.0,
+            false,
+        ),
     ] {
         let at = |drift_m| {
-            let k = harmonic_lag_kernels(&Aperture::clear(0.1), Tilt::Gradient, 25.0, height_m * LIMB_RAD, 2, drift_m);
+            let k = harmonic_lag_kernels(
+                &Aperture::clear(0.1),
+                Tilt::Gradient,
+                25.0,
+                height_m * LIMB_RAD,
+                2,
+                drift_m,
+            );
             of(k.unwrap()[2])
         };
         // Memory ends where the layer has drifted by several outer scales.
-        let mut gamma: Vec<f64> = (0..count).map(|k| if k < 300 { at(k as f64) } else { 0.0 }).collect();
+        let mut gamma: Vec<f64> = (0..count)
+            .map(|k| if k < 300 { at(k as f64) } else { 0.0 })
+            .collect();
         gamma[0] *= 1.0 + noise;
         let n = count as f64;
         let inflation = 1.0
@@ -177,7 +213,10 @@ fn errors_of_a_mean_over_frozen_flow() {
                     .map(|(k, it)| (1.0 - k as f64 / n) * it / gamma[0])
                     .sum::<f64>();
         let (truth, ratio) = printed(case, "Geyer_IPS");
-        assert!((inflation - truth).abs() < 0.012, "{case}: {inflation} {truth}");
+        assert!(
+            (inflation - truth).abs() < 0.012,
+            "{case}: {inflation} {truth}"
+        );
         if !estimated {
             continue;
         }
@@ -191,6 +230,9 @@ fn errors_of_a_mean_over_frozen_flow() {
             .collect();
         ratios.sort_by(f64::total_cmp);
         let median = 0.5 * (ratios[19] + ratios[20]);
-        assert!((median / ratio - 1.0).abs() < 0.10, "{case}: {median} {ratio}");
+        assert!(
+            (median / ratio - 1.0).abs() < 0.10,
+            "{case}: {median} {ratio}"
+        );
     }
 }

@@ -2,9 +2,7 @@
 //! integral in real space, a table of autocorrelations and one of turbulence floors: tables made
 //! without this program.
 
-use truelimb::seeing::{
-    Layer, Profile, View, floor_correlation_time_s, floor_variance_mas2,
-};
+use truelimb::seeing::{Layer, Profile, View, floor_correlation_time_s, floor_variance_mas2};
 use truelimb::turbulence::{
     Aperture, Tilt, covariance_kernels, harmonic_kernels, harmonic_lag_kernels, variance_kernel,
 };
@@ -17,7 +15,11 @@ fn rows(text: &str) -> Vec<Vec<f64>> {
     text.lines()
         .filter(|line| !line.starts_with('#'))
         .skip(1)
-        .map(|line| line.split(',').map(|it| it.parse().unwrap_or(f64::NAN)).collect())
+        .map(|line| {
+            line.split(',')
+                .map(|it| it.parse().unwrap_or(f64::NAN))
+                .collect()
+        })
         .collect()
 }
 
@@ -35,9 +37,15 @@ fn covariances_of_phase_screens() {
         let (aperture, s) = (Aperture::clear(it[0]), it[2]);
         let (b0, b2) = covariance_kernels(&aperture, Tilt::Gradient, it[1], s).unwrap();
         let sigma2 = variance_kernel(&aperture, Tilt::Gradient, it[1]).unwrap();
-        for (found, printed, simulated, se) in [(b0 - b2, it[3], it[4], it[5]), (b0 + b2, it[6], it[7], it[8])] {
+        for (found, printed, simulated, se) in [
+            (b0 - b2, it[3], it[4], it[5]),
+            (b0 + b2, it[6], it[7], it[8]),
+        ] {
             // Six figures are printed.
-            assert!((found - printed).abs() < 5e-7 + 1e-6 * sigma2, "{it:?}: {found}");
+            assert!(
+                (found - printed).abs() < 5e-7 + 1e-6 * sigma2,
+                "{it:?}: {found}"
+            );
             assert!(agrees(found, simulated, se), "{it:?}: {found}");
         }
     }
@@ -52,7 +60,8 @@ fn harmonics_of_phase_screens() {
     ] {
         for it in rows(text) {
             let (aperture, m) = (Aperture::clear(it[0]), it[3] as usize);
-            let k = harmonic_kernels(&aperture, Tilt::Gradient, it[1], it[2] * LIMB_RAD, m.max(1)).unwrap()[m];
+            let k = harmonic_kernels(&aperture, Tilt::Gradient, it[1], it[2] * LIMB_RAD, m.max(1))
+                .unwrap()[m];
             assert!((k / it[4] - 1.0).abs() < 5e-6, "{it:?}: {k}");
             assert!(agrees(k, it[5], it[6]), "{it:?}: {k}");
             count += 1;
@@ -67,9 +76,14 @@ fn harmonics_of_plane_waves_with_and_without_drift() {
     assert_eq!(table.len(), 49);
     for it in table {
         let (aperture, m) = (Aperture::clear(it[0]), it[5] as usize);
-        let k = harmonic_lag_kernels(&aperture, Tilt::Gradient, it[1], it[2] * LIMB_RAD, 6, it[3]).unwrap()[m];
+        let k = harmonic_lag_kernels(&aperture, Tilt::Gradient, it[1], it[2] * LIMB_RAD, 6, it[3])
+            .unwrap()[m];
         let sign = if m % 2 == 0 { 1.0 } else { -1.0 };
-        let turn = if it[4].is_nan() { 0.0 } else { (2.0 * m as f64 * it[4].to_radians()).cos() };
+        let turn = if it[4].is_nan() {
+            0.0
+        } else {
+            (2.0 * m as f64 * it[4].to_radians()).cos()
+        };
         let found = k.mean + sign * turn * k.swing;
         let sigma2 = variance_kernel(&aperture, Tilt::Gradient, it[1]).unwrap();
         assert!((found - it[6]).abs() < 3e-6 * sigma2, "{it:?}: {found}");
@@ -86,8 +100,16 @@ fn covariances_by_real_space() {
         let s = it[2] * it[3] * ARCSEC_RAD;
         let (b0, b2) = covariance_kernels(&aperture, Tilt::Gradient, it[1], s).unwrap();
         let sigma2 = variance_kernel(&aperture, Tilt::Gradient, it[1]).unwrap();
-        assert!((b0 - b2 - it[5]).abs() < 1e-6 * sigma2, "{it:?}: {}", b0 - b2);
-        assert!((b0 + b2 - it[7]).abs() < 1e-6 * sigma2, "{it:?}: {}", b0 + b2);
+        assert!(
+            (b0 - b2 - it[5]).abs() < 1e-6 * sigma2,
+            "{it:?}: {}",
+            b0 - b2
+        );
+        assert!(
+            (b0 + b2 - it[7]).abs() < 1e-6 * sigma2,
+            "{it:?}: {}",
+            b0 + b2
+        );
     }
 }
 
@@ -152,13 +174,17 @@ fn floors_of_composite_profiles() {
         assert!(near(floor[1].sqrt(), it[11]), "{line}: {}", floor[1].sqrt());
         // The table's layers have winds of their own that it does not list: its correlation time is
         // met by one wind between 2 and 40 m/s, the same for every r0.
-        let at_10 = floor_correlation_time_s(&profile, &aperture, Tilt::Gradient, &view, 10.0, 2).unwrap()[2];
+        let at_10 = floor_correlation_time_s(&profile, &aperture, Tilt::Gradient, &view, 10.0, 2)
+            .unwrap()[2];
         let wind_m_s = 10.0 * at_10 / it[6];
         assert!((2.0..40.0).contains(&wind_m_s), "{line}: {wind_m_s}");
         // sigma after an hour, and hours to 0.5 mas of the oblateness, from the table's own time.
         let hour = floor[2].sqrt() * (it[6] / 3600.0).sqrt();
         assert!(near(hour, it[8]), "{line}: {hour}");
-        assert!((((2.0 * hour) / 0.5).powi(2) / it[10] - 1.0).abs() < 1.5e-3, "{line}");
+        assert!(
+            (((2.0 * hour) / 0.5).powi(2) / it[10] - 1.0).abs() < 1.5e-3,
+            "{line}"
+        );
         count += 1;
     }
     assert_eq!(count, 90);

@@ -14,7 +14,10 @@ fn table() -> Vec<[f64; 5]> {
         .filter(|it| !it.starts_with('#'))
         .skip(1)
         .map(|line| {
-            let it: Vec<f64> = line.split(',').map(|it| it.parse().unwrap_or(f64::NAN)).collect();
+            let it: Vec<f64> = line
+                .split(',')
+                .map(|it| it.parse().unwrap_or(f64::NAN))
+                .collect();
             [it[0], it[1], it[2], it[3], it[4]]
         })
         .collect()
@@ -40,10 +43,16 @@ fn the_formula_and_its_distance_from_wave_optics() {
     for [ratio, u, zernike, _, printed] in rows {
         let found = formula(ratio, u);
         // Four decimals; 3.44 for 3.4419 moves the exponent by 6e-4 of itself.
-        assert!((found - printed).abs() < 3e-4, "{ratio} {u}: {found} {printed}");
+        assert!(
+            (found - printed).abs() < 3e-4,
+            "{ratio} {u}: {found} {printed}"
+        );
         // Stated in the heading of optics/transfer.rs: 1 to 2 percent, 2.1 at the end of the range.
         if u <= 0.2 && ratio <= 3.0 {
-            assert!((found / zernike - 1.0).abs() < 0.022, "{ratio} {u}: {found} {zernike}");
+            assert!(
+                (found / zernike - 1.0).abs() < 0.022,
+                "{ratio} {u}: {found} {zernike}"
+            );
         }
     }
 }

@@ -50,19 +50,57 @@ fn write(path: &Path, text: &str) -> Result<(), Failure> {
 fn table(it: &AirReport) -> String {
     let mut out = vec![format!(
         "{:>8}  {:<19}  {:>6}  {:>6}  {:>15}  {:>15}  {:>13}  {:>8}  {:>8}",
-        "sequence", "UTC", "frames", "z deg", "r0 motion cm", "r0 blur cm", "fwhm arcsec", "tau0 ms", "floor mas"
+        "sequence",
+        "UTC",
+        "frames",
+        "z deg",
+        "r0 motion cm",
+        "r0 blur cm",
+        "fwhm arcsec",
+        "tau0 ms",
+        "floor mas"
     )];
     out.extend(it.sequences.iter().map(row));
     out.push(String::new());
     let seeing = &it.seeing;
     for (name, quantity, factor, unit, digits) in [
-        ("r0 by motion, 500 nm, zenith", &seeing.by_motion, 100.0, "cm", 2),
-        ("r0 by blur, 500 nm, zenith", &seeing.by_blur, 100.0, "cm", 2),
-        ("the instrument's own blur, rms on an axis", &seeing.own_blur, 1.0, "arcsec", 2),
-        ("long-exposure image, towards the Sun", &seeing.fwhm, 1.0, "arcsec", 2),
+        (
+            "r0 by motion, 500 nm, zenith",
+            &seeing.by_motion,
+            100.0,
+            "cm",
+            2,
+        ),
+        (
+            "r0 by blur, 500 nm, zenith",
+            &seeing.by_blur,
+            100.0,
+            "cm",
+            2,
+        ),
+        (
+            "the instrument's own blur, rms on an axis",
+            &seeing.own_blur,
+            1.0,
+            "arcsec",
+            2,
+        ),
+        (
+            "long-exposure image, towards the Sun",
+            &seeing.fwhm,
+            1.0,
+            "arcsec",
+            2,
+        ),
         ("coherence time", &seeing.coherence_time, 1000.0, "ms", 2),
         ("outer scale", &seeing.outer_scale, 1.0, "m", 1),
-        ("height of the turbulence", &seeing.height_proxy, 1.0, "m", 0),
+        (
+            "height of the turbulence",
+            &seeing.height_proxy,
+            1.0,
+            "m",
+            0,
+        ),
     ] {
         out.push(format!("{name}: {}", words(quantity, factor, unit, digits)));
     }
@@ -70,10 +108,16 @@ fn table(it: &AirReport) -> String {
         out.push(String::new());
         out.push("floor by turbulence, one coefficient, mas at 1 AU: predicted from the seeing, observed".to_owned());
         for floor in &it.harmonics {
-            let mean = floor.mean_observed_mas.map_or_else(|| "-".to_owned(), |v| format!("{v:.1}"));
+            let mean = floor
+                .mean_observed_mas
+                .map_or_else(|| "-".to_owned(), |v| format!("{v:.1}"));
             out.push(format!(
                 "  m = {}: a frame {:.1}, {:.1}; the mean over {:.0} s {:.1}, {mean}",
-                floor.m, floor.frame_predicted_mas, floor.frame_observed_mas, floor.time_s, floor.mean_predicted_mas
+                floor.m,
+                floor.frame_predicted_mas,
+                floor.frame_observed_mas,
+                floor.time_s,
+                floor.mean_predicted_mas
             ));
         }
     }
@@ -90,8 +134,12 @@ fn row(it: &AirSequence) -> String {
         cell(&it.r0_motion, 100.0, 2),
         cell(&it.r0_blur, 100.0, 2),
         cell(&it.fwhm, 1.0, 2),
-        it.coherence_time.value.map_or_else(|| "-".to_owned(), |v| format!("{:.2}", 1000.0 * v)),
-        it.floor.value.map_or_else(|| "-".to_owned(), |v| format!("{v:.1}")),
+        it.coherence_time
+            .value
+            .map_or_else(|| "-".to_owned(), |v| format!("{:.2}", 1000.0 * v)),
+        it.floor
+            .value
+            .map_or_else(|| "-".to_owned(), |v| format!("{v:.1}")),
     )
 }
 
@@ -108,6 +156,9 @@ fn words(it: &Quantity, factor: f64, unit: &str, digits: usize) -> String {
     match (it.value, it.sigma) {
         (Some(_), Some(_)) => format!("{} {unit}", cell(it, factor, digits)),
         (Some(value), None) => format!("{:.digits$} {unit}", factor * value),
-        _ => format!("not measured ({})", it.reason.as_deref().unwrap_or("no reason")),
+        _ => format!(
+            "not measured ({})",
+            it.reason.as_deref().unwrap_or("no reason")
+        ),
     }
 }

@@ -103,12 +103,16 @@ pub(super) fn floors(
             sum.correlation += correlation[order];
             sum.sequences += 1.0;
             sum.mean_predicted += frame * independent;
-            for table in [seen.cos_mas, seen.sin_mas].iter().take(if order == 0 { 1 } else { 2 }) {
+            for table in [seen.cos_mas, seen.sin_mas]
+                .iter()
+                .take(if order == 0 { 1 } else { 2 })
+            {
                 let values = table.column(order).to_vec();
                 let by_blocks = effective_count(seen.time_s, &values).and_then(|it| it.by_batches);
                 if let Some(count) = by_blocks {
                     let mean = values.iter().sum::<f64>() / n;
-                    let scatter = values.iter().map(|it| (it - mean).powi(2)).sum::<f64>() / (n - 1.0);
+                    let scatter =
+                        values.iter().map(|it| (it - mean).powi(2)).sum::<f64>() / (n - 1.0);
                     sum.block_observed += scatter / count * au2;
                     sum.block_noise += noise / n;
                     sum.block_predicted += frame * independent;

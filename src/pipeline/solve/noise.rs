@@ -101,7 +101,10 @@ fn ratio(pairs: &[[ObservedLimb; 2]], sequence: &MeasuredSequence) -> Option<Noi
         }
         let n = differences.len() as f64;
         let mean = differences.iter().map(|it| it.0).sum::<f64>() / n;
-        seen += differences.iter().map(|it| (it.0 - mean).powi(2)).sum::<f64>();
+        seen += differences
+            .iter()
+            .map(|it| (it.0 - mean).powi(2))
+            .sum::<f64>();
         expected += differences.iter().map(|it| it.1).sum::<f64>() * (n - 1.0) / n;
         freedom += n - 1.0;
     }

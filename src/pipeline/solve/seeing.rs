@@ -83,18 +83,22 @@ pub(in crate::pipeline) fn seeing(
         .filter(|&k| owned[k].time_s.len() >= LEAST_FRAMES)
         .collect();
     let mut warnings = Vec::new();
-    warnings.extend(noise.as_ref().and_then(noise_warning).map(|it| ("noise", it)));
+    warnings.extend(
+        noise
+            .as_ref()
+            .and_then(noise_warning)
+            .map(|it| ("noise", it)),
+    );
     let setup = setup(session, measured, long.iter().map(|&k| &owned[k]));
     let motion = setup.as_ref().map_err(Clone::clone).and_then(|setup| {
-        let list: Vec<HarmonicSeries<'_>> =
-            long.iter().map(|&k| owned[k].as_seen(&measured[k])).collect();
+        let list: Vec<HarmonicSeries<'_>> = long
+            .iter()
+            .map(|&k| owned[k].as_seen(&measured[k]))
+            .collect();
         by_motion(&list, setup).map_err(|it| it.to_string())
     });
 
-    let mut each: Vec<SequenceAir> = measured
-        .iter()
-        .map(|_| none("too few frames"))
-        .collect();
+    let mut each: Vec<SequenceAir> = measured.iter().map(|_| none("too few frames")).collect();
     match &motion {
         Ok(found) => {
             for (&k, own) in long.iter().zip(&found.sequences) {
@@ -106,7 +110,9 @@ pub(in crate::pipeline) fn seeing(
                 .map(|(&k, own)| {
                     let r0 = (own.r0_los_500nm_m, own.relative_sigma);
                     let share = setup.as_ref().map_or(0.0, |it| it.zernike_share);
-                    let tilt = Tilt::Between { zernike_share: share };
+                    let tilt = Tilt::Between {
+                        zernike_share: share,
+                    };
                     let seen = owned[k].as_seen(&measured[k]);
                     coherence(&seen, &found.profile, &aperture(session), tilt, r0)
                         .map_err(|it| it.to_string())
@@ -181,9 +187,14 @@ fn pooled(ratios: &[Option<NoiseRatio>]) -> Option<NoiseRatio> {
 
 /// Mean of the sequences whose cadence allowed it, or the first reason.
 fn session_coherence(each: &[SequenceAir]) -> Result<Coherence, String> {
-    let found: Vec<&Coherence> = each.iter().filter_map(|it| it.coherence.as_ref().ok()).collect();
+    let found: Vec<&Coherence> = each
+        .iter()
+        .filter_map(|it| it.coherence.as_ref().ok())
+        .collect();
     if found.is_empty() {
-        let first = each.iter().find_map(|it| it.coherence.as_ref().err().cloned());
+        let first = each
+            .iter()
+            .find_map(|it| it.coherence.as_ref().err().cloned());
         return Err(first.unwrap_or_else(|| "no sequence".to_owned()));
     }
     let n = found.len() as f64;
