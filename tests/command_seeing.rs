@@ -152,10 +152,8 @@ fn one_roll_whose_shape_would_be_refused_is_measured() {
         session.push('\n');
     }
     let burst = independent().join("burst_000.fits");
-    session.push_str(&format!(
-        "[[sequence]]\nkind = \"burst\"\nfiles = [\"{}\"]\n",
-        burst.display()
-    ));
+    session.push_str("[[sequence]]\nkind = \"burst\"\n");
+    session.push_str(&["files = [\"", shown(&burst), "\"]\n"].concat());
     let path = folder.path().join("session.toml");
     fs::write(&path, session).unwrap();
     let output = run(&["seeing", shown(&path)]);

@@ -19,7 +19,9 @@
 //!
 //! # Accuracy
 //!
-//! That of the profile: 10 percent where the same frames were measured.
+//! That of the profile: 10 percent where the same frames were measured. Ten sessions of an independent
+//! forward model: observed over predicted 0.99, 1.00, 1.00 for m = 2, 3, 4, scatter 2 to 4 percent; 1.01
+//! with 11 percent for m = 0, which the fit of the profile does not see.
 //!
 //! # Source
 //!
