@@ -1,5 +1,6 @@
 //! The main job: the stages in order, each called once.
 
+pub mod air;
 mod assemble;
 mod band;
 mod correct;

@@ -193,6 +193,7 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
                     else { Quantity::missing("h", "systematics alone exceed 0.5 mas") },
             },
             observed_over_predicted: Quantity::measured(1.04, 0.05, "1"),
+            harmonics: Vec::new(),
         },
         refraction: sequences.iter().enumerate().map(|(k, it)| refraction(k, it.2)).collect(),
         selection: SelectionRecord {

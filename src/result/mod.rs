@@ -1,3 +1,4 @@
 //! The records of a result.
 
+pub mod air;
 pub mod record;

@@ -428,6 +428,38 @@ pub struct SeeingRecord {
     pub independent_frames: Vec<PowerRecord>,
     /// The layers of the fit.
     pub layers: Vec<LayerRecord>,
+    /// The instrument's own blur, standard deviation on one axis, from the blur of sequences of
+    /// different seeing against their motion.
+    #[serde(default)]
+    pub own_blur: Quantity,
+    /// Variance of the limb's noise, by halves of the pixels, over what photons and read noise let
+    /// expect.
+    #[serde(default)]
+    pub noise_over_expected: Quantity,
+}
+
+/// The floor that turbulence sets to one harmonic: standard deviations of one coefficient, mas at 1
+/// AU.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct FloorRecord {
+    /// Harmonic number.
+    pub m: usize,
+    /// Of one frame, predicted from the seeing.
+    pub frame_predicted_mas: f64,
+    /// Of one frame, observed, noise taken off.
+    pub frame_observed_mas: f64,
+    /// Observed over predicted, one frame.
+    pub observed_over_predicted: Quantity,
+    /// Mean length of a sequence, s.
+    pub time_s: f64,
+    /// Correlation time, predicted, s.
+    pub correlation_time_s: f64,
+    /// Of the mean over a sequence, predicted from the seeing by frozen flow.
+    pub mean_predicted_mas: f64,
+    /// Of the mean over a sequence, observed from blocks within it; null where it is too short.
+    pub mean_observed_mas: Option<f64>,
+    /// Observed over predicted, mean over a sequence: above 1 the air was slower than frozen flow.
+    pub mean_observed_over_predicted: Quantity,
 }
 
 /// The air's share of the error.
@@ -441,6 +473,9 @@ pub struct TurbulenceRecord {
     pub hours_to: HoursTo,
     /// Observed scatter over the predicted floor, per frame, m = 2.
     pub observed_over_predicted: Quantity,
+    /// The floor of every harmonic, of a frame and of a sequence's mean.
+    #[serde(default)]
+    pub harmonics: Vec<FloorRecord>,
 }
 
 /// Hours of observation to a goal.

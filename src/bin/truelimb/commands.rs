@@ -96,7 +96,7 @@ fn run(path: &Path, output: &Path, options: &Options, quiet: bool) -> Result<Out
 }
 
 /// A number from a frame's header, for a fact that the session leaves out.
-fn header_number(frame: &Path, keyword: &str) -> Option<f64> {
+pub(crate) fn header_number(frame: &Path, keyword: &str) -> Option<f64> {
     truelimb::frames::ImageFile::open(frame)
         .ok()?
         .key_f64(keyword)

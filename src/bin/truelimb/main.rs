@@ -4,6 +4,7 @@ mod arguments;
 mod commands;
 mod progress;
 mod refraction;
+mod seeing;
 
 use arguments::{Arguments, Command};
 use clap::Parser;
@@ -30,6 +31,7 @@ fn main() -> ExitCode {
     let ended = match arguments.command {
         Command::Demo(it) => commands::demo(&it, quiet),
         Command::Reduce(it) => commands::reduce(&it, quiet),
+        Command::Seeing(it) => seeing::seeing(&it, quiet),
         Command::Simulate(it) => commands::simulate(&it, quiet),
         Command::Limb(it) => commands::limb(&it),
         Command::Refraction(it) => refraction::refraction(&it, quiet),

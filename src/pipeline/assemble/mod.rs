@@ -1,7 +1,7 @@
 //! The outcome of the stages put into the records of the result.
 
 mod shape;
-mod seeing;
+pub(super) mod seeing;
 mod turbulence;
 mod sequences;
 mod selection;
@@ -51,7 +51,7 @@ pub(super) fn record(p: &Parts<'_>) -> (Record, Traces) {
         settings: crate::session::resolved(p.session),
         seed: p.options.seed,
         shape: shape::record(p),
-        seeing: seeing::record(p),
+        seeing: seeing::record(p.seeing),
         turbulence: turbulence::record(p),
         refraction: p
             .measured

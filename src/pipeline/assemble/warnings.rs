@@ -118,6 +118,9 @@ pub(super) fn records(p: &Parts<'_>) -> Vec<WarningRecord> {
             say("seeing", text.clone());
         }
     }
+    for (code, text) in &p.seeing.warnings {
+        say(code, text.clone());
+    }
     if p.shape.fit.excess > 1.0 {
         say(
             "excess-scatter",

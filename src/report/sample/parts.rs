@@ -293,6 +293,8 @@ pub(super) fn seeing(separated: bool) -> SeeingRecord {
                 share: 0.16,
             },
         ],
+        own_blur: Quantity::missing("arcsec", "not seen: below 0.4 arcsec"),
+        noise_over_expected: Quantity::measured(1.02, 0.03, "1"),
     }
 }
 
