@@ -1,3 +1,4 @@
 //! The records of a result.
 
+pub mod comparison;
 pub mod record;

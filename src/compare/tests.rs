@@ -1,0 +1,1 @@
+//! Comparisons of invented results and values.
