@@ -9,8 +9,6 @@ mod consistency;
 mod gather;
 mod pairs;
 mod reverse;
-#[cfg(test)]
-mod tests;
 
 use crate::consensus::ConsensusError;
 use crate::footing::limb::Displacements;

@@ -273,3 +273,24 @@ fn causes(record: &Record, observable: Observable, truth: &Truth) -> Vec<CauseRe
         })
         .collect()
 }
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    // Source: Student's t, 0.975 and 0.841345, with five degrees of freedom: 2.5706 and 1.1105
+    // (common tables; GUM table G.2 has 2.57 and 1.11).
+    #[test]
+    fn degrees_of_freedom_come_back_from_the_intervals() {
+        let quantity = |half_68: f64, half_95: f64| ShapeQuantity {
+            sigma: Some(half_68),
+            interval_95: Some([8.0 - half_95, 8.0 + half_95]),
+            ..ShapeQuantity::not_separated("mas", "")
+        };
+        let five = degrees_of(&quantity(1.1105, 2.5706));
+        assert!((five - 5.0).abs() < 0.01, "{five}");
+        assert!((sigma_factor(5.0) - 1.1105).abs() < 5e-5);
+        assert_eq!(degrees_of(&quantity(1.0, 1.9599)), f64::INFINITY);
+        assert_eq!(degrees_of(&quantity(1.0, 50.0)), 2.0);
+    }
+}

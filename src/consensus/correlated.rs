@@ -131,7 +131,8 @@ pub fn fit(
     let plain = Solved::at(&x, covariance, design, 0.0)?;
     let excess = plain.q - degrees as f64;
     let tau2 = match dark {
-        _ if !(excess > 0.0) => 0.0,
+        // Without degrees of freedom there is no scatter, only rounding.
+        _ if degrees == 0 || !(excess > 0.0) => 0.0,
         Dark::None => 0.0,
         Dark::DerSimonianLaird => excess / plain.trace,
         Dark::PauleMandel => dark_variance(&x, covariance, design, degrees)?,

@@ -271,6 +271,19 @@ fn by_moments_and_by_distance_too() {
 }
 
 #[test]
+fn as_many_means_as_values_leave_no_scatter() {
+    // By hand: the difference of two values, and the root of the sum of their squares.
+    let v = DMatrix::from_diagonal_element(2, 2, 0.01);
+    let one_each = DMatrix::identity(2, 2);
+    let fit = correlated::fit(&[959_830.1, 959_829.7], &v, &one_each, Dark::PauleMandel).unwrap();
+    assert_eq!((fit.degrees, fit.tau, fit.birge), (0, 0.0, None));
+    assert!((fit.values[0] - fit.values[1] - 0.4).abs() < 1e-9);
+    assert!((fit.se(&[1.0, -1.0]) - 0.02_f64.sqrt()).abs() < 1e-12);
+    let [low, high] = fit.interval_95(&[1.0, -1.0]);
+    assert!((0.5 * (high - low) - 1.959964 * 0.02_f64.sqrt()).abs() < 1e-6);
+}
+
+#[test]
 fn an_error_shared_by_all_stays_in_the_mean_whatever_their_number() {
     // Variance of the mean of n equal values with a common part c: u^2 / n + c^2.
     let n = 16;

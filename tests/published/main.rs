@@ -11,6 +11,7 @@ mod consensus_trend;
 mod disk_transform;
 mod finite_fourier_edge_1975;
 mod fits_readers;
+mod footing_limb;
 mod limb_darkening;
 mod limb_displacement;
 mod limb_extraction;

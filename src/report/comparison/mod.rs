@@ -122,14 +122,10 @@ const METHOD: [&str; 5] = [
 
 /// What the comparison says, a sentence a quantity.
 pub fn sentences_of_comparison(comparison: &Comparison) -> Vec<String> {
-    comparison
-        .quantities
-        .iter()
-        .map(|it| sentence(comparison, it))
-        .collect()
+    comparison.quantities.iter().map(sentence).collect()
 }
 
-fn sentence(comparison: &Comparison, of: &QuantityComparison) -> String {
+fn sentence(of: &QuantityComparison) -> String {
     let name = if of.quantity == "radius" {
         "Radius"
     } else {
@@ -148,7 +144,7 @@ fn sentence(comparison: &Comparison, of: &QuantityComparison) -> String {
     let reason = of.ground_minus_space.difference.reason.as_deref();
     format!(
         "{name}: {} on one footing; ground and space are not compared, because {}.",
-        numbers::plural(of.places.len().min(comparison.values.len()), "value"),
+        numbers::plural(of.places.len(), "value"),
         reason.unwrap_or("there is no difference")
     )
 }

@@ -23,7 +23,7 @@ const FOOT_PX: f64 = 62.0;
 pub(crate) fn plate(comparison: &Comparison) -> Option<Plate> {
     let words = Words {
         title: "Values on one footing",
-        finding: crate::report::comparison::sentences_of_comparison(comparison).join(" "),
+        finding: finding(comparison),
         reading: "Thick lines are one standard uncertainty, thin ones two. Circles: ground; squares: \
                   balloon; diamonds: space; filled: results of this program. A grey ring is the same \
                   value by geometry alone, before the model of the limb. Lozenges are means, as wide as \
@@ -32,6 +32,23 @@ pub(crate) fn plate(comparison: &Comparison) -> Option<Plate> {
         table: String::new(),
     };
     super::plate(STEM, super::WIDE_PX, words, |room| draw(comparison, room))
+}
+
+/// The mean of all, a quantity a sentence.
+fn finding(comparison: &Comparison) -> String {
+    let sentences = comparison.quantities.iter().filter_map(|it| {
+        let all = it.consensus.last()?;
+        let dark = all.dark_mas.map_or(String::new(), |it| {
+            format!(", dark uncertainty {} mas", numbers::significant(it, 2))
+        });
+        Some(format!(
+            "Mean {} of {}: {}{dark}.",
+            it.quantity,
+            numbers::plural(it.places.len(), "value"),
+            numbers::quantity(&all.mean)?
+        ))
+    });
+    sentences.collect::<Vec<_>>().join(" ")
 }
 
 /// One row of a panel.

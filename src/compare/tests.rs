@@ -1,1 +1,0 @@
-//! Comparisons of invented results and values.
