@@ -91,7 +91,8 @@ const SIX: [(f64, f64); 6] = [
 ];
 
 fn six() -> String {
-    SIX.iter()
+    let rows: Vec<String> = SIX
+        .iter()
         .enumerate()
         .map(|(i, (x, u))| {
             format!(
@@ -99,7 +100,8 @@ fn six() -> String {
                 10 + i
             )
         })
-        .collect()
+        .collect();
+    rows.concat()
 }
 
 // The published arithmetic of `data/meta_worked_examples.csv` through the whole command.
@@ -228,7 +230,7 @@ fn the_same_footing_at_both_ends_of_the_model() {
         of(&fourier, "oblateness")["places"]
     );
     let mean = |it: &Value| number(&of(it, "oblateness")["consensus"][2]["mean"]["value"]);
-    assert_eq!(mean(&model), mean(&fourier));
+    assert!((mean(&model) - mean(&fourier)).abs() < 1e-12);
 }
 
 #[test]
@@ -317,7 +319,6 @@ fn the_template_is_read_back() {
     let folder = tempfile::tempdir().unwrap();
     let path = folder.path().join("values.csv");
     // Its own example, taken out of the comment.
-    fs::write(&path, template.replace("# Lanthorn", "LATER")).unwrap();
     let example = template
         .lines()
         .find(|it| it.starts_with("# Lanthorn"))
@@ -382,7 +383,7 @@ fn bad_input_is_refused_with_all_its_faults_and_nothing_is_written() {
         &["compare", own, good, "--to", "inflection"],
         &["--to-blur-arcsec"],
     );
-    refused(&["compare", own, good, "--window-days", "-1"], &["window"]);
+    refused(&["compare", own, good, "--window-days=-1"], &["window"]);
     let odd = folder.path().join("odd.json");
     fs::write(&odd, "{\"schema_version\": 1}").unwrap();
     refused(

@@ -275,6 +275,7 @@ fn causes(record: &Record, observable: Observable, truth: &Truth) -> Vec<CauseRe
 }
 
 #[cfg(test)]
+#[expect(clippy::float_cmp, reason = "exact by construction")]
 mod tests {
     use super::*;
 

@@ -24,8 +24,8 @@
 //!
 //! # Source
 //!
-//! DerSimonian & Laird 1986, Control. Clin. Trials 7, 177; Paule & Mandel 1982, J. Res. NBS 87, 377;
-//! DerSimonian & Kacker 2007, Contemp. Clin. Trials 28, 105; Hartung & Knapp 2001, Stat. Med. 20,
+//! `DerSimonian` & Laird 1986, Control. Clin. Trials 7, 177; Paule & Mandel 1982, J. Res. NBS 87, 377;
+//! `DerSimonian` & Kacker 2007, Contemp. Clin. Trials 28, 105; Hartung & Knapp 2001, Stat. Med. 20,
 //! 3875; the floor at `se`: Knapp & Hartung 2003, Stat. Med. 22, 2693 (from memory).
 
 use super::{ConsensusError, Value, check, student, weighted_mean};
@@ -183,7 +183,8 @@ pub(super) fn falling_zero(high: f64, function: impl Fn(f64) -> f64) -> f64 {
     let (mut low, mut high) = (0.0, high);
     for _ in 0..200 {
         let middle = 0.5 * (low + high);
-        if middle == low || middle == high {
+        // As near as two numbers can be.
+        if !(low < middle && middle < high) {
             break;
         }
         if function(middle) > 0.0 {

@@ -29,8 +29,9 @@
 //! * another wavelength: the difference of height of [`super::height`], not applied;
 //! * `B0` unknown: the middle of 0 to 7.25 degrees, rectangular.
 //!
-//! The first two of the limb's model and the height are the same for all values, with their sign; form
-//! and width of the blur are each value's own.
+//! The first three and the height are the same for all values, with their sign; form and width of the
+//! blur are each value's own. Two values of a group have in common the smaller of their systematic
+//! errors: a full correlation of unequal errors would give one of them a weight below zero.
 //!
 //! # Valid for
 //!
@@ -129,7 +130,7 @@ impl Carried {
     }
 
     /// What two different values share, mas^2: the causes of the limb's model, and within a group the
-    /// systematic error as published.
+    /// smaller of their systematic errors as published; the rest of the larger is its own.
     pub fn covariance(&self, other: &Self) -> f64 {
         let model: f64 = self
             .shared_mas
@@ -138,7 +139,8 @@ impl Carried {
             .sum();
         let together = self.group.is_some() && self.group == other.group;
         let group = if together {
-            self.systematic_mas * other.systematic_mas
+            let (a, b) = (self.systematic_mas, other.systematic_mas);
+            (if a < b { a } else { b }).powi(2)
         } else {
             0.0
         };
@@ -422,7 +424,7 @@ fn through_the_limb(
     limbs: &mut Displacements,
     way: &mut Way,
 ) -> Result<(), FootingError> {
-    let same_wavelength = it.wavelength_nm == footing.wavelength_nm;
+    let same_wavelength = (it.wavelength_nm - footing.wavelength_nm).abs() < 1e-9;
     if it.definition.feels_blur() {
         let width = it.blur.ok_or(FootingError::NoBlur {
             definition: it.definition,
@@ -515,6 +517,7 @@ fn by_width(
 }
 
 #[cfg(test)]
+#[expect(clippy::float_cmp, reason = "exact by construction")]
 mod tests {
     use super::super::Width;
     use super::super::epoch::Epoch;
@@ -640,6 +643,11 @@ mod tests {
         let grouped = carried(&it);
         assert!((grouped.covariance(&grouped.clone()) - 100.0).abs() < 1e-9);
         assert_eq!(grouped.covariance(&plain), 0.0);
+        // Of two unequal systematic errors the smaller is what both have.
+        it.sigma_systematic = 0.03;
+        let larger = carried(&it);
+        assert!((grouped.covariance(&larger) - 100.0).abs() < 1e-9);
+        assert_eq!(grouped.covariance(&larger), larger.covariance(&grouped));
     }
 
     #[test]

@@ -26,7 +26,7 @@ impl Epoch {
             Some((first, last)) => (span(first.trim())?, span(last.trim())?),
             None => (span(text)?, span(text)?),
         };
-        (first.0 <= last.1).then(|| Self {
+        (first.0 <= last.0 && first.1 <= last.1).then(|| Self {
             text: text.to_owned(),
             from_mjd: first.0,
             to_mjd: last.1,
@@ -110,6 +110,7 @@ fn clock(text: &str) -> Option<f64> {
 }
 
 #[cfg(test)]
+#[expect(clippy::float_cmp, reason = "exact by construction")]
 mod tests {
     use super::*;
 

@@ -60,6 +60,7 @@ pub fn difference(wavelength_nm: f64, above_nm: f64) -> f64 {
 }
 
 #[cfg(test)]
+#[expect(clippy::float_cmp, reason = "exact by construction")]
 mod tests {
     use super::*;
 

@@ -35,6 +35,7 @@ use crate::optics::{Blur, Exposure, LimbOptics, OpticsError, ProfileMaker, Teles
 use crate::shape::REFERENCE_RADIUS_MAS;
 use crate::units::{ARCSEC_RAD, FWHM_PER_SIGMA};
 use std::collections::BTreeMap;
+use std::collections::btree_map::Entry;
 
 /// Widths of the blur that are allowed, arcsec.
 pub const WIDTHS_ARCSEC: (f64, f64) = (0.4, 10.0);
@@ -129,7 +130,7 @@ impl Displacements {
             seen.wavelength_nm.to_bits(),
             seen.edge_scale_km.to_bits(),
         );
-        if !self.makers.contains_key(&key) {
+        if let Entry::Vacant(free) = self.makers.entry(key) {
             let optics = LimbOptics {
                 edge: SolarEdge {
                     radius_arcsec: REFERENCE_RADIUS_MAS / 1000.0,
@@ -144,8 +145,7 @@ impl Displacements {
                 exposure: Exposure::Long,
             };
             let (reach, step) = PROFILE_ARCSEC;
-            self.makers
-                .insert(key, ProfileMaker::new(&optics, reach, step, 0.0)?);
+            free.insert(ProfileMaker::new(&optics, reach, step, 0.0)?);
         }
         Ok(&self.makers[&key])
     }

@@ -6,7 +6,7 @@ use super::{Definition, Distance, Observable, Platform, Published, RadiusOf, Uni
 use crate::constants::ASTRONOMICAL_UNIT;
 use crate::session::nearest;
 use crate::units::ARCSEC_RAD;
-use std::fmt;
+use std::fmt::{self, Write as _};
 
 /// Most values of one table: every pair of them is compared.
 pub const MOST_VALUES: usize = 300;
@@ -86,7 +86,7 @@ pub const COLUMNS: [Column; 17] = [
     ),
     optional(
         "group",
-        "any word: values with the same word share an instrument or a limb model, and their systematic error",
+        "any word: values with the same word share an instrument or a limb model, and their systematic error (of two, the smaller one)",
     ),
     optional(
         "note",
@@ -171,7 +171,7 @@ pub fn template() -> String {
     );
     for it in COLUMNS {
         let when = if it.needed { "" } else { " (may be left out)" };
-        out.push_str(&format!("# {}{when}: {}\n", it.name, it.holds));
+        let _ = writeln!(out, "# {}{when}: {}", it.name, it.holds);
     }
     out.push_str("#\n# An invented example; take the # off and overwrite it:\n# ");
     out.push_str(
@@ -378,9 +378,9 @@ impl Row<'_> {
         let found = self.cell(column).parse::<f64>().ok();
         let found = found.filter(|it| (lowest..=highest).contains(it));
         if found.is_none() {
-            let allowed = if lowest == f64::MIN {
+            let allowed = if lowest <= f64::MIN {
                 "a number".to_owned()
-            } else if highest == f64::MAX {
+            } else if highest >= f64::MAX {
                 format!("a number of {lowest} or more{unit}")
             } else {
                 format!("{lowest} to {highest}{unit}")
@@ -470,7 +470,7 @@ impl Row<'_> {
             sigma_random: sigma_random?,
             sigma_systematic: sigma_systematic?,
             definition: definition?,
-            blur: blur?,
+            blur,
             diameter: diameter?,
             radius_of: RadiusOf::Limb,
             distance: distance?,
@@ -504,11 +504,12 @@ impl Row<'_> {
         found.map(Distance::Seen)
     }
 
+    /// The blur, none where the cell is empty; the fault is noted where it is needed or no width.
     fn blur(
         &mut self,
         observable: Option<Observable>,
         definition: Option<Definition>,
-    ) -> Option<Option<Width>> {
+    ) -> Option<Width> {
         let felt = observable == Some(Observable::Radius)
             && definition.is_some_and(Definition::feels_blur);
         let cell = self.cell("blur_fwhm_arcsec").to_owned();
@@ -519,19 +520,18 @@ impl Row<'_> {
                     format!("{} to {} arcsec", WIDTHS_ARCSEC.0, WIDTHS_ARCSEC.1),
                     "a radius by this definition moves with the blur: give the width of the whole point-spread function, pixel included",
                 );
-                return None;
             }
-            return Some(None);
+            return None;
         }
         let range = if felt { WIDTHS_ARCSEC } else { (0.0, f64::MAX) };
         let fwhm_arcsec = self.number("blur_fwhm_arcsec", range, " arcsec")?;
         let decimals = cell.split_once('.').map_or(0, |it| it.1.len()) as i32;
         // Rectangular over half of the last printed digit.
         let sigma_arcsec = 0.5 * 10f64.powi(-decimals) / 3.0_f64.sqrt();
-        Some(Some(Width {
+        Some(Width {
             fwhm_arcsec,
             sigma_arcsec,
-        }))
+        })
     }
 
     /// Refuses what is not the Sun, which mostly is a wrong unit or a diameter.

@@ -1,4 +1,4 @@
-//! Source: `data/excess_slope_pairs.csv`, regression values of SciPy and of simulations (see its first
+//! Source: `data/excess_slope_pairs.csv`, regression values of `SciPy` and of simulations (see its first
 //! line); quantiles of Student's t from common tables.
 
 use super::consensus_means::half_digit;

@@ -223,15 +223,18 @@ fn quantity(out: &mut String, comparison: &Comparison, of: &QuantityComparison) 
         let published = &it.published;
         let stated = published.sigma_random.hypot(published.sigma_systematic);
         let mas = if unit == "arcsec" { 1000.0 } else { 1.0 };
+        // A published value keeps its digits.
+        let value = if it.kind == "result" {
+            format!("{:.digits$}", published.value)
+        } else {
+            published.value.to_string()
+        };
         let _ = writeln!(
             out,
             "  {:<width$}  {:<8} {:>26}  {:>24}  {:>12.2}",
             it.label,
             it.platform,
-            format!(
-                "{} +- {stated:.digits$} {}",
-                published.value, published.unit
-            ),
+            format!("{value} +- {stated:.digits$} {}", published.unit),
             format!(
                 "{:.digits$} +- {:.digits$} {unit}",
                 it.common.value, it.common.sigma

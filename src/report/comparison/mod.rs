@@ -114,7 +114,7 @@ fn content(out: &mut String, comparison: &Comparison, plate: Option<&Plate>) {
 
 const METHOD: [&str; 5] = [
     "Every value is carried to the same footing step by step; a step's uncertainty is its own, and the total of a value adds what steps share with their sign, so that it may be smaller than the steps suggest.",
-    "Values of one group share their systematic error fully; all values share the limb darkening, the thickness of the Sun's edge and the height of the limb by wavelength. Means, differences and degrees of equivalence are by generalised least squares with these covariances.",
+    "Two values of one group share the smaller of their systematic errors; all values share the limb darkening, the thickness of the Sun's edge and the height of the limb by wavelength. Means, differences and degrees of equivalence are by generalised least squares with these covariances.",
     "Dark uncertainty is the standard deviation, common to all values of a mean, that their stated uncertainties leave unexplained. What all values share cannot be seen in their scatter and is in the error of the mean.",
     "The limb's height by wavelength is not corrected: the full size of the shift expected from the opacity is carried as uncertainty.",
     "The strongest footing is the same extraction on both sides: images from space, reduced with [weather] none = true, go through the same fit and come here as a second result.",

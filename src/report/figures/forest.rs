@@ -27,7 +27,7 @@ pub(crate) fn plate(comparison: &Comparison) -> Option<Plate> {
         reading: "Thick lines are one standard uncertainty, thin ones two. Circles: ground; squares: \
                   balloon; diamonds: space; filled: results of this program. A grey ring is the same \
                   value by geometry alone, before the model of the limb. Lozenges are means, as wide as \
-                  their 95 percent interval; the band is that of the mean of all."
+                  their 95 percent interval, cut at the frame; the band is that of the mean of all."
             .to_owned(),
         table: String::new(),
     };
@@ -147,8 +147,10 @@ fn panel(canvas: &mut Canvas, of: &QuantityComparison, rows: &[Row], top_px: f64
     let (left, right) = (10.0, room.width_px - 10.0);
     let from = top_px + HEAD_PX;
     let bottom = from + PITCH_PX * rows.len() as f64;
+    // Means of two values have intervals that would leave no room for the values.
     let ends = rows
         .iter()
+        .filter(|it| !matches!(it.mark, Mark::Mean))
         .flat_map(|it| it.spans[1].into_iter().chain(it.geometric));
     let axis = Axis::linear(axis::range_of(ends, 0.04), left, right);
     let name = if of.quantity == "radius" {
@@ -180,7 +182,7 @@ fn mark(canvas: &mut Canvas, row: &Row, axis: &Axis, y: f64) {
         Mark::Balloon { .. } => "green",
         Mark::Space { .. } => "purple",
         Mark::Mean => {
-            let [low, high] = row.spans[0].map(|it| axis.px(it));
+            let [low, high] = row.spans[0].map(|it| axis.px_inside(it));
             let mut path = polyline([(low, y), (x, y - 6.0), (high, y), (x, y + 6.0)]);
             path.push('Z');
             canvas.path(&path, "ink-fill");
