@@ -15,6 +15,7 @@
 //! | stack | [`stack::Stack`] | kept frames | image, variance, weight |
 //! | shape | [`shape::fit`] | blocks of frames | [`shape::Fit`] |
 //! | budget | [`budget`] | the fit, the limb's model | [`shape::Contribution`] |
+//! | comparison | [`compare::against`] | results, published values | [`result::comparison::Comparison`] |
 //! | report | [`report::render`] | [`result::record::Record`] | HTML and SVG |
 //! | the whole | [`pipeline::reduce`] | [`session::Session`] | [`pipeline::Outcome`] |
 //!
@@ -42,6 +43,7 @@
 
 pub mod units;
 pub mod constants;
+pub mod consensus;
 
 pub mod sky;
 pub mod air;
@@ -60,7 +62,9 @@ pub mod seeing;
 pub mod select;
 pub mod stack;
 pub mod budget;
+pub mod footing;
 pub mod result;
+pub mod compare;
 pub mod report;
 
 pub mod pipeline;

@@ -8,6 +8,7 @@
 //! The page shows what was measured and no more: a missing value appears with its reason.
 
 mod axis;
+mod comparison;
 mod figures;
 mod html;
 mod keys;
@@ -26,6 +27,9 @@ mod timeline;
 
 use crate::result::record::{Record, Traces};
 
+pub use comparison::{
+    ComparisonSection, render_comparison, section_of_comparison, sentences_of_comparison,
+};
 pub use summary::summary_sentence;
 
 /// Why no report could be drawn.

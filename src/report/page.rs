@@ -49,19 +49,7 @@ pub(crate) fn document(
         record.site_name,
         day(record)
     );
-    let mut out = String::from("<!DOCTYPE html>\n<html lang=\"en\">\n<head>\n");
-    let _ = write!(
-        out,
-        "<meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; img-src data:; \
-         style-src 'unsafe-inline'; base-uri 'none'; form-action 'none'\">\n<meta \
-         charset=\"utf-8\">\n<meta name=\"viewport\" content=\"width=device-width, \
-         initial-scale=1\">\n<meta name=\"color-scheme\" content=\"light dark\">\n<meta \
-         name=\"referrer\" content=\"no-referrer\">\n<link rel=\"icon\" href=\"data:,\">\n\
-         <title>{}</title>\n<style>\n{}</style>\n</head>\n<body>\n<a class=\"skip\" \
-         href=\"#main\">Skip to the answer</a>\n",
-        escape(&title),
-        theme::page_sheet()
-    );
+    let mut out = head(&title);
     if let Some(preview) = preview {
         let _ = writeln!(
             out,
@@ -116,6 +104,22 @@ pub(crate) fn document(
         record.schema_version
     );
     out
+}
+
+/// Everything before the content of a page: no script, no outside file.
+pub(crate) fn head(title: &str) -> String {
+    format!(
+        "<!DOCTYPE html>\n<html lang=\"en\">\n<head>\n\
+         <meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; img-src data:; \
+         style-src 'unsafe-inline'; base-uri 'none'; form-action 'none'\">\n<meta \
+         charset=\"utf-8\">\n<meta name=\"viewport\" content=\"width=device-width, \
+         initial-scale=1\">\n<meta name=\"color-scheme\" content=\"light dark\">\n<meta \
+         name=\"referrer\" content=\"no-referrer\">\n<link rel=\"icon\" href=\"data:,\">\n\
+         <title>{}</title>\n<style>\n{}</style>\n</head>\n<body>\n<a class=\"skip\" \
+         href=\"#main\">Skip to the answer</a>\n",
+        escape(title),
+        theme::page_sheet()
+    )
 }
 
 /// The day of the first exposure.

@@ -27,7 +27,7 @@ mod filter_curve;
 mod guards;
 mod judge;
 mod keys;
-mod nearest;
+pub(crate) mod nearest;
 mod reader;
 mod resolved;
 mod schema;

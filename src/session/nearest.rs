@@ -5,7 +5,7 @@ use super::keys::{Form, Table};
 use super::tables::SESSION;
 
 /// The nearest of the names, if any is near enough to have been meant.
-pub(super) fn of<'a>(name: &str, names: impl Iterator<Item = &'a str>) -> Option<&'a str> {
+pub(crate) fn of<'a>(name: &str, names: impl Iterator<Item = &'a str>) -> Option<&'a str> {
     let name = name.to_lowercase();
     let allowed = (name.chars().count() / 3).max(1);
     names

@@ -22,7 +22,7 @@
 //! The Gregorian rule of leap years; MJD 51544 = 2000-01-01 (IAU).
 
 /// Days of a month.
-pub(super) fn days_in_month(year: u32, month: u32) -> u32 {
+pub(crate) fn days_in_month(year: u32, month: u32) -> u32 {
     match month {
         2 if year.is_multiple_of(4) && (!year.is_multiple_of(100) || year.is_multiple_of(400)) => {
             29
@@ -41,7 +41,7 @@ const ERA_DAYS: i64 = 146_097;
 const MARCH_ZERO_MJD: i64 = -678_881;
 
 /// MJD of a Gregorian date.
-pub(super) fn mjd_of(year: i64, month: i64, day: i64) -> f64 {
+pub(crate) fn mjd_of(year: i64, month: i64, day: i64) -> f64 {
     let march_year = if month > 2 { year } else { year - 1 };
     let (era, year_of_era) = (march_year.div_euclid(400), march_year.rem_euclid(400));
     let day_of_year = (153 * ((month + 9) % 12) + 2) / 5 + day - 1;

@@ -3,7 +3,7 @@
 //! Nothing here knows an image or the air: every direction is the true one, as if there were no
 //! refraction. The astronomy is that of the IAU's SOFA collection, through the crate `sofars`.
 
-mod calendar;
+pub(crate) mod calendar;
 mod orientation;
 mod place;
 mod rates;

@@ -45,6 +45,11 @@ pub(crate) enum Command {
         after_help = "Example: truelimb refraction --latitude-deg 30.94 --height-m 2240 --pressure-hpa 778 --temperature-c 9 --humidity 0.35 --wavelength-nm 550 --zenith-deg 30,45,60"
     )]
     Refraction(Refraction),
+    /// Results and published values on one footing: ground against space.
+    #[command(
+        after_help = "Example: truelimb compare result values.csv -o comparison\n\nStart a table of values with: truelimb compare --template > values.csv"
+    )]
+    Compare(Compare),
     /// Print the JSON Schema of the session file.
     Schema,
 }
@@ -106,6 +111,36 @@ pub(crate) struct Simulate {
     /// Seed of everything random.
     #[arg(long, default_value_t = 1)]
     pub(crate) seed: u64,
+}
+
+/// `truelimb compare`.
+#[derive(Args, Debug)]
+pub(crate) struct Compare {
+    /// Results (folders or their result.json), the first of them first, and tables of values (CSV).
+    #[arg(value_name = "RESULT|VALUES", required_unless_present = "template")]
+    pub(crate) inputs: Vec<PathBuf>,
+    /// Print an empty table of values with what each column holds.
+    #[arg(long, conflicts_with = "inputs")]
+    pub(crate) template: bool,
+    /// Which edge all values are carried to: model, inflection, half-intensity, or fourier:WINDOW in
+    /// arcsec.
+    #[arg(long, default_value = "model", value_name = "DEFINITION")]
+    pub(crate) to: String,
+    /// Wavelength all values are carried to; the first result's without it.
+    #[arg(long, value_name = "NM")]
+    pub(crate) to_wavelength_nm: Option<f64>,
+    /// Blur all values are carried to, full width at half maximum; for every definition but model.
+    #[arg(long, value_name = "ARCSEC")]
+    pub(crate) to_blur_arcsec: Option<f64>,
+    /// How far apart the epochs of a pair from ground and space may be.
+    #[arg(long, value_name = "DAYS", default_value_t = 1.0)]
+    pub(crate) window_days: f64,
+    /// Folder for comparison.json, comparison.html and figures; made when it is not there.
+    #[arg(short, long, value_name = "DIR")]
+    pub(crate) output: Option<PathBuf>,
+    /// Print JSON.
+    #[arg(long)]
+    pub(crate) json: bool,
 }
 
 /// `truelimb limb`.

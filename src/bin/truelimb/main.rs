@@ -2,6 +2,7 @@
 
 mod arguments;
 mod commands;
+mod compare;
 mod progress;
 mod refraction;
 mod seeing;
@@ -35,6 +36,7 @@ fn main() -> ExitCode {
         Command::Simulate(it) => commands::simulate(&it, quiet),
         Command::Limb(it) => commands::limb(&it),
         Command::Refraction(it) => refraction::refraction(&it, quiet),
+        Command::Compare(it) => compare::compare(&it),
         Command::Schema => commands::schema(),
     };
     match ended {

@@ -3,6 +3,7 @@
 mod answer;
 mod budget;
 mod correlation;
+pub(crate) mod forest;
 mod frames;
 mod harmonics;
 mod kept;
