@@ -15,6 +15,7 @@
 //! | stack | [`stack::Stack`] | kept frames | image, variance, weight |
 //! | shape | [`shape::fit`] | blocks of frames | [`shape::Fit`] |
 //! | budget | [`budget`] | the fit, the limb's model | [`shape::Contribution`] |
+//! | gravity | [`gravity::interior`] | the figure, a rotation law | [`gravity::Interior`] |
 //! | report | [`report::render`] | [`result::record::Record`] | HTML and SVG |
 //! | the whole | [`pipeline::reduce`] | [`session::Session`] | [`pipeline::Outcome`] |
 //!
@@ -60,6 +61,7 @@ pub mod seeing;
 pub mod select;
 pub mod stack;
 pub mod budget;
+pub mod gravity;
 pub mod result;
 pub mod report;
 

@@ -167,6 +167,14 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
                 perihelion: if separated { Quantity::measured(0.028, 0.055 , "arcsec/century") }
                     else { Quantity::missing("arcsec/century", "the oblateness was not separated") },
                 rotation_figure: Quantity::measured(7.84, 0.12, "mas"),
+                rotation_law: "middle".to_owned(),
+                excess: if separated { Quantity::measured(0.31, 0.62, "mas") }
+                    else { Quantity::missing("mas", "the oblateness was not separated") },
+                j2_beside_j4: Quantity::missing("1", "the next harmonic was not separated"),
+                j4: Quantity::missing("1", "the next harmonic was not separated"),
+                perihelion_by_relativity: Quantity::computed(42.98, "arcsec/century"),
+                by_law: Vec::new(),
+                note: None,
             },
             oblateness,
             radius,

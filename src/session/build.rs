@@ -6,7 +6,7 @@ use super::document::{Value, folder};
 use super::environment::Environment;
 use super::facts::{
     Calibration, Camera, Filter, Instrument, LimbSettings, Moment, Projection, Refractivity,
-    ScaleOf, Session, Site, Telescope, Time, Weather, WeatherSource,
+    RotationLaw, ScaleOf, Session, Site, Telescope, Time, Weather, WeatherSource,
 };
 use super::fault::{Fault, FaultKind, Finding};
 use super::filter_curve::FilterCurve;
@@ -303,6 +303,12 @@ pub(super) fn limb(reader: &mut Reader<'_>, root: &View) -> Option<LimbSettings>
         window_inside_arcsec: window_inside_arcsec?,
         window_outside_arcsec: window_outside_arcsec?,
     })
+}
+
+/// The law of the surface's rotation.
+pub(super) fn rotation(reader: &mut Reader<'_>, root: &View) -> Option<RotationLaw> {
+    let view = root.inner("gravity");
+    reader.choice(&view, "rotation", tables::ROTATIONS, &RotationLaw::ALL)
 }
 
 /// Readings beside the weather. The outer none means that a fault was noted.

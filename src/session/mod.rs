@@ -44,7 +44,7 @@ mod tests;
 pub use environment::Environment;
 pub use facts::{
     Calibration, Camera, Filter, Instrument, Kind, LimbSettings, Moment, Projection, Refractivity,
-    ScaleOf, Sequence, Session, Site, Telescope, Time, Weather, WeatherSource,
+    RotationLaw, ScaleOf, Sequence, Session, Site, Telescope, Time, Weather, WeatherSource,
 };
 pub use fault::{Fault, FaultKind, SessionError};
 pub use filter_curve::FilterCurve;
@@ -140,6 +140,7 @@ fn assembled(
     let refractivity = build::refractivity(&mut reader, &root);
     let time = build::time(&mut reader, &root);
     let limb = build::limb(&mut reader, &root);
+    let rotation = build::rotation(&mut reader, &root);
     let environment = build::environment(&mut reader, &root, &mut read);
     let mut common = sequences::Common::new(&root, calibration.as_ref());
     let sequences: Vec<Option<Sequence>> = outlines
@@ -178,6 +179,7 @@ fn assembled(
             refractivity: refractivity?,
             time: time?,
             limb: limb?,
+            rotation: rotation?,
             headers,
             environment: environment?,
             sequences: sequences.into_iter().collect::<Option<_>>()?,

@@ -66,6 +66,7 @@ pub fn resolved(session: &Session) -> Value {
             "window_inside_arcsec": limb.window_inside_arcsec,
             "window_outside_arcsec": limb.window_outside_arcsec,
         },
+        "gravity": { "rotation": session.rotation.name() },
         "headers": session.headers,
         "environment": session.environment.as_ref().map(|it| json!({
             "log": shown(&it.path, folder),

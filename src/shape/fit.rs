@@ -145,6 +145,12 @@ impl Fit {
         [AIR, AIR + 1].map(|i| (self.values[i], self.covariance[(i, i)].sqrt()))
     }
 
+    /// Correlation of the oblateness with `R c4`.
+    pub fn correlation_oblateness_p4(&self) -> f64 {
+        let own = self.covariance[(OBLATENESS, OBLATENESS)] * self.covariance[(P4, P4)];
+        self.covariance[(OBLATENESS, P4)] / own.sqrt()
+    }
+
     /// Largest correlation of the oblateness with the instrument's and with the air's terms.
     pub fn correlations(&self) -> (f64, f64) {
         let own = self.covariance[(OBLATENESS, OBLATENESS)].sqrt();

@@ -8,6 +8,7 @@ mod ciddor_1996;
 mod disk_transform;
 mod finite_fourier_edge_1975;
 mod fits_readers;
+mod gravity;
 mod limb_darkening;
 mod limb_displacement;
 mod limb_extraction;

@@ -67,6 +67,10 @@ pub(crate) struct Reduce {
     /// Leave the stack out.
     #[arg(long)]
     pub(crate) no_stack: bool,
+    /// Law of the surface's rotation with which the figure is compared, in place of the session's:
+    /// middle, snodgrass-ulrich-1990, snodgrass-1983, howard-harvey-1970 or uniform.
+    #[arg(long, value_name = "LAW")]
+    pub(crate) rotation: Option<String>,
     /// Print result.json on stdout.
     #[arg(long)]
     pub(crate) json: bool,

@@ -1,6 +1,7 @@
 //! The outcome of the stages put into the records of the result.
 
 mod shape;
+mod interior;
 mod seeing;
 mod turbulence;
 mod sequences;
