@@ -27,6 +27,7 @@ mod filter_curve;
 mod guards;
 mod judge;
 mod keys;
+mod limb_sheet;
 mod nearest;
 mod reader;
 mod resolved;
@@ -48,6 +49,7 @@ pub use facts::{
 };
 pub use fault::{Fault, FaultKind, SessionError};
 pub use filter_curve::FilterCurve;
+pub use limb_sheet::{LIMB_COLUMNS, LimbSheet, read_limb_sheet};
 pub use resolved::resolved;
 pub use schema::schema;
 pub use sounding::Sounding;
@@ -86,6 +88,19 @@ pub fn read_with_headers(
 /// As [`read`].
 pub fn read_station(path: &Path) -> Result<Session, SessionError> {
     assembled(path, &|_, _| None, false)
+}
+
+/// Reads and checks a session file whose frames may be gone, for a second fit of the limbs that were
+/// measured in them; headers are asked where frames are still there.
+///
+/// # Errors
+///
+/// As [`read`].
+pub fn read_without_frames(
+    path: &Path,
+    header: &dyn Fn(&Path, &str) -> Option<f64>,
+) -> Result<Session, SessionError> {
+    assembled(path, header, false)
 }
 
 fn assembled(

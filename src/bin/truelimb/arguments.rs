@@ -67,6 +67,10 @@ pub(crate) struct Reduce {
     /// Leave the stack out.
     #[arg(long)]
     pub(crate) no_stack: bool,
+    /// Fit the limbs of a run before again, from its limbs.fits and without the frames: for a
+    /// barometer, clock, camera angle or scale that turned out wrong.
+    #[arg(long, value_name = "LIMBS")]
+    pub(crate) limbs: Option<PathBuf>,
     /// Law of the surface's rotation with which the figure is compared, in place of the session's:
     /// middle, snodgrass-ulrich-1990, snodgrass-1983, howard-harvey-1970 or uniform.
     #[arg(long, value_name = "LAW")]

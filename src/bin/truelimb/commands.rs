@@ -66,12 +66,16 @@ pub(crate) fn reduce(it: &Reduce, quiet: bool) -> Result<Ending, Failure> {
         seed: it.seed,
         stack: !it.no_stack,
     };
-    let mut session = session::read_with_headers(&it.session, &header_number)?;
+    let mut session = match &it.limbs {
+        None => session::read_with_headers(&it.session, &header_number)?,
+        // The frames may be gone; what only their headers said must be in the session file.
+        Some(_) => session::read_without_frames(&it.session, &header_number)?,
+    };
     if let Some(name) = &it.rotation {
         session.rotation = rotation(name)?;
         session.assumed.retain(|it| it != "gravity.rotation");
     }
-    let outcome = reduced(&session, &it.output, &options, quiet)?;
+    let outcome = reduced(&session, it.limbs.as_deref(), &it.output, &options, quiet)?;
     if it.json {
         print(&json(&outcome.record)?);
     } else if !quiet {
@@ -93,17 +97,21 @@ fn ending(record: &Record) -> Ending {
 
 fn run(path: &Path, output: &Path, options: &Options, quiet: bool) -> Result<Outcome, Failure> {
     let session = session::read_with_headers(path, &header_number)?;
-    reduced(&session, output, options, quiet)
+    reduced(&session, None, output, options, quiet)
 }
 
 fn reduced(
     session: &Session,
+    limbs: Option<&Path>,
     output: &Path,
     options: &Options,
     quiet: bool,
 ) -> Result<Outcome, Failure> {
     let bar = Bar::new(quiet);
-    let outcome = pipeline::reduce(session, options, &bar);
+    let outcome = match limbs {
+        None => pipeline::reduce(session, options, &bar),
+        Some(limbs) => pipeline::refit(session, limbs, options, &bar),
+    };
     bar.finish();
     let outcome = outcome?;
     pipeline::products::write(&outcome, session, output)?;

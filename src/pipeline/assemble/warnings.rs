@@ -83,6 +83,13 @@ pub(super) fn records(p: &Parts<'_>) -> Vec<WarningRecord> {
             );
         }
     }
+    if p.measured.iter().any(|it| it.elsewhere) {
+        say(
+            "limbs-elsewhere",
+            "limbs of another program are in the fit: which edge it calls the limb, and how blur moves it, is not in the error of the radius"
+                .to_owned(),
+        );
+    }
     for (index, reason) in p.set_aside {
         say(
             "set-aside",
