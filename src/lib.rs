@@ -43,6 +43,7 @@
 
 pub mod units;
 pub mod constants;
+pub mod consensus;
 
 pub mod sky;
 pub mod air;

@@ -5,6 +5,9 @@
 
 mod band;
 mod ciddor_1996;
+mod consensus_guides;
+mod consensus_means;
+mod consensus_trend;
 mod disk_transform;
 mod finite_fourier_edge_1975;
 mod fits_readers;
