@@ -26,7 +26,7 @@ fn from_frames() -> &'static (Outcome, PathBuf) {
     ONCE.get_or_init(|| {
         let session = session::read(&folder().join("session.toml")).unwrap();
         let outcome = pipeline::reduce(&session, &NO_STACK, &Silent).unwrap();
-        let out = tempfile::tempdir().unwrap().keep();
+        let out = Path::new(env!("CARGO_TARGET_TMPDIR")).join("limb-tables");
         products::write(&outcome, &session, &out).unwrap();
         (outcome, out)
     })
@@ -201,6 +201,12 @@ fn what_only_frames_can_give_is_refused() {
         .unwrap_err()
         .to_string();
     assert!(text.contains("another session"), "{text}");
+    let (_folder, session) =
+        without_frames(|it| it.replacen("kind = \"burst\"", "kind = \"limbs\"", 1));
+    let text = pipeline::refit(&session, &limbs, &NO_STACK, &Silent)
+        .unwrap_err()
+        .to_string();
+    assert!(text.contains("need no frames"), "{text}");
     let stack = folder().join("flat.fits");
     let text = pipeline::refit(&session, &stack, &NO_STACK, &Silent)
         .unwrap_err()

@@ -99,6 +99,14 @@ pub fn refit(
     progress: &dyn Progress,
 ) -> Result<Outcome, Error> {
     let saved = Saved::read(limbs)?;
+    if session.sequences.iter().any(|it| it.kind == Kind::Limbs) {
+        return Err(Error::File {
+            path: limbs.to_owned(),
+            what: "cannot stand for this session",
+            reason: "it has sequences of kind \"limbs\", which need no frames: reduce it as it is"
+                .to_owned(),
+        });
+    }
     if let Some(index) = saved.beyond(session.sequences.len()) {
         return Err(Error::File {
             path: limbs.to_owned(),

@@ -171,8 +171,12 @@ fn limbs(outcome: &Outcome, reference: Utc) -> Vec<Column> {
         Column::new("BLUR", Values::F32(blur))
             .unit("arcsec")
             .describe("lambda / r0 from the width of the limb"),
-        Column::new("BLURJ", Values::F64(j)).describe("BLUR to the power 5/3 as fitted"),
-        Column::new("BLURJSIG", Values::F64(j_sigma)).describe("standard uncertainty of BLURJ"),
+        Column::new("BLURJ", Values::F64(j))
+            .unit("arcsec(5/3)")
+            .describe("BLUR to the power 5/3 as fitted"),
+        Column::new("BLURJSIG", Values::F64(j_sigma))
+            .unit("arcsec(5/3)")
+            .describe("standard uncertainty of BLURJ"),
         Column::new("GAIN", Values::F64(gain))
             .unit("adu")
             .describe("brightness of disk centre by this sector"),
