@@ -16,6 +16,7 @@
 //! | shape | [`shape::fit`] | blocks of frames | [`shape::Fit`] |
 //! | budget | [`budget`] | the fit, the limb's model | [`shape::Contribution`] |
 //! | gravity | [`gravity::interior`] | the figure, a rotation law | [`gravity::Interior`] |
+//! | season | [`season::combine`] | records of many sessions | [`result::combined::Combined`] |
 //! | report | [`report::render`] | [`result::record::Record`] | HTML and SVG |
 //! | the whole | [`pipeline::reduce`] | [`session::Session`] | [`pipeline::Outcome`] |
 //!
@@ -64,6 +65,7 @@ pub mod stack;
 pub mod budget;
 pub mod gravity;
 pub mod result;
+pub mod season;
 pub mod report;
 
 pub mod pipeline;

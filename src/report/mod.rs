@@ -8,6 +8,7 @@
 //! The page shows what was measured and no more: a missing value appears with its reason.
 
 mod axis;
+mod combined;
 mod figures;
 mod html;
 mod keys;
@@ -26,6 +27,7 @@ mod timeline;
 
 use crate::result::record::{Record, Traces};
 
+pub use combined::render_combined;
 pub use summary::summary_sentence;
 
 /// Why no report could be drawn.

@@ -1,3 +1,4 @@
-//! The records of a result.
+//! What the program found, in the form in which it is written to files.
 
+pub mod combined;
 pub mod record;

@@ -29,6 +29,11 @@ pub(crate) enum Command {
         after_help = "Example: truelimb reduce session.toml -o result\n\nExit status 3: done, but the oblateness cannot be told from the instrument; the report says what to observe instead."
     )]
     Reduce(Reduce),
+    /// Combine the results of several sessions: one value, a series, what they share kept shared.
+    #[command(
+        after_help = "Example: truelimb combine season/*/ -o combined --common \"plate scale\"\n\nExit status 3: done, but fewer than two sessions separate the oblateness from the instrument."
+    )]
+    Combine(crate::combine::Combine),
     /// Make a session with known truth.
     #[command(after_help = "Example: truelimb simulate -o fake --seed 7")]
     Simulate(Simulate),

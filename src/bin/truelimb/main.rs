@@ -1,6 +1,7 @@
 //! The command: reads arguments, calls the library, prints results on stdout and all else on stderr.
 
 mod arguments;
+mod combine;
 mod commands;
 mod progress;
 mod refraction;
@@ -30,6 +31,7 @@ fn main() -> ExitCode {
     let ended = match arguments.command {
         Command::Demo(it) => commands::demo(&it, quiet),
         Command::Reduce(it) => commands::reduce(&it, quiet),
+        Command::Combine(it) => combine::combine(&it, quiet),
         Command::Simulate(it) => commands::simulate(&it, quiet),
         Command::Limb(it) => commands::limb(&it),
         Command::Refraction(it) => refraction::refraction(&it, quiet),
