@@ -18,6 +18,7 @@
 //! | gravity | [`gravity::interior`] | the figure, a rotation law | [`gravity::Interior`] |
 //! | season | [`season::combine`] | records of many sessions | [`result::combined::Combined`] |
 //! | report | [`report::render`] | [`result::record::Record`] | HTML and SVG |
+//! | recovery | [`recover::recover`] | a session, known shapes | [`result::recovery::Recovery`] |
 //! | the whole | [`pipeline::reduce`] | [`session::Session`] | [`pipeline::Outcome`] |
 //!
 //! # Conventions
@@ -70,6 +71,7 @@ pub mod report;
 
 pub mod pipeline;
 pub mod synth;
+pub mod recover;
 
 pub use pipeline::Error;
 

@@ -18,12 +18,13 @@ use crate::session::{Kind, Session};
 use crate::stack::Stack;
 use correct::CorrectedSequence;
 use limb_table::{Given, Saved};
-use measure::{MeasuredSequence, is_followed};
+use measure::MeasuredSequence;
 use std::borrow::Cow;
 use std::path::Path;
 use std::sync::Arc;
 
 pub use error::Error;
+pub use measure::{is_followed, times_of};
 
 /// Told how far the work is. Silent by default.
 pub trait Progress: Sync {

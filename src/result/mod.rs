@@ -2,3 +2,4 @@
 
 pub mod combined;
 pub mod record;
+pub mod recovery;

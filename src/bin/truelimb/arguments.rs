@@ -34,6 +34,11 @@ pub(crate) enum Command {
         after_help = "Example: truelimb combine season/*/ -o combined --common \"plate scale\"\n\nExit status 3: done, but fewer than two sessions separate the oblateness from the instrument."
     )]
     Combine(crate::combine::Combine),
+    /// Inject known shapes into sessions like this one, reduce each, and say how well they come back.
+    #[command(
+        after_help = "Example: truelimb recover session.toml --injected 0,8 --n 40 --result result"
+    )]
+    Recover(crate::recover::Recover),
     /// Make a session with known truth.
     #[command(after_help = "Example: truelimb simulate -o fake --seed 7")]
     Simulate(Simulate),

@@ -24,6 +24,9 @@ pub(crate) enum Failure {
     /// A session could not be made.
     #[error("simulation: {0}")]
     Synth(SynthError),
+    /// Sessions like this one could not be made.
+    #[error(transparent)]
+    Recover(Box<truelimb::recover::RecoverError>),
 }
 
 impl<E: Into<Error>> From<E> for Failure {
@@ -133,7 +136,7 @@ fn rotation(name: &str) -> Result<RotationLaw, Failure> {
 }
 
 /// A number from a frame's header, for a fact that the session leaves out.
-fn header_number(frame: &Path, keyword: &str) -> Option<f64> {
+pub(crate) fn header_number(frame: &Path, keyword: &str) -> Option<f64> {
     truelimb::frames::ImageFile::open(frame)
         .ok()?
         .key_f64(keyword)

@@ -4,6 +4,7 @@ mod arguments;
 mod combine;
 mod commands;
 mod progress;
+mod recover;
 mod refraction;
 
 use arguments::{Arguments, Command};
@@ -32,6 +33,7 @@ fn main() -> ExitCode {
         Command::Demo(it) => commands::demo(&it, quiet),
         Command::Reduce(it) => commands::reduce(&it, quiet),
         Command::Combine(it) => combine::combine(&it, quiet),
+        Command::Recover(it) => recover::recover(&it, quiet),
         Command::Simulate(it) => commands::simulate(&it, quiet),
         Command::Limb(it) => commands::limb(&it),
         Command::Refraction(it) => refraction::refraction(&it, quiet),
@@ -52,6 +54,10 @@ fn status(error: &commands::Failure) -> u8 {
     match error {
         commands::Failure::Usage(_) => 2,
         commands::Failure::Synth(_) => 1,
+        commands::Failure::Recover(it) => match it.as_ref() {
+            truelimb::recover::RecoverError::Folder { .. } => 1,
+            _ => 2,
+        },
         commands::Failure::Run(it) => match it.as_ref() {
             Error::File { .. } | Error::Record { .. } | Error::Report(_) => 1,
             _ => 2,

@@ -238,6 +238,21 @@ pub(in crate::pipeline) fn measure(
     })
 }
 
+/// The frames of a sequence, and of each the mid-exposure, the clock's offset taken off, and the exposure
+/// in seconds where the header tells it.
+///
+/// # Errors
+///
+/// When the files or their times cannot be read.
+pub fn times_of(
+    session: &Session,
+    index: usize,
+) -> Result<(frames::Sequence, Vec<(Utc, Option<f64>)>), Error> {
+    let list = frames::list(&session.sequences[index].files)?;
+    let times = times(&list, session)?;
+    Ok((list, times))
+}
+
 /// Whether a sequence is of whole disks that are followed.
 pub fn is_followed(kind: Kind) -> bool {
     matches!(kind, Kind::Burst | Kind::Roll)
