@@ -182,7 +182,7 @@ fn stages(
     let seeing = solve::seeing(session, &measured, &limbs);
     let selected = solve::select(&measured, &limbs)?;
     let model = limb_model::lines(session, &measured)?;
-    let known = solve::known(session, &measured);
+    let known = solve::known(session, &measured)?;
     let shape = solve::shape(&selected, &known, &model)?;
     let has_pixels = measured.iter().all(|it| !it.from_table);
     let stacks = if options.stack && has_pixels {

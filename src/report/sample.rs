@@ -128,6 +128,7 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
                 else { ShapeQuantity::not_separated("mas", REASON) },
             null_tests: null_tests(scale, separated),
             instrument: instrument(scale, separated),
+            drivers: Vec::new(),
             air: AirRecord {
                 scale: Quantity::measured(1.0021, 0.0105, "1"),
                 vertical_residual: if separated { Quantity::measured(3.4, 6.1, "mas") }

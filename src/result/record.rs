@@ -151,6 +151,19 @@ pub struct AirRecord {
     pub vertical_residual: Quantity,
 }
 
+/// How the distortion goes with a reading: mas for one unit of it, on the detector.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct DriverRecord {
+    /// Name of the reading.
+    pub reading: String,
+    /// Harmonic number.
+    pub m: usize,
+    /// Slope of the coefficient of `cos m theta`.
+    pub cos: Quantity,
+    /// Slope of the coefficient of `sin m theta`.
+    pub sin: Quantity,
+}
+
 /// How well the parts were told apart.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 pub struct Separation {
@@ -290,6 +303,9 @@ pub struct ShapeRecord {
     pub null_tests: Vec<NullTest>,
     /// Distortion fixed to the detector.
     pub instrument: Vec<DistortionRecord>,
+    /// How it goes with the readings of [environment], or drifts.
+    #[serde(default)]
+    pub drivers: Vec<DriverRecord>,
     /// The air's terms.
     pub air: AirRecord,
     /// How well Sun, instrument and air were told apart.

@@ -140,6 +140,7 @@ pub(super) fn instrument(reader: &mut Reader<'_>, root: &View) -> Option<Instrum
     let view = root.inner("instrument");
     Some(Instrument {
         distortion_sigma_mas: reader.open_number(&view, "distortion_sigma_mas")?,
+        drift_sigma_mas_per_hour: reader.open_number(&view, "drift_sigma_mas_per_hour")?,
     })
 }
 

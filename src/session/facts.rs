@@ -152,6 +152,8 @@ pub struct Camera {
 pub struct Instrument {
     /// Free of limb distortion of m = 2, 3, 4 to this, each.
     pub distortion_sigma_mas: Option<f64>,
+    /// Drift of each coefficient of the distortion, linear in time, about zero, where it is allowed for.
+    pub drift_sigma_mas_per_hour: Option<f64>,
 }
 
 /// Dark and flat frames.

@@ -36,7 +36,10 @@ pub fn resolved(session: &Session) -> Value {
         })),
         "filter": filter(&session.filter, folder),
         "camera": frames.then(|| camera(&session.camera, folder)),
-        "instrument": { "distortion_sigma_mas": session.instrument.distortion_sigma_mas },
+        "instrument": {
+            "distortion_sigma_mas": session.instrument.distortion_sigma_mas,
+            "drift_sigma_mas_per_hour": session.instrument.drift_sigma_mas_per_hour,
+        },
         "calibration": calibration(&session.calibration, folder),
         "weather": weather(&session.weather, folder),
         "refractivity": {

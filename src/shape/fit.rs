@@ -1,6 +1,7 @@
 //! Generalised least squares with prior knowledge, and where the error comes from.
 
 use super::design::{self, COMPONENTS, Component, about, sun_columns};
+use super::driver::{Driver, DriverSlope};
 use super::{Block, Observation, REFERENCE_RADIUS_MAS, Separability, ShapeError};
 use nalgebra::{DMatrix, DVector};
 
@@ -38,6 +39,8 @@ pub struct Known {
     pub tilt_tau_s: f64,
     /// Standard uncertainty of each instrument coefficient about zero, mas; none: free.
     pub distortion_sigma_mas: Option<f64>,
+    /// Readings with which the distortion goes.
+    pub drivers: Vec<Driver>,
 }
 
 /// Prior widths for Sun terms that the observation cannot separate: they only keep the radius honest.
@@ -92,6 +95,8 @@ pub struct Fit {
     pub degrees: f64,
     /// Whether the distortion was free.
     pub free_instrument: bool,
+    /// Slopes against readings.
+    pub slopes: Vec<DriverSlope>,
 }
 
 /// Index of the radius among the terms.
@@ -163,7 +168,18 @@ impl Fit {
                 .filter(|it| it.is_finite())
                 .fold(0.0, |a: f64, b| if b > a { b } else { a })
         };
-        (largest(INSTRUMENT..AIR), largest(AIR..self.values.len()))
+        // A driver's terms belong to the instrument.
+        let (mut instrument, mut air) = (largest(INSTRUMENT..AIR), 0.0);
+        for i in AIR..self.values.len() {
+            let it = largest(i..i + 1);
+            let to = if self.terms[i].starts_with(DRIVER) {
+                &mut instrument
+            } else {
+                &mut air
+            };
+            *to = if it > *to { it } else { *to };
+        }
+        (instrument, air)
     }
 }
 
@@ -321,6 +337,18 @@ fn unknowns(blocks: &[Block], known: &Known, separability: &Separability) -> Vec
         plumb,
         design::tilt_across,
     ));
+    for (k, driver) in known.drivers.iter().enumerate() {
+        for (m, part) in DRIVEN {
+            let column = driver.clone();
+            let name = format!("{DRIVER}{k} m={m} {}", ["cos", "sin"][part]);
+            out.push(Unknown::new(
+                &name,
+                "mas/unit",
+                Some(driver.sigma_mas),
+                move |o| column.column(o, m, part),
+            ));
+        }
+    }
     let mut sequences: Vec<usize> = blocks.iter().map(|it| it.sequence).collect();
     sequences.dedup();
     for s in sequences {
@@ -336,6 +364,39 @@ fn unknowns(blocks: &[Block], known: &Known, separability: &Separability) -> Vec
             Some(known.tilt_sigma_arcmin),
             move |o| only(o, s, design::tilt_across(o)),
         ));
+    }
+    out
+}
+
+/// Opens the names of the unknowns of a driver; its number follows.
+const DRIVER: &str = "driver ";
+
+/// Harmonics and parts that a driver moves.
+const DRIVEN: [(usize, usize); 6] = [(2, 0), (2, 1), (3, 0), (3, 1), (4, 0), (4, 1)];
+
+/// The slopes among the fitted unknowns.
+fn slopes(
+    known: &Known,
+    unknowns: &[Unknown],
+    values: &DVector<f64>,
+    covariance: &DMatrix<f64>,
+) -> Vec<DriverSlope> {
+    let Some(first) = unknowns.iter().position(|it| it.name.starts_with(DRIVER)) else {
+        return Vec::new();
+    };
+    let of = |i: usize| (values[i], covariance[(i, i)].sqrt());
+    let mut out = Vec::new();
+    for (k, driver) in known.drivers.iter().enumerate() {
+        for m in 2..=4 {
+            let i = first + 6 * k + 2 * (m - 2);
+            out.push(DriverSlope {
+                name: driver.name.clone(),
+                unit: driver.unit,
+                m,
+                cos_mas: of(i),
+                sin_mas: of(i + 1),
+            });
+        }
     }
     out
 }
@@ -405,7 +466,9 @@ fn solve(
     }
     let influence = &covariance * &information;
     let fitted: f64 = (0..n)
-        .filter(|&i| i != RADIUS && unknowns[i].name != "plate scale")
+        .filter(|&i| {
+            i != RADIUS && unknowns[i].name != "plate scale" && !driven_third(&unknowns[i].name)
+        })
         .map(|i| influence[(i, i)])
         .sum();
     // The m = 3 terms take their own components, which are not counted above.
@@ -421,6 +484,7 @@ fn solve(
         terms: unknowns.iter().map(|it| it.name.clone()).collect(),
         units: unknowns.iter().map(|it| it.unit).collect(),
         contributions: contributions(&covariance, &information, &prior, known, unknowns),
+        slopes: slopes(known, unknowns, &values, &covariance),
         values,
         covariance,
         chi2,
@@ -428,6 +492,11 @@ fn solve(
         degrees,
         free_instrument: known.distortion_sigma_mas.is_none(),
     })
+}
+
+/// Whether an unknown is a driver's of m = 3, whose components are not in chi square.
+fn driven_third(name: &str) -> bool {
+    name.starts_with(DRIVER) && name.contains("m=3")
 }
 
 /// Precision of what is known before: independent terms, and the layers' tilt as a first-order
@@ -582,6 +651,16 @@ fn contributions(
             false,
             "instrument",
             "instrument.distortion_sigma_mas",
+        ));
+    }
+    for (k, driver) in known.drivers.iter().enumerate() {
+        let own = format!("{DRIVER}{k} ");
+        out.push(line(
+            driver.term,
+            group(&|it| it.starts_with(&own)),
+            false,
+            "session",
+            &driver.how,
         ));
     }
     if unknowns[OBLATENESS].prior.is_some() || unknowns[P4].prior.is_some() {

@@ -36,11 +36,13 @@
 //! (JCGM 100:2008) for the budget. Legendre coefficients: any table.
 
 mod design;
+mod driver;
 mod fit;
 mod noise;
 mod separation;
 
 pub use design::{COMPONENTS, Component, sun_columns};
+pub use driver::{Driver, DriverSlope};
 pub use fit::{Contribution, Fit, Known, RefractivityInput, SineTerms, fit, sine_terms};
 pub use noise::{Block, blocks};
 pub use separation::{Separability, judge};

@@ -5,10 +5,10 @@ use super::{Parts, interior, lines, quantity};
 use crate::budget;
 use crate::pipeline::definitions;
 use crate::result::record::{
-    AirRecord, ByStack, Covariance, DistortionRecord, NullTest, Quantity, Separation,
+    AirRecord, ByStack, Covariance, DistortionRecord, DriverRecord, NullTest, Quantity, Separation,
     ShapeQuantity, ShapeRecord,
 };
-use crate::shape::Fit;
+use crate::shape::{DriverSlope, Fit};
 
 /// The record of the shape.
 pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
@@ -20,6 +20,7 @@ pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
     ShapeRecord {
         null_tests: null_tests(p),
         instrument: (2..=4).map(|m| distortion(p, m)).collect(),
+        drivers: fit.slopes.iter().map(driver).collect(),
         air: AirRecord {
             scale: if p.known.refractivity.is_empty() {
                 Quantity::missing("1", "above the air")
@@ -175,6 +176,21 @@ fn distortion(p: &Parts<'_>, m: usize) -> DistortionRecord {
         ),
         sigma_mas: Some(sigma / distance),
         reason: None,
+    }
+}
+
+/// How one harmonic of the distortion goes with a reading.
+fn driver(it: &DriverSlope) -> DriverRecord {
+    let unit = if it.unit.is_empty() {
+        "mas/unit".to_owned()
+    } else {
+        format!("mas/{}", it.unit)
+    };
+    DriverRecord {
+        reading: it.name.clone(),
+        m: it.m,
+        cos: Quantity::measured(it.cos_mas.0, it.cos_mas.1, &unit),
+        sin: Quantity::measured(it.sin_mas.0, it.sin_mas.1, &unit),
     }
 }
 

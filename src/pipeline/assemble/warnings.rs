@@ -83,6 +83,16 @@ pub(super) fn records(p: &Parts<'_>) -> Vec<WarningRecord> {
             );
         }
     }
+    if let Some(log) = &p.session.environment {
+        for name in &log.columns {
+            if !p.known.drivers.iter().any(|it| it.name == *name) {
+                say(
+                    "environment-constant",
+                    format!("the reading {name} is the same in all frames: nothing can go with it"),
+                );
+            }
+        }
+    }
     if p.measured.iter().any(|it| it.elsewhere) {
         say(
             "limbs-elsewhere",

@@ -2,6 +2,7 @@
 
 mod seeing;
 mod select;
+mod drivers;
 mod known;
 mod shape;
 

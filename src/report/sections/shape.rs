@@ -36,6 +36,29 @@ pub(super) fn parts(out: &mut String, record: &Record) {
     if !instrument.is_empty() {
         out.push_str(&instrument.html());
     }
+    let mut drivers = Table::new(
+        "How the distortion goes with readings, for one unit of each",
+        &[
+            Column::Text("Reading"),
+            Column::Number("m"),
+            Column::Number("cos"),
+            Column::Number("sin"),
+            Column::Text("Unit"),
+        ],
+    );
+    for it in &shape.drivers {
+        let [cos, sin] = [&it.cos, &it.sin].map(|it| cells("", it)[1].clone());
+        drivers.row([
+            it.reading.clone(),
+            it.m.to_string(),
+            cos,
+            sin,
+            it.cos.unit.clone(),
+        ]);
+    }
+    if !drivers.is_empty() {
+        out.push_str(&drivers.html());
+    }
     let mut air = Table::new(
         "The air’s terms, and how far the Sun leans on others",
         &QUANTITY,
