@@ -2,6 +2,7 @@
 //!
 //! One small session is reduced; its record is the form into which the numbers of each check are put.
 
+use std::fmt::Write as _;
 use std::sync::OnceLock;
 use truelimb::pipeline::{self, Options, Silent};
 use truelimb::result::record::{BudgetLine, Record, Status};
@@ -244,7 +245,7 @@ fn a_shared_offset_is_no_part_of_a_slope_and_a_covariate_is_found() {
     let mut text = "epoch,activity\n".to_owned();
     for k in 0..400 {
         let year = 2019.0 + f64::from(k) * 0.03;
-        text += &format!("{year},{}\n", index(year));
+        writeln!(text, "{year},{}", index(year)).unwrap();
     }
     let covariate = Covariate::read(&text).unwrap();
     let records: Vec<Record> = (0..9)

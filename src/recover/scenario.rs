@@ -123,7 +123,10 @@ pub fn scenario(
             ));
         }
         if list.width != list.height {
-            notes.push("the detector is made square, of the longer side".to_owned());
+            let note = "the detector is made square, of the longer side".to_owned();
+            if !notes.contains(&note) {
+                notes.push(note);
+            }
         }
         size_px = size_px.max(list.width).max(list.height);
         if light.is_none() {
@@ -155,21 +158,20 @@ pub fn scenario(
         notes.push("a mirrored detector is made as one that shows the sky".to_owned());
     }
     let weather = weather(session, start, end)?;
-    let (layers, shape) = match result {
-        Some(it) => (
+    let (layers, radius_arcsec) = if let Some(it) = result {
+        (
             layers(session, it, &mut notes),
             it.shape.radius.value.unwrap_or(RADIUS_ARCSEC),
-        ),
-        None => {
-            notes.push(format!(
+        )
+    } else {
+        notes.push(format!(
                 "no result was given: r0 {R0_M} m in {} layers, winds of {WIND_M_S} m/s, distortions drawn with {DISTORTION_MAS} mas; with --result they are those of the session",
                 LAYERS.len()
             ));
-            (
-                layers_of(session, R0_M, &LAYERS, OUTER_SCALE_M, WIND_M_S),
-                RADIUS_ARCSEC,
-            )
-        }
+        (
+            layers_of(session, R0_M, &LAYERS, OUTER_SCALE_M, WIND_M_S),
+            RADIUS_ARCSEC,
+        )
     };
     let distortion = result.map_or(Vec::new(), |it| {
         it.shape
@@ -223,7 +225,7 @@ pub fn scenario(
             height_m: site.height_m,
         },
         shape: Shape {
-            radius_arcsec: shape,
+            radius_arcsec,
             oblateness_mas: 0.0,
             p4_mas: gravity::figure(session.rotation).c4 * gravity::nominal_radius_mas(),
         },

@@ -249,9 +249,10 @@ fn fill(
         read.push(table.needed(it)?);
     }
     let rows: Vec<usize> = (0..table.rows()).collect();
-    for run in rows.chunk_by(|&a, &b| read[0][a] == read[0][b] && read[1][a] == read[1][b]) {
+    let frame_of = |row: usize| (read[0][row] as usize, read[1][row] as usize);
+    for run in rows.chunk_by(|&a, &b| frame_of(a) == frame_of(b)) {
         let at = run[0];
-        let (index, frame) = (read[0][at] as usize, read[1][at] as usize);
+        let (index, frame) = frame_of(at);
         let Some(it) = sequences.get_mut(&index) else {
             return Err(damaged(format!("SEQUENCES has no row of sequence {index}")));
         };

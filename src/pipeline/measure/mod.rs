@@ -238,16 +238,16 @@ pub(in crate::pipeline) fn measure(
     })
 }
 
+/// Mid-exposure, and the exposure in seconds where it is known.
+pub type Timed = (Utc, Option<f64>);
+
 /// The frames of a sequence, and of each the mid-exposure, the clock's offset taken off, and the exposure
 /// in seconds where the header tells it.
 ///
 /// # Errors
 ///
 /// When the files or their times cannot be read.
-pub fn times_of(
-    session: &Session,
-    index: usize,
-) -> Result<(frames::Sequence, Vec<(Utc, Option<f64>)>), Error> {
+pub fn times_of(session: &Session, index: usize) -> Result<(frames::Sequence, Vec<Timed>), Error> {
     let list = frames::list(&session.sequences[index].files)?;
     let times = times(&list, session)?;
     Ok((list, times))

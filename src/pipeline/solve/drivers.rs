@@ -80,7 +80,9 @@ fn about_mean(mut readings: Vec<(f64, f64)>) -> (Vec<(f64, f64)>, f64) {
     readings.sort_by(|a, b| a.0.total_cmp(&b.0));
     let count = readings.len() as f64;
     let mean = readings.iter().map(|it| it.1).sum::<f64>() / count;
-    readings.iter_mut().for_each(|it| it.1 -= mean);
+    for it in &mut readings {
+        it.1 -= mean;
+    }
     let variance = readings.iter().map(|it| it.1 * it.1).sum::<f64>() / count;
     (readings, variance.sqrt())
 }
