@@ -16,7 +16,10 @@
 //! | shape | [`shape::fit`] | blocks of frames | [`shape::Fit`] |
 //! | budget | [`budget`] | the fit, the limb's model | [`shape::Contribution`] |
 //! | comparison | [`compare::against`] | results, published values | [`result::comparison::Comparison`] |
+//! | gravity | [`gravity::interior`] | the figure, a rotation law | [`gravity::Interior`] |
+//! | season | [`season::combine`] | records of many sessions | [`result::combined::Combined`] |
 //! | report | [`report::render`] | [`result::record::Record`] | HTML and SVG |
+//! | recovery | [`recover::recover`] | a session, known shapes | [`result::recovery::Recovery`] |
 //! | the whole | [`pipeline::reduce`] | [`session::Session`] | [`pipeline::Outcome`] |
 //!
 //! # Conventions
@@ -63,12 +66,15 @@ pub mod select;
 pub mod stack;
 pub mod budget;
 pub mod footing;
+pub mod gravity;
 pub mod result;
 pub mod compare;
+pub mod season;
 pub mod report;
 
 pub mod pipeline;
 pub mod synth;
+pub mod recover;
 
 pub use pipeline::Error;
 

@@ -217,7 +217,7 @@ fn the_library_never_looks_at_a_clock() {
 }
 
 /// Folders whose files are physics.
-const PHYSICS: [&str; 12] = [
+const PHYSICS: [&str; 13] = [
     "air",
     "sky",
     "disk",
@@ -229,6 +229,7 @@ const PHYSICS: [&str; 12] = [
     "select",
     "stack",
     "budget",
+    "gravity",
     "limb",
 ];
 

@@ -26,12 +26,21 @@ pub fn sha256(path: &Path) -> Result<String, FitsError> {
             count => hash.update(&buffer[..count]),
         }
     }
+    Ok(hexadecimal(hash))
+}
+
+/// The SHA-256 of a text, in lower-case hexadecimal.
+pub fn sha256_of_text(text: &str) -> String {
+    hexadecimal(Sha256::new_with_prefix(text))
+}
+
+fn hexadecimal(hash: Sha256) -> String {
     let mut text = String::with_capacity(64);
     for byte in hash.finalize() {
         text.push(char::from(DIGITS[usize::from(byte >> 4)]));
         text.push(char::from(DIGITS[usize::from(byte & 15)]));
     }
-    Ok(text)
+    text
 }
 
 #[cfg(test)]

@@ -7,6 +7,7 @@
 //! | `image`, `keywords` | one image or cube, read plane by plane, and its header |
 //! | `time` | when each plane was exposed |
 //! | `sequence` | many files as one list of frames |
+//! | `table` | a binary table, column by column |
 //! | `write`, `card`, `column` | FITS files, whole or not at all |
 //! | `ecsv` | small tables as text |
 //! | `raw` | the one file that calls the FITS library |
@@ -30,6 +31,7 @@ mod raw;
 mod sequence;
 mod source;
 mod survey;
+mod table;
 mod tiles;
 #[cfg(test)]
 mod tests;
@@ -38,10 +40,11 @@ mod write;
 
 pub use card::{Card, Value};
 pub use column::{Column, Values};
-pub use digest::sha256;
+pub use digest::{sha256, sha256_of_text};
 pub use ecsv::{ecsv_text, write_ecsv};
 pub use error::FitsError;
 pub use image::ImageFile;
 pub use sequence::{FrameRef, Reader, Sequence, list};
+pub use table::TableFile;
 pub use time::{FrameTime, HeaderMap, frame_times};
 pub use write::{CubeShape, FitsWriter, write_whole};

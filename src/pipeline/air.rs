@@ -2,6 +2,7 @@
 
 use super::assemble::seeing::{coherence_time, floors, record};
 use super::correct::{self, CorrectedSequence};
+use super::limb_table::Given;
 use super::measure::{MeasuredSequence, kind_word};
 use super::solve::{SeeingResult, SequenceAir, frame_r0_m, seeing, zenith_factor};
 use super::{Error, Progress, measure_all, products};
@@ -27,7 +28,8 @@ pub struct Air {
 ///
 /// As [`super::reduce`], but for the shape.
 pub fn measure_air(session: &Session, progress: &dyn Progress) -> Result<Air, Error> {
-    let (measured, set_aside) = measure_all(session, progress)?;
+    let given: Vec<Option<Given>> = session.sequences.iter().map(|_| None).collect();
+    let (measured, set_aside) = measure_all(session, &given, progress)?;
     let limbs: Vec<CorrectedSequence> = measured.iter().map(correct::correct).collect();
     let found = seeing(session, &measured, &limbs);
     let first = measured[0].frames[0].utc;

@@ -32,6 +32,14 @@ pub(super) struct LimbModel {
 pub(super) fn lines(session: &Session, measured: &[MeasuredSequence]) -> Result<LimbModel, Error> {
     let first = &measured[0];
     let setup = &first.setup;
+    if measured.iter().any(|it| it.elsewhere) {
+        // Another program's limb answers to another model, which is not known here.
+        return Ok(LimbModel {
+            lines: Vec::new(),
+            radius_bias_mas: 0.0,
+            blur: mean_blur(measured),
+        });
+    }
     let (model, slope) = predicted(setup, &first.middle);
     let blur = mean_blur(measured);
     let extraction = Extraction {

@@ -7,6 +7,7 @@ mod correct;
 mod definitions;
 mod error;
 mod limb_model;
+mod limb_table;
 pub mod measure;
 mod frame_table;
 pub mod products;
@@ -15,13 +16,17 @@ mod solve;
 mod stacking;
 
 use crate::result::record::{Record, Traces};
-use crate::session::Session;
+use crate::session::{Kind, Session};
 use crate::stack::Stack;
 use correct::CorrectedSequence;
-use measure::{MeasuredSequence, is_followed};
+use limb_table::{Given, Saved};
+use measure::MeasuredSequence;
+use std::borrow::Cow;
+use std::path::Path;
 use std::sync::Arc;
 
 pub use error::Error;
+pub use measure::{is_followed, times_of};
 
 /// Told how far the work is. Silent by default.
 pub trait Progress: Sync {
@@ -80,14 +85,109 @@ pub fn reduce(
     options: &Options,
     progress: &dyn Progress,
 ) -> Result<Outcome, Error> {
-    let (measured, set_aside) = measure_all(session, progress)?;
+    let (session, given) = with_tables(session)?;
+    stages(&session, &given, options, progress)
+}
+
+/// Runs the stages after the frames on the limbs that a run before saved in its `limbs.fits`: weather,
+/// clock, camera angle and scale are the session's as it now stands. There is no stack.
+///
+/// # Errors
+///
+/// As [`reduce`], and where the session asks for limbs that only frames can give.
+pub fn refit(
+    session: &Session,
+    limbs: &Path,
+    options: &Options,
+    progress: &dyn Progress,
+) -> Result<Outcome, Error> {
+    let saved = Saved::read(limbs)?;
+    if session.sequences.iter().any(|it| it.kind == Kind::Limbs) {
+        return Err(Error::File {
+            path: limbs.to_owned(),
+            what: "cannot stand for this session",
+            reason: "it has sequences of kind \"limbs\", which need no frames: reduce it as it is"
+                .to_owned(),
+        });
+    }
+    if let Some(index) = saved.beyond(session.sequences.len()) {
+        return Err(Error::File {
+            path: limbs.to_owned(),
+            what: "belongs to another session",
+            reason: format!(
+                "it has a sequence {}, the session has {}",
+                index + 1,
+                session.sequences.len()
+            ),
+        });
+    }
+    let mut session = session.clone();
+    session.sources.push(limbs.to_owned());
+    let mut given = Vec::new();
+    for index in 0..session.sequences.len() {
+        let it = saved.given(index, &session)?;
+        if it.is_none() && is_followed(session.sequences[index].kind) {
+            return Err(Error::File {
+                path: limbs.to_owned(),
+                what: "has no limb",
+                reason: format!("of sequence {} of the session", index + 1),
+            });
+        }
+        given.push(it);
+    }
+    for it in &mut session.sequences {
+        it.files.clear();
+        it.calibration = crate::session::Calibration::default();
+        it.camera.bad_pixels = None;
+    }
+    stages(
+        &session,
+        &given,
+        &Options {
+            stack: false,
+            ..options.clone()
+        },
+        progress,
+    )
+}
+
+/// The session with every group of limbs measured elsewhere as a sequence of its own, and those limbs.
+fn with_tables(session: &Session) -> Result<(Cow<'_, Session>, Vec<Option<Given>>), Error> {
+    if session.sequences.iter().all(|it| it.kind != Kind::Limbs) {
+        return Ok((Cow::Borrowed(session), vec![None; session.sequences.len()]));
+    }
+    let mut whole = session.clone();
+    let mut given = Vec::new();
+    whole.sequences.clear();
+    for it in &session.sequences {
+        if it.kind == Kind::Limbs {
+            for (sequence, limbs) in limb_table::of_files(it)? {
+                whole.sequences.push(sequence);
+                given.push(Some(limbs));
+            }
+        } else {
+            whole.sequences.push(it.clone());
+            given.push(None);
+        }
+    }
+    Ok((Cow::Owned(whole), given))
+}
+
+fn stages(
+    session: &Session,
+    given: &[Option<Given>],
+    options: &Options,
+    progress: &dyn Progress,
+) -> Result<Outcome, Error> {
+    let (measured, set_aside) = measure_all(session, given, progress)?;
     let limbs: Vec<CorrectedSequence> = measured.iter().map(correct::correct).collect();
     let seeing = solve::seeing(session, &measured, &limbs);
     let selected = solve::select(&measured, &limbs)?;
     let model = limb_model::lines(session, &measured)?;
-    let known = solve::known(session, &measured);
+    let known = solve::known(session, &measured)?;
     let shape = solve::shape(&selected, &known, &model, options.seed)?;
-    let stacks = if options.stack {
+    let has_pixels = measured.iter().all(|it| !it.from_table);
+    let stacks = if options.stack && has_pixels {
         stacking::combine(
             &measured,
             &limbs,
@@ -133,6 +233,7 @@ type SetAside = (usize, String);
 /// left.
 fn measure_all(
     session: &Session,
+    given: &[Option<Given>],
     progress: &dyn Progress,
 ) -> Result<(Vec<MeasuredSequence>, Vec<SetAside>), Error> {
     let mut shared: Vec<Arc<measure::Setup>> = Vec::new();
@@ -140,7 +241,7 @@ fn measure_all(
     let mut set_aside = Vec::new();
     let mut first_error = None;
     for (index, sequence) in session.sequences.iter().enumerate() {
-        if !is_followed(sequence.kind) {
+        if !is_followed(sequence.kind) && given[index].is_none() {
             let reason = format!(
                 "kind \"{}\" does not go to the shape of followed disks",
                 measure::kind_word(sequence.kind)
@@ -148,7 +249,7 @@ fn measure_all(
             set_aside.push((index, reason));
             continue;
         }
-        match measure::measure(index, session, &mut shared, progress) {
+        match measure::measure(index, session, &mut shared, given[index].as_ref(), progress) {
             Ok(it) => measured.push(it),
             Err(it @ Error::NoFrames { .. }) => {
                 set_aside.push((index, it.to_string()));

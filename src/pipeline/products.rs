@@ -1,11 +1,10 @@
 //! The files of a result: each whole under its name, or not there.
 
-use super::{Error, Outcome, frame_table};
+use super::{Error, Outcome, limb_table};
 use crate::frames::{self, Card, Column, FitsWriter, Value, Values, write_ecsv, write_whole};
 use crate::report;
 use crate::result::record::SourceFile;
 use crate::session::Session;
-use crate::shape::REFERENCE_RADIUS_MAS;
 use crate::sky::observer_itrs_m;
 use rayon::prelude::*;
 use std::path::{Path, PathBuf};
@@ -61,7 +60,8 @@ pub fn write(outcome: &Outcome, session: &Session, folder: &Path) -> Result<(), 
         what: "the folder could not be made",
         reason: it.to_string(),
     })?;
-    limbs(outcome, session, &folder.join("limbs.fits"))?;
+    let cards = common(outcome, session);
+    limb_table::write(outcome, session, cards, &folder.join("limbs.fits"))?;
     stack(outcome, session, &folder.join("stack.fits"))?;
     seeing_table(outcome, &folder.join("seeing.ecsv"))?;
     budget_table(outcome, &folder.join("budget.ecsv"))?;
@@ -105,103 +105,6 @@ fn common(outcome: &Outcome, session: &Session) -> Vec<Card> {
         Card::real("OBSGEO-Y", y, "[m] ITRS"),
         Card::real("OBSGEO-Z", z, "[m] ITRS"),
     ]
-}
-
-/// `limbs.fits`: a row for every frame and sector, then a row for every frame.
-fn limbs(outcome: &Outcome, session: &Session, path: &Path) -> Result<(), Error> {
-    let mut sequence = Vec::new();
-    let mut frame = Vec::new();
-    let mut time = Vec::new();
-    let mut theta = Vec::new();
-    let mut position_angle = Vec::new();
-    let mut radius = Vec::new();
-    let mut sigma = Vec::new();
-    let mut apparent = Vec::new();
-    let mut blur = Vec::new();
-    let mut gain = Vec::new();
-    let mut flag = Vec::new();
-    let start = outcome.measured[0].frames[0].utc;
-    for (m, l) in outcome.measured.iter().zip(&outcome.limbs) {
-        for it in &l.frames {
-            let measured = &m.frames[it.measured];
-            let after_s = measured.utc.minus(start);
-            for (s, sector) in measured.limb.sectors.iter().enumerate() {
-                let angle = it.limb.angles_rad[s];
-                sequence.push(m.index as i32);
-                frame.push(measured.frame as i32);
-                time.push(after_s);
-                theta.push(angle.to_degrees() as f32);
-                position_angle.push(
-                    measured
-                        .moment
-                        .orientation
-                        .position_angle_rad(angle)
-                        .to_degrees() as f32,
-                );
-                radius.push((REFERENCE_RADIUS_MAS + it.limb.radius_mas[s]) / 1000.0);
-                sigma.push((it.limb.sigma_mas[s] / 1000.0) as f32);
-                apparent.push(sector.radius_arcsec);
-                blur.push(crate::limb::template::width_of_blur_arcsec(sector.blur) as f32);
-                gain.push(sector.gain_adu as f32);
-                flag.push(if it.usable[s] {
-                    0
-                } else {
-                    sector.flag.code().max(1)
-                });
-            }
-        }
-    }
-    let columns = [
-        Column::new("SEQUENCE", Values::I32(sequence))
-            .describe("index in the session file, from 0"),
-        Column::new("FRAME", Values::I32(frame)).describe("index in the sequence, from 0"),
-        Column::new("TIME", Values::F64(time))
-            .unit("s")
-            .describe("mid-exposure after DATEREF")
-            .ucd("time.epoch"),
-        Column::new("THETA", Values::F32(theta))
-            .unit("deg")
-            .describe("detector angle from +x towards +y"),
-        Column::new("POSANG", Values::F32(position_angle))
-            .unit("deg")
-            .describe("position angle from celestial north through east")
-            .ucd("pos.posAng"),
-        Column::new("RADIUS", Values::F64(radius))
-            .unit("arcsec")
-            .describe("radius at 1 AU, air taken out")
-            .ucd("phys.angSize"),
-        Column::new("SIGMA", Values::F32(sigma))
-            .unit("arcsec")
-            .describe("photon and read noise of RADIUS")
-            .ucd("stat.error;phys.angSize"),
-        Column::new("SEEN", Values::F64(apparent))
-            .unit("arcsec")
-            .describe("apparent radius on the plate scale"),
-        Column::new("BLUR", Values::F32(blur))
-            .unit("arcsec")
-            .describe("lambda / r0 from the width of the limb"),
-        Column::new("GAIN", Values::F32(gain))
-            .unit("adu")
-            .describe("brightness of disk centre by this sector"),
-        Column::new("FLAG", Values::U8(flag))
-            .describe("0 good, 1 incomplete or masked, 2 misfit")
-            .ucd("meta.code.qual"),
-    ];
-    let mut cards = common(outcome, session);
-    cards.push(Card::text(
-        "DATEREF",
-        start.to_iso(),
-        "TIME counts from here",
-    ));
-    let mut file = FitsWriter::create(path)?;
-    file.table("LIMBS", &columns, &cards)?;
-    file.table(
-        "FRAMES",
-        &frame_table::columns(&outcome.traces.frames),
-        &cards[cards.len() - 1..],
-    )?;
-    file.finish()?;
-    Ok(())
 }
 
 /// `stack.fits`: image, variance and weight, helioprojective.

@@ -8,6 +8,7 @@
 //! The page shows what was measured and no more: a missing value appears with its reason.
 
 mod axis;
+mod combined;
 mod comparison;
 mod figures;
 mod html;
@@ -27,6 +28,7 @@ mod timeline;
 
 use crate::result::record::{Record, Traces};
 
+pub use combined::render_combined;
 pub use comparison::{
     ComparisonSection, render_comparison, section_of_comparison, sentences_of_comparison,
 };

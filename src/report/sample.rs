@@ -128,6 +128,7 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
                 else { ShapeQuantity::not_separated("mas", REASON) },
             null_tests: null_tests(scale, separated),
             instrument: instrument(scale, separated),
+            drivers: Vec::new(),
             air: AirRecord {
                 scale: Quantity::measured(1.0021, 0.0105, "1"),
                 vertical_residual: if separated { Quantity::measured(3.4, 6.1, "mas") }
@@ -177,6 +178,14 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
                 perihelion: if separated { Quantity::measured(0.028, 0.055 , "arcsec/century") }
                     else { Quantity::missing("arcsec/century", "the oblateness was not separated") },
                 rotation_figure: Quantity::measured(7.84, 0.12, "mas"),
+                rotation_law: "middle".to_owned(),
+                excess: if separated { Quantity::measured(0.31, 0.62, "mas") }
+                    else { Quantity::missing("mas", "the oblateness was not separated") },
+                j2_beside_j4: Quantity::missing("1", "the next harmonic was not separated"),
+                j4: Quantity::missing("1", "the next harmonic was not separated"),
+                perihelion_by_relativity: Quantity::computed(42.98, "arcsec/century"),
+                by_law: Vec::new(),
+                note: None,
             },
             oblateness,
             radius,

@@ -1,5 +1,7 @@
-//! The records of a result.
+//! What the program found, in the form in which it is written to files.
 
 pub mod air;
 pub mod comparison;
+pub mod combined;
 pub mod record;
+pub mod recovery;

@@ -151,6 +151,19 @@ pub struct AirRecord {
     pub vertical_residual: Quantity,
 }
 
+/// How the distortion goes with a reading: mas for one unit of it, on the detector.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct DriverRecord {
+    /// Name of the reading.
+    pub reading: String,
+    /// Harmonic number.
+    pub m: usize,
+    /// Slope of the coefficient of `cos m theta`.
+    pub cos: Quantity,
+    /// Slope of the coefficient of `sin m theta`.
+    pub sin: Quantity,
+}
+
 /// How well the parts were told apart.
 #[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 pub struct Separation {
@@ -345,6 +358,43 @@ pub struct Quadrupole {
     pub perihelion: Quantity,
     /// Oblateness that surface rotation alone gives, with the spread of the published laws.
     pub rotation_figure: Quantity,
+    /// The law it was taken from.
+    #[serde(default)]
+    pub rotation_law: String,
+    /// Oblateness beyond that figure.
+    #[serde(default)]
+    pub excess: Quantity,
+    /// J2 with J4 free, from the coefficients of P2 and P4 with their covariance.
+    #[serde(default)]
+    pub j2_beside_j4: Quantity,
+    /// J4: the rotation's coefficient of P4 minus the measured one.
+    #[serde(default)]
+    pub j4: Quantity,
+    /// Perihelion advance of the innermost planet by general relativity, arcsec a century, for
+    /// comparison.
+    #[serde(default)]
+    pub perihelion_by_relativity: Quantity,
+    /// The same by each law, without the spread between them.
+    #[serde(default)]
+    pub by_law: Vec<ByLaw>,
+    /// What a reader must know of these numbers.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub note: Option<String>,
+}
+
+/// The figure against one rotation law.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct ByLaw {
+    /// Name of the law.
+    pub law: String,
+    /// Oblateness that it alone gives, mas at 1 AU.
+    pub rotation_figure_mas: f64,
+    /// Oblateness beyond it.
+    pub excess: Quantity,
+    /// J2, with J4 taken as zero.
+    pub j2: Quantity,
+    /// J4.
+    pub j4: Quantity,
 }
 
 /// The shape of the limb.
@@ -360,6 +410,9 @@ pub struct ShapeRecord {
     pub null_tests: Vec<NullTest>,
     /// Distortion fixed to the detector.
     pub instrument: Vec<DistortionRecord>,
+    /// How it goes with the readings of [environment], or drifts.
+    #[serde(default)]
+    pub drivers: Vec<DriverRecord>,
     /// The air's terms.
     pub air: AirRecord,
     /// How well Sun, instrument and air were told apart.

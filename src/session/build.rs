@@ -6,7 +6,7 @@ use super::document::{Value, folder};
 use super::environment::Environment;
 use super::facts::{
     Calibration, Camera, Filter, Instrument, LimbSettings, Moment, Projection, Refractivity,
-    ScaleOf, Session, Site, Telescope, Time, Weather, WeatherSource,
+    RotationLaw, ScaleOf, Session, Site, Telescope, Time, Weather, WeatherSource,
 };
 use super::fault::{Fault, FaultKind, Finding};
 use super::filter_curve::FilterCurve;
@@ -140,6 +140,7 @@ pub(super) fn instrument(reader: &mut Reader<'_>, root: &View) -> Option<Instrum
     let view = root.inner("instrument");
     Some(Instrument {
         distortion_sigma_mas: reader.open_number(&view, "distortion_sigma_mas")?,
+        drift_sigma_mas_per_hour: reader.open_number(&view, "drift_sigma_mas_per_hour")?,
     })
 }
 
@@ -303,6 +304,12 @@ pub(super) fn limb(reader: &mut Reader<'_>, root: &View) -> Option<LimbSettings>
         window_inside_arcsec: window_inside_arcsec?,
         window_outside_arcsec: window_outside_arcsec?,
     })
+}
+
+/// The law of the surface's rotation.
+pub(super) fn rotation(reader: &mut Reader<'_>, root: &View) -> Option<RotationLaw> {
+    let view = root.inner("gravity");
+    reader.choice(&view, "rotation", tables::ROTATIONS, &RotationLaw::ALL)
 }
 
 /// Readings beside the weather. The outer none means that a fault was noted.

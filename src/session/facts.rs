@@ -35,6 +35,8 @@ pub struct Session {
     pub time: Time,
     /// How the limb is measured.
     pub limb: LimbSettings,
+    /// Law of the surface's rotation with which the figure is compared.
+    pub rotation: RotationLaw,
     /// FITS keywords of a station that names them otherwise, by the fact they give: `date`,
     /// `exposure_s`, and the names of keys such as `gain_e_adu`.
     pub headers: BTreeMap<String, String>,
@@ -150,6 +152,8 @@ pub struct Camera {
 pub struct Instrument {
     /// Free of limb distortion of m = 2, 3, 4 to this, each.
     pub distortion_sigma_mas: Option<f64>,
+    /// Drift of each coefficient of the distortion, linear in time, about zero, where it is allowed for.
+    pub drift_sigma_mas_per_hour: Option<f64>,
 }
 
 /// Dark and flat frames.
@@ -265,6 +269,44 @@ pub struct LimbSettings {
     pub window_inside_arcsec: Option<f64>,
     /// Width of the annulus outside the limb, where the file gives it.
     pub window_outside_arcsec: Option<f64>,
+}
+
+/// A published law of the surface's rotation.
+#[derive(Clone, Copy, Debug, Default, PartialEq, Eq)]
+pub enum RotationLaw {
+    /// The middle of the range of the three laws that depend on latitude.
+    #[default]
+    Middle,
+    /// Snodgrass & Ulrich (1990).
+    SnodgrassUlrich1990,
+    /// Snodgrass (1983).
+    Snodgrass1983,
+    /// Howard & Harvey (1970).
+    HowardHarvey1970,
+    /// The same angular velocity at every latitude, a turn in 25.38 days.
+    Uniform,
+}
+
+impl RotationLaw {
+    /// Every choice.
+    pub const ALL: [Self; 5] = [
+        Self::Middle,
+        Self::SnodgrassUlrich1990,
+        Self::Snodgrass1983,
+        Self::HowardHarvey1970,
+        Self::Uniform,
+    ];
+
+    /// The name used in files and on the command line.
+    pub const fn name(self) -> &'static str {
+        match self {
+            Self::Middle => "middle",
+            Self::SnodgrassUlrich1990 => "snodgrass-ulrich-1990",
+            Self::Snodgrass1983 => "snodgrass-1983",
+            Self::HowardHarvey1970 => "howard-harvey-1970",
+            Self::Uniform => "uniform",
+        }
+    }
 }
 
 /// How the frames of a sequence came about.

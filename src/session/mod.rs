@@ -27,6 +27,7 @@ mod filter_curve;
 mod guards;
 mod judge;
 mod keys;
+mod limb_sheet;
 pub(crate) mod nearest;
 mod reader;
 mod resolved;
@@ -44,10 +45,11 @@ mod tests;
 pub use environment::Environment;
 pub use facts::{
     Calibration, Camera, Filter, Instrument, Kind, LimbSettings, Moment, Projection, Refractivity,
-    ScaleOf, Sequence, Session, Site, Telescope, Time, Weather, WeatherSource,
+    RotationLaw, ScaleOf, Sequence, Session, Site, Telescope, Time, Weather, WeatherSource,
 };
 pub use fault::{Fault, FaultKind, SessionError};
 pub use filter_curve::FilterCurve;
+pub use limb_sheet::{LIMB_COLUMNS, LimbSheet, read_limb_sheet};
 pub use resolved::resolved;
 pub use schema::schema;
 pub use sounding::Sounding;
@@ -86,6 +88,19 @@ pub fn read_with_headers(
 /// As [`read`].
 pub fn read_station(path: &Path) -> Result<Session, SessionError> {
     assembled(path, &|_, _| None, false)
+}
+
+/// Reads and checks a session file whose frames may be gone, for a second fit of the limbs that were
+/// measured in them; headers are asked where frames are still there.
+///
+/// # Errors
+///
+/// As [`read`].
+pub fn read_without_frames(
+    path: &Path,
+    header: &dyn Fn(&Path, &str) -> Option<f64>,
+) -> Result<Session, SessionError> {
+    assembled(path, header, false)
 }
 
 fn assembled(
@@ -140,6 +155,7 @@ fn assembled(
     let refractivity = build::refractivity(&mut reader, &root);
     let time = build::time(&mut reader, &root);
     let limb = build::limb(&mut reader, &root);
+    let rotation = build::rotation(&mut reader, &root);
     let environment = build::environment(&mut reader, &root, &mut read);
     let mut common = sequences::Common::new(&root, calibration.as_ref());
     let sequences: Vec<Option<Sequence>> = outlines
@@ -178,6 +194,7 @@ fn assembled(
             refractivity: refractivity?,
             time: time?,
             limb: limb?,
+            rotation: rotation?,
             headers,
             environment: environment?,
             sequences: sequences.into_iter().collect::<Option<_>>()?,

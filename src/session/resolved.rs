@@ -36,7 +36,10 @@ pub fn resolved(session: &Session) -> Value {
         })),
         "filter": filter(&session.filter, folder),
         "camera": frames.then(|| camera(&session.camera, folder)),
-        "instrument": { "distortion_sigma_mas": session.instrument.distortion_sigma_mas },
+        "instrument": {
+            "distortion_sigma_mas": session.instrument.distortion_sigma_mas,
+            "drift_sigma_mas_per_hour": session.instrument.drift_sigma_mas_per_hour,
+        },
         "calibration": calibration(&session.calibration, folder),
         "weather": weather(&session.weather, folder),
         "refractivity": {
@@ -66,6 +69,7 @@ pub fn resolved(session: &Session) -> Value {
             "window_inside_arcsec": limb.window_inside_arcsec,
             "window_outside_arcsec": limb.window_outside_arcsec,
         },
+        "gravity": { "rotation": session.rotation.name() },
         "headers": session.headers,
         "environment": session.environment.as_ref().map(|it| json!({
             "log": shown(&it.path, folder),

@@ -1,6 +1,7 @@
 //! Generalised least squares with prior knowledge, and where the error comes from.
 
 use super::design::{self, COMPONENTS, Component, about, sun_columns};
+use super::driver::{Driver, DriverSlope};
 use super::{Block, Observation, REFERENCE_RADIUS_MAS, Separability, ShapeError};
 use nalgebra::{DMatrix, DVector};
 
@@ -38,6 +39,8 @@ pub struct Known {
     pub tilt_tau_s: f64,
     /// Standard uncertainty of each instrument coefficient about zero, mas; none: free.
     pub distortion_sigma_mas: Option<f64>,
+    /// Readings with which the distortion goes.
+    pub drivers: Vec<Driver>,
 }
 
 /// Prior widths for Sun terms that the observation cannot separate: they only keep the radius honest.
@@ -90,6 +93,8 @@ pub struct Fit {
     pub gain: [Vec<Component>; 2],
     /// Whether the distortion was free.
     pub free_instrument: bool,
+    /// Slopes against readings.
+    pub slopes: Vec<DriverSlope>,
 }
 
 /// Index of the radius among the terms.
@@ -143,6 +148,12 @@ impl Fit {
         [AIR, AIR + 1].map(|i| (self.values[i], self.covariance[(i, i)].sqrt()))
     }
 
+    /// Correlation of the oblateness with `R c4`.
+    pub fn correlation_oblateness_p4(&self) -> f64 {
+        let own = self.covariance[(OBLATENESS, OBLATENESS)] * self.covariance[(P4, P4)];
+        self.covariance[(OBLATENESS, P4)] / own.sqrt()
+    }
+
     /// Largest correlation of the oblateness with the instrument's and with the air's terms.
     pub fn correlations(&self) -> (f64, f64) {
         let own = self.covariance[(OBLATENESS, OBLATENESS)].sqrt();
@@ -155,7 +166,18 @@ impl Fit {
                 .filter(|it| it.is_finite())
                 .fold(0.0, |a: f64, b| if b > a { b } else { a })
         };
-        (largest(INSTRUMENT..AIR), largest(AIR..self.values.len()))
+        // A driver's terms belong to the instrument.
+        let (mut instrument, mut air) = (largest(INSTRUMENT..AIR), 0.0);
+        for i in AIR..self.values.len() {
+            let it = largest(i..i + 1);
+            let to = if self.terms[i].starts_with(DRIVER) {
+                &mut instrument
+            } else {
+                &mut air
+            };
+            *to = if it > *to { it } else { *to };
+        }
+        (instrument, air)
     }
 }
 
@@ -357,6 +379,18 @@ fn unknowns(blocks: &[Block], known: &Known, separability: &Separability) -> Vec
         plumb,
         design::tilt_across,
     ));
+    for (k, driver) in known.drivers.iter().enumerate() {
+        for (m, part) in DRIVEN {
+            let column = driver.clone();
+            let name = format!("{DRIVER}{k} m={m} {}", ["cos", "sin"][part]);
+            out.push(Unknown::new(
+                &name,
+                "mas/unit",
+                Some(driver.sigma_mas),
+                move |o| column.column(o, m, part),
+            ));
+        }
+    }
     let mut sequences: Vec<usize> = blocks.iter().map(|it| it.sequence).collect();
     sequences.dedup();
     for s in sequences {
@@ -372,6 +406,39 @@ fn unknowns(blocks: &[Block], known: &Known, separability: &Separability) -> Vec
             Some(known.tilt_sigma_arcmin),
             move |o| only(o, s, design::tilt_across(o)),
         ));
+    }
+    out
+}
+
+/// Opens the names of the unknowns of a driver; its number follows.
+const DRIVER: &str = "driver ";
+
+/// Harmonics and parts that a driver moves.
+const DRIVEN: [(usize, usize); 6] = [(2, 0), (2, 1), (3, 0), (3, 1), (4, 0), (4, 1)];
+
+/// The slopes among the fitted unknowns.
+fn slopes(
+    known: &Known,
+    unknowns: &[Unknown],
+    values: &DVector<f64>,
+    covariance: &DMatrix<f64>,
+) -> Vec<DriverSlope> {
+    let Some(first) = unknowns.iter().position(|it| it.name.starts_with(DRIVER)) else {
+        return Vec::new();
+    };
+    let of = |i: usize| (values[i], covariance[(i, i)].sqrt());
+    let mut out = Vec::new();
+    for (k, driver) in known.drivers.iter().enumerate() {
+        for m in 2..=4 {
+            let i = first + 6 * k + 2 * (m - 2);
+            out.push(DriverSlope {
+                name: driver.name.clone(),
+                unit: driver.unit,
+                m,
+                cos_mas: of(i),
+                sin_mas: of(i + 1),
+            });
+        }
     }
     out
 }
@@ -447,7 +514,9 @@ fn solve(
     }
     let influence = &covariance * &information;
     let fitted: f64 = (0..n)
-        .filter(|&i| i != RADIUS && unknowns[i].name != "plate scale")
+        .filter(|&i| {
+            i != RADIUS && unknowns[i].name != "plate scale" && !driven_third(&unknowns[i].name)
+        })
         .map(|i| influence[(i, i)])
         .sum();
     // The m = 3 terms take their own components, which are not counted above.
@@ -463,6 +532,7 @@ fn solve(
         units: unknowns.iter().map(|it| it.unit).collect(),
         contributions: contributions(&covariance, &information, &prior, known, unknowns),
         influence: by_observation(observations, blocks, &response),
+        slopes: slopes(known, unknowns, &values, &covariance),
         values,
         covariance,
         chi2,
@@ -489,6 +559,11 @@ fn by_observation(
         }
     }
     out
+}
+
+/// Whether an unknown is a driver's of m = 3, whose components are not in chi square.
+fn driven_third(name: &str) -> bool {
+    name.starts_with(DRIVER) && name.contains("m=3")
 }
 
 /// Precision of what is known before: independent terms, and the layers' tilt as a first-order
@@ -643,6 +718,16 @@ fn contributions(
             false,
             "instrument",
             "instrument.distortion_sigma_mas",
+        ));
+    }
+    for (k, driver) in known.drivers.iter().enumerate() {
+        let own = format!("{DRIVER}{k} ");
+        out.push(line(
+            driver.term,
+            group(&|it| it.starts_with(&own)),
+            false,
+            "session",
+            &driver.how,
         ));
     }
     if unknowns[OBLATENESS].prior.is_some() || unknowns[P4].prior.is_some() {

@@ -37,12 +37,14 @@
 
 mod bootstrap;
 mod design;
+mod driver;
 mod fit;
 mod noise;
 mod separation;
 
 pub use bootstrap::{Bootstrap, bootstrap};
 pub use design::{COMPONENTS, Component, sun_columns};
+pub use driver::{Driver, DriverSlope};
 pub use fit::{Contribution, Fit, Known, NullTerms, RefractivityInput, fit, odd_terms, sine_terms};
 pub use noise::{Block, Correlation, Growth, blocks};
 pub use separation::{Separability, judge};

@@ -41,4 +41,5 @@ pub use scenario::{
     Distortion, Layer, MountKind, Scenario, SequenceKind, SequencePlan, Shape, Site, Weather,
     read_scenario,
 };
+pub use screens::longest_outer_scale_m;
 pub use truth::{FrameTruth, KnowledgeErrors, SequenceTruth, Truth};

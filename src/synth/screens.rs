@@ -68,7 +68,7 @@ pub(super) fn coarse_period_m(aperture_m: f64) -> f64 {
 }
 
 /// Longest outer scale that the fields hold, m.
-pub(super) fn longest_outer_scale_m(aperture_m: f64) -> f64 {
+pub fn longest_outer_scale_m(aperture_m: f64) -> f64 {
     0.25 * coarse_period_m(aperture_m)
 }
 

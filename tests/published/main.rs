@@ -12,6 +12,7 @@ mod disk_transform;
 mod finite_fourier_edge_1975;
 mod fits_readers;
 mod footing_limb;
+mod gravity;
 mod limb_darkening;
 mod limb_displacement;
 mod limb_extraction;

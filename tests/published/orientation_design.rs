@@ -73,6 +73,7 @@ fn known() -> Known {
         tilt_sigma_arcmin: 0.0,
         tilt_tau_s: 1800.0,
         distortion_sigma_mas: None,
+        drivers: Vec::new(),
     }
 }
 

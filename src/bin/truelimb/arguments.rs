@@ -34,6 +34,16 @@ pub(crate) enum Command {
         after_help = "Example: truelimb seeing session.toml -o air\n\nIt needs no rolls: a session whose oblateness would be refused is measured all the same."
     )]
     Seeing(Seeing),
+    /// Combine the results of several sessions: one value, a series, what they share kept shared.
+    #[command(
+        after_help = "Example: truelimb combine season/*/ -o combined --common \"plate scale\"\n\nExit status 3: done, but fewer than two sessions separate the oblateness from the instrument."
+    )]
+    Combine(crate::combine::Combine),
+    /// Inject known shapes into sessions like this one, reduce each, and say how well they come back.
+    #[command(
+        after_help = "Example: truelimb recover session.toml --injected 0,8 --n 40 --result result"
+    )]
+    Recover(crate::recover::Recover),
     /// Make a session with known truth.
     #[command(after_help = "Example: truelimb simulate -o fake --seed 7")]
     Simulate(Simulate),
@@ -77,6 +87,14 @@ pub(crate) struct Reduce {
     /// Leave the stack out.
     #[arg(long)]
     pub(crate) no_stack: bool,
+    /// Fit the limbs of a run before again, from its limbs.fits and without the frames: for a
+    /// barometer, clock, camera angle or scale that turned out wrong.
+    #[arg(long, value_name = "LIMBS")]
+    pub(crate) limbs: Option<PathBuf>,
+    /// Law of the surface's rotation with which the figure is compared, in place of the session's:
+    /// middle, snodgrass-ulrich-1990, snodgrass-1983, howard-harvey-1970 or uniform.
+    #[arg(long, value_name = "LAW")]
+    pub(crate) rotation: Option<String>,
     /// Print result.json on stdout.
     #[arg(long)]
     pub(crate) json: bool,

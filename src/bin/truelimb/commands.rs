@@ -8,6 +8,7 @@ use std::path::Path;
 use truelimb::pipeline::single::{self, Definition, SingleSettings};
 use truelimb::pipeline::{self, Options, Outcome, Progress};
 use truelimb::result::record::{Quantity, Record, ShapeQuantity, Status};
+use truelimb::session::{RotationLaw, Session};
 use truelimb::synth::SynthError;
 use truelimb::{Error, session, synth};
 
@@ -23,6 +24,9 @@ pub(crate) enum Failure {
     /// A session could not be made.
     #[error("simulation: {0}")]
     Synth(SynthError),
+    /// Sessions like this one could not be made.
+    #[error(transparent)]
+    Recover(Box<truelimb::recover::RecoverError>),
 }
 
 impl<E: Into<Error>> From<E> for Failure {
@@ -65,7 +69,16 @@ pub(crate) fn reduce(it: &Reduce, quiet: bool) -> Result<Ending, Failure> {
         seed: it.seed,
         stack: !it.no_stack,
     };
-    let outcome = run(&it.session, &it.output, &options, quiet)?;
+    let mut session = match &it.limbs {
+        None => session::read_with_headers(&it.session, &header_number)?,
+        // The frames may be gone; what only their headers said must be in the session file.
+        Some(_) => session::read_without_frames(&it.session, &header_number)?,
+    };
+    if let Some(name) = &it.rotation {
+        session.rotation = rotation(name)?;
+        session.assumed.retain(|it| it != "gravity.rotation");
+    }
+    let outcome = reduced(&session, it.limbs.as_deref(), &it.output, &options, quiet)?;
     if it.json {
         print(&json(&outcome.record)?);
     } else if !quiet {
@@ -87,12 +100,39 @@ fn ending(record: &Record) -> Ending {
 
 fn run(path: &Path, output: &Path, options: &Options, quiet: bool) -> Result<Outcome, Failure> {
     let session = session::read_with_headers(path, &header_number)?;
+    reduced(&session, None, output, options, quiet)
+}
+
+fn reduced(
+    session: &Session,
+    limbs: Option<&Path>,
+    output: &Path,
+    options: &Options,
+    quiet: bool,
+) -> Result<Outcome, Failure> {
     let bar = Bar::new(quiet);
-    let outcome = pipeline::reduce(&session, options, &bar);
+    let outcome = match limbs {
+        None => pipeline::reduce(session, options, &bar),
+        Some(limbs) => pipeline::refit(session, limbs, options, &bar),
+    };
     bar.finish();
     let outcome = outcome?;
-    pipeline::products::write(&outcome, &session, output)?;
+    pipeline::products::write(&outcome, session, output)?;
     Ok(outcome)
+}
+
+/// The rotation law of this name.
+fn rotation(name: &str) -> Result<RotationLaw, Failure> {
+    RotationLaw::ALL
+        .into_iter()
+        .find(|it| it.name() == name)
+        .ok_or_else(|| {
+            let allowed: Vec<&str> = RotationLaw::ALL.iter().map(|it| it.name()).collect();
+            Failure::Usage(format!(
+                "--rotation is \"{name}\"; allowed are {}",
+                allowed.join(", ")
+            ))
+        })
 }
 
 /// A number from a frame's header, for a fact that the session leaves out.

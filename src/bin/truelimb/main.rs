@@ -1,9 +1,11 @@
 //! The command: reads arguments, calls the library, prints results on stdout and all else on stderr.
 
 mod arguments;
+mod combine;
 mod commands;
 mod compare;
 mod progress;
+mod recover;
 mod refraction;
 mod seeing;
 
@@ -33,6 +35,8 @@ fn main() -> ExitCode {
         Command::Demo(it) => commands::demo(&it, quiet),
         Command::Reduce(it) => commands::reduce(&it, quiet),
         Command::Seeing(it) => seeing::seeing(&it, quiet),
+        Command::Combine(it) => combine::combine(&it, quiet),
+        Command::Recover(it) => recover::recover(&it, quiet),
         Command::Simulate(it) => commands::simulate(&it, quiet),
         Command::Limb(it) => commands::limb(&it),
         Command::Refraction(it) => refraction::refraction(&it, quiet),
@@ -54,6 +58,10 @@ fn status(error: &commands::Failure) -> u8 {
     match error {
         commands::Failure::Usage(_) => 2,
         commands::Failure::Synth(_) => 1,
+        commands::Failure::Recover(it) => match it.as_ref() {
+            truelimb::recover::RecoverError::Folder { .. } => 1,
+            _ => 2,
+        },
         commands::Failure::Run(it) => match it.as_ref() {
             Error::File { .. } | Error::Record { .. } | Error::Report(_) => 1,
             _ => 2,

@@ -1,6 +1,7 @@
 //! The outcome of the stages put into the records of the result.
 
 mod shape;
+mod interior;
 pub(super) mod seeing;
 mod turbulence;
 mod sequences;

@@ -1,14 +1,14 @@
 //! The record of the shape: radius, oblateness and the next harmonic by frames and by stacks, with
 //! null tests, the instrument's distortion and the quadrupole moment.
 
-use super::{Parts, lines, quantity};
+use super::{Parts, interior, lines, quantity};
 use crate::budget;
 use crate::pipeline::definitions;
 use crate::result::record::{
-    AirRecord, BatchRecord, BootstrapRecord, ByStack, Covariance, DistortionRecord, FactorRecord,
-    NullTest, Quadrupole, Quantity, RandomErrorRecord, Separation, ShapeQuantity, ShapeRecord,
+    AirRecord, BatchRecord, BootstrapRecord, ByStack, Covariance, DistortionRecord, DriverRecord,
+    FactorRecord, NullTest, Quantity, RandomErrorRecord, Separation, ShapeQuantity, ShapeRecord,
 };
-use crate::shape::{Fit, REFERENCE_RADIUS_MAS};
+use crate::shape::{DriverSlope, Fit};
 
 /// The record of the shape.
 pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
@@ -20,6 +20,7 @@ pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
     ShapeRecord {
         null_tests: null_tests(p),
         instrument: (2..=4).map(|m| distortion(p, m)).collect(),
+        drivers: fit.slopes.iter().map(driver).collect(),
         air: AirRecord {
             scale: if p.known.refractivity.is_empty() {
                 Quantity::missing("1", "above the air")
@@ -50,7 +51,7 @@ pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
         kept_curve: p.shape.curve.clone(),
         random_error: random_error(p),
         kept_slope: p.shape.slope.clone(),
-        quadrupole: quadrupole(&oblateness),
+        quadrupole: interior::record(p, &oblateness, &p4),
         oblateness,
         radius,
         p4,
@@ -236,6 +237,21 @@ fn distortion(p: &Parts<'_>, m: usize) -> DistortionRecord {
     }
 }
 
+/// How one harmonic of the distortion goes with a reading.
+fn driver(it: &DriverSlope) -> DriverRecord {
+    let unit = if it.unit.is_empty() {
+        "mas/unit".to_owned()
+    } else {
+        format!("mas/{}", it.unit)
+    };
+    DriverRecord {
+        reading: it.name.clone(),
+        m: it.m,
+        cos: Quantity::measured(it.cos_mas.0, it.cos_mas.1, &unit),
+        sin: Quantity::measured(it.sin_mas.0, it.sin_mas.1, &unit),
+    }
+}
+
 /// The shape from stacks, beside that from single frames.
 fn by_stack(p: &Parts<'_>, by_frame: &ShapeQuantity) -> ByStack {
     match p.by_stack {
@@ -274,38 +290,5 @@ fn by_stack(p: &Parts<'_>, by_frame: &ShapeQuantity) -> ByStack {
                 reason: Some(reason.clone()),
             }
         }
-    }
-}
-
-/// Oblateness that surface rotation alone gives: middle and rectangular uncertainty of three
-/// published laws (Snodgrass & Ulrich 1990, Snodgrass 1983, Howard & Harvey 1970), mas at 1 AU;
-/// regression values from their coefficients, which are from memory.
-const ROTATION_FIGURE_MAS: (f64, f64) = (7.886, 0.276);
-
-/// Perihelion advance of the innermost planet by `J2` = 1, arcsec a century.
-const PERIHELION_ARCSEC: f64 = 0.012_701 / 1e-7;
-
-/// The quadrupole moment: the oblateness less what surface rotation gives.
-fn quadrupole(oblateness: &ShapeQuantity) -> Quadrupole {
-    let rotation_figure = Quantity::measured(ROTATION_FIGURE_MAS.0, ROTATION_FIGURE_MAS.1, "mas");
-    let (Some(value), Some(sigma)) = (oblateness.value, oblateness.sigma) else {
-        let reason = "the oblateness is not separated";
-        return Quadrupole {
-            j2: Quantity::missing("1", reason),
-            perihelion: Quantity::missing("arcsec/century", reason),
-            rotation_figure,
-        };
-    };
-    let per_j2 = 1.5 * REFERENCE_RADIUS_MAS;
-    let j2 = (value - ROTATION_FIGURE_MAS.0) / per_j2;
-    let sigma = sigma.hypot(ROTATION_FIGURE_MAS.1) / per_j2;
-    Quadrupole {
-        j2: Quantity::measured(j2, sigma, "1"),
-        perihelion: Quantity::measured(
-            j2 * PERIHELION_ARCSEC,
-            sigma * PERIHELION_ARCSEC,
-            "arcsec/century",
-        ),
-        rotation_figure,
     }
 }

@@ -102,6 +102,23 @@ pub(super) fn records(p: &Parts<'_>) -> Vec<WarningRecord> {
             );
         }
     }
+    if let Some(log) = &p.session.environment {
+        for name in &log.columns {
+            if !p.known.drivers.iter().any(|it| it.name == *name) {
+                say(
+                    "environment-constant",
+                    format!("the reading {name} is the same in all frames: nothing can go with it"),
+                );
+            }
+        }
+    }
+    if p.measured.iter().any(|it| it.elsewhere) {
+        say(
+            "limbs-elsewhere",
+            "limbs of another program are in the fit: which edge it calls the limb, and how blur moves it, is not in the error of the radius"
+                .to_owned(),
+        );
+    }
     for (index, reason) in p.set_aside {
         say(
             "set-aside",

@@ -4,6 +4,7 @@ mod sky;
 mod setup;
 mod reading;
 
+use super::limb_table::Given;
 use super::{Error, Progress};
 use crate::air::{BandInAir, Conditions};
 use crate::frames::{self, FrameRef};
@@ -56,6 +57,12 @@ pub struct LostFrame {
 pub struct MeasuredSequence {
     /// Index in the session file.
     pub index: usize,
+    /// Mid-exposures of the first and the last frame.
+    pub span_utc: (Utc, Utc),
+    /// Whether the limbs come from a table, so that there are no pixels.
+    pub from_table: bool,
+    /// Whether another program measured them.
+    pub elsewhere: bool,
     /// Its files and frames.
     pub list: frames::Sequence,
     /// Frames with a limb, in order of time.
@@ -86,25 +93,31 @@ pub struct MeasuredSequence {
     pub exposure_s: f64,
 }
 
-/// Measures one sequence of whole-disk frames.
+/// Measures one sequence of whole-disk frames, or takes its limbs as a table gives them.
 ///
 /// # Errors
 ///
 /// What makes the sequence as a whole unusable: files that disagree, times that cannot be read, a
 /// weather log that does not cover them, a Sun below the horizon, or no frame with a limb at all.
-pub fn measure(
+pub(in crate::pipeline) fn measure(
     index: usize,
     session: &Session,
     shared: &mut Vec<Arc<Setup>>,
+    given: Option<&Given>,
     progress: &dyn Progress,
 ) -> Result<MeasuredSequence, Error> {
     let sequence = &session.sequences[index];
-    // Files that cannot be read cost this sequence, not the others.
-    let list = frames::list(&sequence.files).map_err(|it| Error::NoFrames {
-        sequence: index,
-        reason: it.to_string(),
-    })?;
-    let times = times(&list, session)?;
+    let (list, times) = if let Some(it) = given {
+        it.listed()
+    } else {
+        // Files that cannot be read cost this sequence, not the others.
+        let list = frames::list(&sequence.files).map_err(|it| Error::NoFrames {
+            sequence: index,
+            reason: it.to_string(),
+        })?;
+        let times = times(&list, session)?;
+        (list, times)
+    };
     let (Some(first), Some(last)) = (times.first(), times.last()) else {
         return Err(Error::NoFrames {
             sequence: index,
@@ -114,7 +127,9 @@ pub fn measure(
     let sky = Sky::new(session, sequence, first.0, last.0)?;
     let duration_s = last.0.minus(first.0);
     let middle_utc = first.0.plus_s(0.5 * duration_s);
-    let (middle, middle_air, station) = sky.moment(middle_utc)?;
+    let (mut middle, middle_air, station) = sky.moment(middle_utc)?;
+    let hung = |frame| given.and_then(|it| it.orientation(frame));
+    middle.orientation = hung(times.len() / 2).unwrap_or(middle.orientation);
     let setup = setup(session, sequence, &list, &middle, shared)?;
     let nodes = sky.nodes(first.0, duration_s)?;
     let model_radii = predicted(&setup, &middle);
@@ -134,28 +149,31 @@ pub fn measure(
         };
         limb::extract(raw.view(), start, &extraction)
     };
-    let blur_start = first_blur(&list, &setup, &measure_one);
-    progress.stage(
-        &format!("sequence {}: limbs", index + 1),
-        list.frames.len() as u64,
-    );
-    let outcomes = each_frame(&list, progress, |raw| measure_one(raw, blur_start));
+    let outcomes = if let Some(it) = given {
+        it.limbs(session, &setup, &model_radii.0)
+    } else {
+        let blur_start = first_blur(&list, &setup, &measure_one);
+        progress.stage(
+            &format!("sequence {}: limbs", index + 1),
+            list.frames.len() as u64,
+        );
+        each_frame(&list, progress, |raw| measure_one(raw, blur_start))
+    };
 
     let mut measured = Vec::new();
-    let mut lost: Vec<LostFrame> = list
-        .unreadable
-        .iter()
-        .map(|(_, it)| LostFrame {
-            frame: 0,
-            reason: "file could not be opened",
-            detail: it.to_string(),
-        })
-        .collect();
+    let mut lost: Vec<LostFrame> = given.map_or_else(Vec::new, |it| it.unreadable().to_vec());
+    let unreadable = list.unreadable.iter().map(|(_, it)| LostFrame {
+        frame: 0,
+        reason: "file could not be opened",
+        detail: it.to_string(),
+    });
+    lost.extend(unreadable);
     for (frame, outcome) in outcomes.into_iter().enumerate() {
         match outcome {
             Ok(limb) => {
                 let utc = times[frame].0;
-                let (moment, ..) = sky.moment(utc)?;
+                let (mut moment, ..) = sky.moment(utc)?;
+                moment.orientation = hung(frame).unwrap_or(moment.orientation);
                 let air = interpolated(&nodes, utc.minus(first.0));
                 measured.push(MeasuredFrame {
                     frame,
@@ -200,6 +218,9 @@ pub fn measure(
     )?;
     Ok(MeasuredSequence {
         index,
+        span_utc: (first.0, last.0),
+        from_table: given.is_some(),
+        elsewhere: given.is_some_and(|it| it.elsewhere),
         list,
         frames: measured,
         lost,
@@ -215,6 +236,21 @@ pub fn measure(
         set_aside,
         exposure_s: times[0].1.unwrap_or(0.0),
     })
+}
+
+/// Mid-exposure, and the exposure in seconds where it is known.
+pub type Timed = (Utc, Option<f64>);
+
+/// The frames of a sequence, and of each the mid-exposure, the clock's offset taken off, and the exposure
+/// in seconds where the header tells it.
+///
+/// # Errors
+///
+/// When the files or their times cannot be read.
+pub fn times_of(session: &Session, index: usize) -> Result<(frames::Sequence, Vec<Timed>), Error> {
+    let list = frames::list(&session.sequences[index].files)?;
+    let times = times(&list, session)?;
+    Ok((list, times))
 }
 
 /// Whether a sequence is of whole disks that are followed.

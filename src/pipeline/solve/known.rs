@@ -1,6 +1,8 @@
 //! What is known before the fit: the air's refractivity, the camera, the clock, the instrument.
 
 use super::above_the_air;
+use super::drivers::drivers;
+use crate::pipeline::Error;
 use crate::pipeline::measure::MeasuredSequence;
 use crate::session::Session;
 use crate::shape::{Known, RefractivityInput};
@@ -14,14 +16,21 @@ const VERTICAL_SIGMA_MAS: f64 = 0.3;
 const FORMULA_SIGMA: f64 = 4e-8;
 
 /// What is known before the fit.
-pub(in crate::pipeline) fn known(session: &Session, measured: &[MeasuredSequence]) -> Known {
+///
+/// # Errors
+///
+/// When the readings of [environment] do not cover the frames.
+pub(in crate::pipeline) fn known(
+    session: &Session,
+    measured: &[MeasuredSequence],
+) -> Result<Known, Error> {
     let refractivity = if above_the_air(session) {
         Vec::new()
     } else {
         refractivity_inputs(session, measured)
     };
     let camera = &session.camera;
-    Known {
+    Ok(Known {
         vertical_sigma_mas: if refractivity.is_empty() {
             0.0
         } else {
@@ -39,7 +48,8 @@ pub(in crate::pipeline) fn known(session: &Session, measured: &[MeasuredSequence
         },
         tilt_tau_s: 60.0 * session.refractivity.layer_tilt_tau_min,
         distortion_sigma_mas: session.instrument.distortion_sigma_mas,
-    }
+        drivers: drivers(session, measured)?,
+    })
 }
 
 /// Deflection of the vertical where the session gives none, and what is left where it does: common

@@ -5,6 +5,7 @@ mod blur;
 mod floor;
 mod seeing;
 mod select;
+mod drivers;
 mod known;
 mod slope;
 mod shape;

@@ -223,6 +223,7 @@ mod tests {
             tilt_sigma_arcmin: 0.0,
             tilt_tau_s: 1800.0,
             distortion_sigma_mas: None,
+            drivers: Vec::new(),
         }
     }
 

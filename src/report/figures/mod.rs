@@ -14,6 +14,7 @@ mod ring;
 mod ring_marks;
 mod seeing;
 mod separation;
+pub(crate) mod season;
 
 use super::html::escape;
 use super::preview::Preview;

@@ -3,7 +3,7 @@
 use super::{QUANTITY, cells};
 use crate::report::html::{Column, Table, paragraph};
 use crate::report::numbers;
-use crate::result::record::{Quantity, Record, ShapeQuantity};
+use crate::result::record::{Quadrupole, Quantity, Record, ShapeQuantity};
 
 /// A number that may be missing, to a number of significant digits.
 fn known(value: Option<f64>, digits: u8) -> String {
@@ -35,6 +35,29 @@ pub(super) fn parts(out: &mut String, record: &Record) {
     }
     if !instrument.is_empty() {
         out.push_str(&instrument.html());
+    }
+    let mut drivers = Table::new(
+        "How the distortion goes with readings, for one unit of each",
+        &[
+            Column::Text("Reading"),
+            Column::Number("m"),
+            Column::Number("cos"),
+            Column::Number("sin"),
+            Column::Text("Unit"),
+        ],
+    );
+    for it in &shape.drivers {
+        let [cos, sin] = [&it.cos, &it.sin].map(|it| cells("", it)[1].clone());
+        drivers.row([
+            it.reading.clone(),
+            it.m.to_string(),
+            cos,
+            sin,
+            it.cos.unit.clone(),
+        ]);
+    }
+    if !drivers.is_empty() {
+        out.push_str(&drivers.html());
     }
     let mut air = Table::new(
         "The air’s terms, and how far the Sun leans on others",
@@ -187,21 +210,54 @@ pub(super) fn definitions(out: &mut String, record: &Record) {
     if !table.is_empty() {
         out.push_str(&table.html());
     }
-    let quadrupole = &shape.quadrupole;
+    gravity(out, &shape.quadrupole);
+}
+
+/// What the oblateness says of the gravity field.
+fn gravity(out: &mut String, quadrupole: &Quadrupole) {
     let mut table = Table::new("What the oblateness says of the gravity field", &QUANTITY);
-    let rows: [(&str, &Quantity); 3] = [
-        ("J2", &quadrupole.j2),
+    let figure = format!(
+        "Oblateness of surface rotation alone, law: {}",
+        quadrupole.rotation_law
+    );
+    let rows: [(&str, &Quantity); 7] = [
+        (&figure, &quadrupole.rotation_figure),
+        ("Oblateness beyond it", &quadrupole.excess),
+        ("J2, with J4 = 0", &quadrupole.j2),
+        ("J2, with J4 free", &quadrupole.j2_beside_j4),
+        ("J4", &quadrupole.j4),
         (
             "Added to the perihelion advance of the innermost planet",
             &quadrupole.perihelion,
         ),
         (
-            "Oblateness of surface rotation alone",
-            &quadrupole.rotation_figure,
+            "Its advance by general relativity",
+            &quadrupole.perihelion_by_relativity,
         ),
     ];
     for (name, quantity) in rows {
         table.row(cells(name, quantity));
     }
     out.push_str(&table.html());
+    let mut laws = Table::new(
+        "The same by each rotation law, without the spread between them",
+        &[
+            Column::Text("Law"),
+            Column::Number("Rotation alone, mas"),
+            Column::Number("Excess, mas"),
+            Column::Number("J2"),
+            Column::Number("J4"),
+        ],
+    );
+    for it in &quadrupole.by_law {
+        let [excess, j2, j4] = [&it.excess, &it.j2, &it.j4].map(|it| cells("", it)[1].clone());
+        let figure = numbers::beside(it.rotation_figure_mas, it.excess.sigma);
+        laws.row([it.law.clone(), figure, excess, j2, j4]);
+    }
+    if !laws.is_empty() {
+        out.push_str(&laws.html());
+    }
+    if let Some(it) = &quadrupole.note {
+        out.push_str(&paragraph(it));
+    }
 }

@@ -6,12 +6,12 @@ mod station;
 mod words;
 
 pub(super) use words::{
-    FORMULAS, KINDS, MOMENTS, MOUNTS, PARITIES, PROJECTIONS, SCALES_OF, VAPOURS,
+    FORMULAS, KINDS, MOMENTS, MOUNTS, PARITIES, PROJECTIONS, ROTATIONS, SCALES_OF, VAPOURS,
 };
 
 use super::keys::Absent::Open;
 use super::keys::{Form, Key, Table};
-use model::{LIMB, REFRACTIVITY, TIME, WEATHER};
+use model::{GRAVITY, LIMB, REFRACTIVITY, TIME, WEATHER};
 use run::{ENVIRONMENT, HEADERS, SEQUENCE};
 use station::{CALIBRATION, CAMERA, FILTER, INSTRUMENT, SITE, TELESCOPE};
 
@@ -74,6 +74,12 @@ pub(super) static SESSION: Table = Table::plain(
             Form::Table(&LIMB),
             Open,
             "How the limb is measured.",
+        ),
+        Key::new(
+            "gravity",
+            Form::Table(&GRAVITY),
+            Open,
+            "What the figure is compared with.",
         ),
         Key::new(
             "headers",

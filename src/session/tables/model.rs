@@ -1,6 +1,6 @@
 //! Keys of the air, the time and the measurement.
 
-use super::words::{FORMULAS, MOMENTS, VAPOURS};
+use super::words::{FORMULAS, MOMENTS, ROTATIONS, VAPOURS};
 use crate::session::keys::Absent::{Number, Open, Whole, Word};
 use crate::session::keys::{Form, Key, Table};
 
@@ -240,4 +240,14 @@ pub(super) static LIMB: Table = Table::plain(
             "Width of the annulus outside the limb; from blur and scale without it.",
         ),
     ],
+);
+
+pub(super) static GRAVITY: Table = Table::plain(
+    "What the measured figure is compared with.",
+    &[Key::new(
+        "rotation",
+        Form::Choice(ROTATIONS),
+        Word("middle"),
+        "Published law of the surface's rotation; middle: of the range of the three that depend on latitude.",
+    )],
 );

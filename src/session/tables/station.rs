@@ -175,12 +175,20 @@ pub(super) static CAMERA: Table = Table::plain(
 
 pub(super) static INSTRUMENT: Table = Table::plain(
     "What is known of the optics by other means.",
-    &[Key::above(
-        "distortion_sigma_mas",
-        ("mas", 0.0, 1e5),
-        Open,
-        "Free of limb distortion of m = 2, 3, 4 to this, each.",
-    )],
+    &[
+        Key::above(
+            "distortion_sigma_mas",
+            ("mas", 0.0, 1e5),
+            Open,
+            "Free of limb distortion of m = 2, 3, 4 to this, each.",
+        ),
+        Key::above(
+            "drift_sigma_mas_per_hour",
+            ("mas/h", 0.0, 1e5),
+            Open,
+            "The distortion may drift, linear in time, each coefficient by so much; without it it stands still.",
+        ),
+    ],
 );
 
 pub(super) static CALIBRATION: Table = Table::plain(

@@ -20,6 +20,14 @@ pub(in crate::session) const FORMULAS: &[&str] = &[
     "iag-1999",
     "mathar-2007",
 ];
+/// Names of the laws of the surface's rotation.
+pub(in crate::session) const ROTATIONS: &[&str] = &[
+    "middle",
+    "snodgrass-ulrich-1990",
+    "snodgrass-1983",
+    "howard-harvey-1970",
+    "uniform",
+];
 /// Names of what relative humidity is relative to.
 pub(in crate::session) const VAPOURS: &[&str] =
     &["water-giacomo", "water-iapws", "ice-below-zero-iapws"];
