@@ -17,7 +17,7 @@
 //! | `V` | covariance of the values: `u_i^2` on the diagonal, what two values share beside it |
 //! | `k`, `p` | number of values, of columns |
 //!
-//! Without anything shared and with one column it is the consensus of [`super::random_effects`]. What is shared by
+//! Without anything shared and with one column it is the consensus of [`super::random_effects()`]. What is shared by
 //! all values cannot be seen in their scatter and stays in the error of the mean.
 //!
 //! # Valid for

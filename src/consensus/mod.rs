@@ -3,12 +3,12 @@
 //!
 //! Functions take slices of [`Value`] in one unit and give everything in that unit. Nothing here
 //! knows of the Sun. Values that share a cause of error go through [`correlated`], all others through
-//! [`weighted_mean`] and [`random_effects`].
+//! [`weighted_mean`] and [`random_effects()`].
 //!
 //! | question | function |
 //! |----------|----------|
 //! | the mean, and whether the values agree | [`weighted_mean`] |
-//! | the mean when they do not | [`random_effects`] |
+//! | the mean when they do not | [`random_effects()`] |
 //! | who is off, and from whom | [`equivalence_of_consistent`], [`equivalence_of_inconsistent`], [`pairwise`] |
 //! | who decides the answer | [`leave_one_out`] |
 //! | the same with shared causes of error, or by groups | [`correlated::fit`] |

@@ -21,7 +21,7 @@
 //! # Accuracy
 //!
 //! 0.1 mas or 0.1 percent for a given limb and blur (`tests/published/footing_limb.rs`). What is not
-//! known of limb and blur is in the steps of [`super::carry`].
+//! known of limb and blur is in the steps of [`super::carry()`].
 //!
 //! # Source
 //!

@@ -1,7 +1,7 @@
 //! One footing for values of the Sun's radius and oblateness from different instruments: 1 AU, radius
 //! not diameter, B0 = 0, one definition of the limb, one blur, one wavelength.
 //!
-//! [`sheet::read`] takes published values from a table, [`carry`] carries one of them step by step,
+//! [`sheet::read`] takes published values from a table, [`carry()`] carries one of them step by step,
 //! each step with its uncertainty. What several values share (the limb darkening, the thickness of
 //! the Sun's edge, the height of the limb by wavelength) keeps its sign and its name, so that
 //! [`Carried::covariance`] knows how they hang together.
