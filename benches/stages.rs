@@ -1,13 +1,16 @@
-//! Time of the stages, each with its answer asserted: reading a frame, its limb, a whole reduction.
+//! Time of the stages, each with its answer asserted: reading a frame, its limb, its sharpness, adding
+//! it to the stack, a whole reduction.
 //!
 //! The figures that matter are ratios within one run: `limb/N` over `read/N` is what the limb of a
-//! frame costs beside reading the same frame through the FITS library into floats on one thread.
+//! frame costs beside reading the same frame through the FITS library into floats on one thread, and
+//! `frame/stack/N` what adding it to the stack costs on all threads.
 
 use criterion::{BenchmarkId, Criterion, criterion_group, criterion_main};
 use ndarray::Array2;
 use std::f64::consts::TAU;
 use std::hint::black_box;
 use std::path::{Path, PathBuf};
+use truelimb::air::{Conditions, Site, StationAir};
 use truelimb::calibrate::{Calibration, Detector};
 use truelimb::disk::{Darkening, DarkeningLaw, SolarEdge};
 use truelimb::frames::{CubeShape, FitsWriter, Reader, list};
@@ -16,6 +19,10 @@ use truelimb::limb::template::{EdgeTable, blur_of_width};
 use truelimb::limb::{self, Extraction};
 use truelimb::optics::{Exposure, LimbOptics, Telescope};
 use truelimb::pipeline::{self, Options, Silent};
+use truelimb::refraction::{Air, Moment, Plate};
+use truelimb::session::{Projection, ScaleOf};
+use truelimb::sky::{Orientation, Parity, SunPlace};
+use truelimb::stack::{Placed, Stack, edge_energy};
 use truelimb::{session, synth};
 
 const SECTORS: usize = 120;
@@ -29,6 +36,7 @@ struct Camera {
     annulus: Annulus,
     calibration: Calibration,
     frame: Array2<f32>,
+    centre_px: (f64, f64),
     blur: f64,
     model: Vec<f64>,
     slope: Vec<f64>,
@@ -77,6 +85,7 @@ impl Camera {
             annulus,
             calibration: Calibration::neutral(size, size),
             frame,
+            centre_px: centre,
             blur,
             model,
             slope,
@@ -148,6 +157,89 @@ fn read_and_limb(c: &mut Criterion) {
     }
 }
 
+/// A moment 40 degrees from the zenith of a mountain station.
+fn moment() -> Moment {
+    let site = Site {
+        latitude_rad: 0.54,
+        height_m: 2240.0,
+    };
+    let conditions = Conditions {
+        pressure_hpa: 778.0,
+        temperature_c: 9.0,
+        relative_humidity: 0.35,
+        co2_ppm: 420.0,
+    };
+    let zenith_true_rad = 40_f64.to_radians();
+    let air =
+        Air::over(&StationAir::new(site, conditions, 3.0), 550.0).expect("the air of a station");
+    Moment {
+        sun: SunPlace {
+            zenith_true_rad,
+            azimuth_rad: 3.0,
+            hour_angle_rad: -0.4,
+            right_ascension_rad: 1.0,
+            declination_rad: 0.3,
+            parallactic_rad: -0.9,
+            axis_rad: 0.2,
+            b0_rad: 0.1,
+            l0_rad: 1.0,
+            distance_au: 1.0045,
+            radial_velocity_m_s: 0.0,
+        },
+        orientation: Orientation {
+            y_position_angle_rad: 0.35,
+            parity: Parity::Sky,
+        },
+        map: air.map(zenith_true_rad).expect("a Sun above the horizon"),
+        refractivity: air.refractivity,
+    }
+}
+
+fn sharpness_and_stack(c: &mut Criterion) {
+    let moment = moment();
+    let mut group = c.benchmark_group("frame");
+    group.sample_size(20);
+    for size in [1024, 2048] {
+        let camera = Camera::new(size);
+        let scale = 2100.0 / size as f64;
+        let placed = Placed {
+            moment: &moment,
+            plate: Plate {
+                projection: Projection::Arc,
+                scale_of: ScaleOf::Apparent,
+            },
+            scale_arcsec_px: scale,
+            flat_inverse: camera.calibration.flat_inverse(),
+            detector: Detector {
+                gain_e_adu: 12.0,
+                read_noise_e: 8.0,
+                saturation_adu: None,
+            },
+        };
+        let mut stack = Stack::new(RADIUS_ARCSEC, scale);
+        group.bench_function(BenchmarkId::new("stack", size), |b| {
+            b.iter(|| stack.add(camera.frame.view(), camera.centre_px, 1.0, &placed));
+        });
+        let frames = stack.frames as f64;
+        let means = stack.into_means();
+        let middle = means.size() / 2;
+        // Darkened towards the limb from the level at disk centre.
+        let at = means.image[[middle, middle + middle / 2]] / LEVEL_ADU;
+        assert!((0.8..1.0).contains(&at), "{at}");
+        assert!((means.weight[[middle, middle]] - frames).abs() < 1e-6 * frames);
+        let centre = (means.centre_px(), means.centre_px());
+        group.bench_function(BenchmarkId::new("sharpness", size), |b| {
+            b.iter(|| {
+                let energy = edge_energy(means.image.view(), centre, RADIUS_ARCSEC, 6.0, scale)
+                    .expect("an edge");
+                // An edge some arcsec wide: its energy is the inverse of some arcsec.
+                assert!((0.02..0.5).contains(&(energy / LEVEL_ADU.powi(2))));
+            });
+        });
+    }
+    group.finish();
+}
+
 fn whole_reduction(c: &mut Criterion) {
     let folder = tempfile::tempdir().expect("a folder");
     let mut scenario = synth::Scenario::default();
@@ -178,5 +270,5 @@ fn whole_reduction(c: &mut Criterion) {
     group.finish();
 }
 
-criterion_group!(stages, read_and_limb, whole_reduction);
+criterion_group!(stages, read_and_limb, sharpness_and_stack, whole_reduction);
 criterion_main!(stages);

@@ -82,6 +82,28 @@ impl Annulus {
         }
     }
 
+    /// Every other pixel of a chequerboard: two halves whose noise is independent.
+    #[must_use]
+    pub fn half(&self, odd: bool) -> Self {
+        let parity = i32::from(odd);
+        let offsets = self
+            .offsets
+            .iter()
+            .map(|it| {
+                let kept = it.dx.iter().zip(&it.dy);
+                let (dx, dy) = kept
+                    .filter(|(dx, dy)| (*dx + *dy).rem_euclid(2) == parity)
+                    .unzip();
+                Offsets { dx, dy }
+            })
+            .collect();
+        Self {
+            offsets,
+            directions: self.directions.clone(),
+            ..*self
+        }
+    }
+
     /// Number of sectors.
     pub fn sectors(&self) -> usize {
         self.offsets.len()

@@ -1,5 +1,6 @@
 //! The main job: the stages in order, each called once.
 
+pub mod air;
 mod assemble;
 mod band;
 mod correct;
@@ -8,6 +9,7 @@ mod error;
 mod limb_model;
 mod limb_table;
 pub mod measure;
+mod frame_table;
 pub mod products;
 pub mod single;
 mod solve;
@@ -71,6 +73,8 @@ pub struct Outcome {
     pub stack: Option<Stack>,
     /// The station's limbs as measured, for the tables.
     pub measured: Vec<MeasuredSequence>,
+    /// Variance of the limb's noise over what photons and read noise let expect, with its uncertainty.
+    pub noise: Option<(f64, f64)>,
 }
 
 /// Runs every stage once, in order.
@@ -183,14 +187,21 @@ fn stages(
     let selected = solve::select(&measured, &limbs)?;
     let model = limb_model::lines(session, &measured)?;
     let known = solve::known(session, &measured)?;
-    let shape = solve::shape(&selected, &known, &model)?;
+    let shape = solve::shape(&selected, &known, &model, options.seed)?;
     let has_pixels = measured.iter().all(|it| !it.from_table);
     let stacks = if options.stack && has_pixels {
-        stacking::combine(&measured, &limbs, &selected, &shape.kept, progress)?
+        stacking::combine(
+            &measured,
+            &limbs,
+            &selected,
+            &shape.kept,
+            model.blur,
+            progress,
+        )?
     } else {
         stacking::Stacks::none()
     };
-    let by_stack = stacking::shape(&stacks, &measured, &shape, &known, &model);
+    let by_stack = stacking::shape(&stacks, &shape, &known);
 
     let parts = assemble::Parts {
         session,
@@ -208,12 +219,14 @@ fn stages(
         sources: products::sources(session)?,
     };
     let (record, traces) = assemble::record(&parts);
+    let noise = seeing.noise.map(|it| (it.value, it.sigma));
     Ok(Outcome {
         record,
         traces,
         limbs,
         stack: stacks.whole,
         measured,
+        noise,
     })
 }
 

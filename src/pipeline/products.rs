@@ -117,16 +117,15 @@ fn stack(outcome: &Outcome, session: &Session, path: &Path) -> Result<(), Error>
     let au_m = crate::constants::ASTRONOMICAL_UNIT.value;
     let radius_m = crate::constants::SOLAR_RADIUS_NOMINAL.value;
     let radius_arcsec = (radius_m / (sun.distance_au * au_m)).asin() / crate::units::ARCSEC_RAD;
-    let mut cards = common(outcome, session);
     let centre = stack.centre_px() + 1.0;
-    cards.extend([
+    // Every plane says where it is, so that each of them opens as a map.
+    let place = [
         Card::text(
             "DATE-OBS",
             middle.middle_utc.to_iso(),
             "middle of the session",
         ),
         Card::text("DATE-AVG", middle.middle_utc.to_iso(), ""),
-        Card::text("BUNIT", "adu", ""),
         Card::text("WCSNAME", "Helioprojective-cartesian", ""),
         Card::text("CTYPE1", "HPLN-TAN", "to solar west"),
         Card::text("CTYPE2", "HPLT-TAN", "to solar north"),
@@ -150,13 +149,18 @@ fn stack(outcome: &Outcome, session: &Session, path: &Path) -> Result<(), Error>
         Card::real("CRLT_OBS", sun.b0_rad.to_degrees(), "[deg]"),
         Card::real("RSUN_REF", radius_m, "[m] IAU 2015 nominal"),
         Card::real("RSUN_OBS", radius_arcsec, "[arcsec] predicted, not fitted"),
+        Card::real("WAVELNTH", middle.setup.optics.wavelength_nm, "[nm]"),
+        Card::text("WAVEUNIT", "nm", ""),
+    ];
+    let mut cards = common(outcome, session);
+    cards.extend(place.clone());
+    cards.extend([
+        Card::text("BUNIT", "adu", ""),
         Card::real(
             "TL_RADIU",
             outcome.record.shape.radius.value.unwrap_or(f64::NAN),
             "[arcsec] fitted, at 1 AU",
         ),
-        Card::real("WAVELNTH", middle.setup.optics.wavelength_nm, "[nm]"),
-        Card::text("WAVEUNIT", "nm", ""),
         Card::integer("NSUMEXP", stack.frames as i64, "frames"),
     ]);
     if let Some(r0) = outcome.record.seeing.line_of_sight.value {
@@ -164,13 +168,14 @@ fn stack(outcome: &Outcome, session: &Session, path: &Path) -> Result<(), Error>
     }
     let mut file = FitsWriter::create(path)?;
     file.image_f32(None, &stack.image.mapv(|it| it as f32), &cards)?;
-    let squared = [Card::text("BUNIT", "adu2", "")];
+    let mut squared = place.to_vec();
+    squared.push(Card::text("BUNIT", "adu2", "variance of the mean"));
     file.image_f32(
         Some("VARIANCE"),
         &stack.variance.mapv(|it| it as f32),
         &squared,
     )?;
-    file.image_f32(Some("WEIGHT"), &stack.weight.mapv(|it| it as f32), &[])?;
+    file.image_f32(Some("WEIGHT"), &stack.weight.mapv(|it| it as f32), &place)?;
     file.finish()?;
     Ok(())
 }

@@ -3,8 +3,8 @@
 mod parts;
 
 use parts::{
-    budget, covariance, definitions, instrument, kept_curve, null_tests, refraction, seeing,
-    sequence, traces,
+    budget, covariance, definitions, instrument, kept_curve, kept_slope, null_tests, random_error,
+    refraction, seeing, sequence, traces,
 };
 
 use crate::result::record::*;
@@ -154,11 +154,21 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
                     else { ShapeQuantity::not_separated("mas", REASON) },
                 difference_sigma: separated.then_some(0.43),
                 stacks: 8,
+                removed_mas: separated.then_some([-3.1, 0.4]),
+                sharpness: Some(StackSharpness {
+                    stack_per_arcsec: 0.242,
+                    mean_per_arcsec: 0.171,
+                    gain: 1.415,
+                    gain_predicted: 1.402,
+                    how: "energy of the edge".to_owned(),
+                }),
                 reason: (!separated).then(|| "the oblateness was not separated".to_owned()),
             },
             covariance: covariance(&terms, &units, scale),
             definitions: definitions(&radius, &oblateness),
             kept_curve: kept_curve(&mut noise, scale, &oblateness, &radius),
+            random_error: random_error(),
+            kept_slope: kept_slope(scale, &oblateness),
             quadrupole: Quadrupole {
                 j2: match which {
                     Session::Season => Quantity::measured(2.18e-7, 4.3e-7, "1"),
@@ -192,6 +202,7 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
                     else { Quantity::missing("h", "systematics alone exceed 0.5 mas") },
             },
             observed_over_predicted: Quantity::measured(1.04, 0.05, "1"),
+            harmonics: Vec::new(),
         },
         refraction: sequences.iter().enumerate().map(|(k, it)| refraction(k, it.2)).collect(),
         selection: SelectionRecord {
@@ -208,6 +219,8 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
             blind_to_shape: "the criterion is the same for any change of radius, ellipse or P4"
                 .to_owned(),
             gain: 1.13,
+            sigma_all_and_kept_mas: separated.then_some([12.7 * scale, 11.2 * scale]),
+            weighting_gain: separated.then_some(1.06),
         },
         budget,
         sequences: sequences

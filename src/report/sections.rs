@@ -128,6 +128,20 @@ fn selection(out: &mut String, record: &Record) {
         selection.criterion.trim_end_matches('.'),
         selection.blind_to_shape.trim_end_matches('.')
     )));
+    if let Some([all, kept]) = selection.sigma_all_and_kept_mas {
+        let weighed = selection.weighting_gain.map_or_else(String::new, |it| {
+            format!(
+                "; at equal weights it would be {} times as large",
+                numbers::significant(it, 3)
+            )
+        });
+        out.push_str(&paragraph(&format!(
+            "Random error of the oblateness: {} mas with all usable frames, {} mas with the kept \
+             ones{weighed}.",
+            numbers::sigma(all),
+            numbers::sigma(kept)
+        )));
+    }
 }
 
 fn left_out(out: &mut String, record: &Record, traces: &Traces) {

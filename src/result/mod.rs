@@ -1,5 +1,6 @@
 //! What the program found, in the form in which it is written to files.
 
+pub mod air;
 pub mod combined;
 pub mod record;
 pub mod recovery;

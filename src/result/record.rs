@@ -194,9 +194,31 @@ pub struct ByStack {
     pub difference_sigma: Option<f64>,
     /// How many stacks went into the fit.
     pub stacks: usize,
+    /// What resampling and the residual motion's blur had added to the stacks' radius and oblateness,
+    /// predicted by noise-free twins and taken off, mas.
+    #[serde(default)]
+    pub removed_mas: Option<[f64; 2]>,
+    /// How much sharper the stacks are than the mean of the frames.
+    #[serde(default)]
+    pub sharpness: Option<StackSharpness>,
     /// Why there is no value.
     #[serde(skip_serializing_if = "Option::is_none", default)]
     pub reason: Option<String>,
+}
+
+/// How much sharper the stacks are than the plain mean of the frames.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct StackSharpness {
+    /// Energy of the edge in the stacks, 1/arcsec.
+    pub stack_per_arcsec: f64,
+    /// The same in the mean of the frames as they came.
+    pub mean_per_arcsec: f64,
+    /// The first over the second.
+    pub gain: f64,
+    /// That ratio as the limbs of the single frames predict it.
+    pub gain_predicted: f64,
+    /// What was measured.
+    pub how: String,
 }
 
 /// Radius and oblateness by one definition of the limb.
@@ -229,6 +251,91 @@ pub struct KeptPoint {
     pub radius_arcsec: f64,
     /// Its random standard uncertainty, mas.
     pub radius_sigma_mas: f64,
+}
+
+/// Inflation of the variance of a mean by correlation in time, one harmonic.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct FactorRecord {
+    /// Harmonic number.
+    pub m: usize,
+    /// Variance of a mean over that of independent frames.
+    pub factor: f64,
+}
+
+/// The same by batches of one length, m = 2.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct BatchRecord {
+    /// Length of a batch, seconds.
+    pub length_s: f64,
+    /// Variance of batch means over that of independent frames.
+    pub factor: f64,
+    /// Degrees of freedom behind it.
+    pub degrees_of_freedom: f64,
+}
+
+/// The random error once more, by resampling runs of frames.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct BootstrapRecord {
+    /// Standard error of the radius, mas.
+    pub sigma_radius_mas: f64,
+    /// Standard error of the oblateness, mas; null where it is not separated.
+    pub sigma_oblateness_mas: Option<f64>,
+    /// Standard error of P4, mas; null where it is not separated.
+    pub sigma_p4_mas: Option<f64>,
+    /// Frames in a run.
+    pub run_frames: usize,
+    /// Runs in the session.
+    pub runs: usize,
+    /// Resampled sessions.
+    pub resamples: usize,
+    /// Seed of the drawing.
+    pub seed: u64,
+}
+
+/// How the random error was judged.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct RandomErrorRecord {
+    /// Inflation by correlation in time: the larger of initial positive sequence and batch means.
+    pub correlation_factor: Vec<FactorRecord>,
+    /// Factor on the variances where sequences scatter more than their frames say; 1 where not.
+    pub excess: f64,
+    /// Degrees of freedom of the intervals.
+    pub degrees_of_freedom: f64,
+    /// The inflation by batches of growing length, m = 2.
+    pub batches: Vec<BatchRecord>,
+    /// Whether it stays as it is in longer batches; null where there are too few to say.
+    pub converged: Option<bool>,
+    /// The check by resampling; null where there is nothing to resample.
+    pub bootstrap: Option<BootstrapRecord>,
+}
+
+/// How a quantity runs with the kept fraction, tested against zero.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct SlopeTest {
+    /// Change from none to all of the frames kept, mas.
+    pub slope_mas: f64,
+    /// Its standard uncertainty; frames that several fractions share and correlation in time are in it.
+    pub sigma_mas: f64,
+    /// Slope over its standard uncertainty.
+    pub pull: f64,
+    /// Probability of a slope as far from zero by chance.
+    pub chance: f64,
+    /// Degrees of freedom of the uncertainty.
+    pub degrees: f64,
+}
+
+/// The slopes of the curve of the shape against the kept fraction.
+#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
+pub struct KeptSlope {
+    /// Of the oblateness; null where it is not separated or there are too few frames.
+    pub oblateness: Option<SlopeTest>,
+    /// Of the radius.
+    pub radius: Option<SlopeTest>,
+    /// The kept fractions that the line was laid through.
+    pub fractions: Vec<f64>,
+    /// Why there is no slope.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub reason: Option<String>,
 }
 
 /// The covariance of the fitted terms.
@@ -318,6 +425,11 @@ pub struct ShapeRecord {
     pub definitions: Vec<DefinitionRecord>,
     /// Shape against kept fraction.
     pub kept_curve: Vec<KeptPoint>,
+    /// How the random error was judged.
+    pub random_error: RandomErrorRecord,
+    /// The slopes of that curve against zero.
+    #[serde(default)]
+    pub kept_slope: KeptSlope,
     /// J2 and the perihelion.
     pub quadrupole: Quadrupole,
 }
@@ -369,6 +481,38 @@ pub struct SeeingRecord {
     pub independent_frames: Vec<PowerRecord>,
     /// The layers of the fit.
     pub layers: Vec<LayerRecord>,
+    /// The instrument's own blur, standard deviation on one axis, from the blur of sequences of
+    /// different seeing against their motion.
+    #[serde(default)]
+    pub own_blur: Quantity,
+    /// Variance of the limb's noise, by halves of the pixels, over what photons and read noise let
+    /// expect.
+    #[serde(default)]
+    pub noise_over_expected: Quantity,
+}
+
+/// The floor that turbulence sets to one harmonic: standard deviations of one coefficient, mas at 1
+/// AU.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct FloorRecord {
+    /// Harmonic number.
+    pub m: usize,
+    /// Of one frame, predicted from the seeing.
+    pub frame_predicted_mas: f64,
+    /// Of one frame, observed, noise taken off.
+    pub frame_observed_mas: f64,
+    /// Observed over predicted, one frame.
+    pub observed_over_predicted: Quantity,
+    /// Mean length of a sequence, s.
+    pub time_s: f64,
+    /// Correlation time, predicted, s.
+    pub correlation_time_s: f64,
+    /// Of the mean over a sequence, predicted from the seeing by frozen flow.
+    pub mean_predicted_mas: f64,
+    /// Of the mean over a sequence, observed from blocks within it; null where it is too short.
+    pub mean_observed_mas: Option<f64>,
+    /// Observed over predicted, mean over a sequence: above 1 the air was slower than frozen flow.
+    pub mean_observed_over_predicted: Quantity,
 }
 
 /// The air's share of the error.
@@ -382,6 +526,9 @@ pub struct TurbulenceRecord {
     pub hours_to: HoursTo,
     /// Observed scatter over the predicted floor, per frame, m = 2.
     pub observed_over_predicted: Quantity,
+    /// The floor of every harmonic, of a frame and of a sequence's mean.
+    #[serde(default)]
+    pub harmonics: Vec<FloorRecord>,
 }
 
 /// Hours of observation to a goal.
@@ -454,6 +601,13 @@ pub struct SelectionRecord {
     pub blind_to_shape: String,
     /// Error with all usable frames weighted over the error with this selection; above 1 it paid.
     pub gain: f64,
+    /// Random error of the oblateness with all usable frames and with the kept ones, mas; null where
+    /// it is not separated.
+    #[serde(default)]
+    pub sigma_all_and_kept_mas: Option<[f64; 2]>,
+    /// Random error with the same frames at equal weights over the error at the weights used.
+    #[serde(default)]
+    pub weighting_gain: Option<f64>,
 }
 
 /// One line of the error budget.
@@ -617,6 +771,13 @@ pub struct FrameTrace {
     pub cos2_mas: f64,
     /// `sin 2 theta` on the detector, air taken out, mas.
     pub sin2_mas: f64,
+    /// Detector angle of celestial north, degrees.
+    pub north_deg: f64,
+    /// Mean radius minus the reference, then cosine and sine of m = 2, 3, 4 on the detector, air
+    /// taken out, mas at 1 AU.
+    pub harmonics_mas: [f64; 7],
+    /// How much one mas of each of these moves radius, oblateness and P4; zero where not kept.
+    pub influence: [[f64; 7]; 3],
 }
 
 /// The mean limb about the fitted circle, for the figure.

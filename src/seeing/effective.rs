@@ -79,9 +79,11 @@ pub fn effective_count_of_power(time_s: &[f64], series: &[&[f64]]) -> Option<f64
 /// Autocovariances at multiples of the median spacing, pooled over series that share their times.
 #[derive(Clone, Debug)]
 pub(super) struct Autocovariance {
-    gamma: Vec<f64>,
+    pub(super) gamma: Vec<f64>,
     /// Products behind each lag, all series together.
-    products: Vec<f64>,
+    pub(super) products: Vec<f64>,
+    /// Seconds from lag to lag.
+    pub(super) spacing_s: f64,
 }
 
 impl Autocovariance {
@@ -139,7 +141,11 @@ impl Autocovariance {
             })
             .collect();
         products[0] = total;
-        Some(Self { gamma, products })
+        Some(Self {
+            gamma,
+            products,
+            spacing_s,
+        })
     }
 
     /// `1 + 2 sum (1 - k/N) rho_k` over the initial positive sequence; at least 1/N.

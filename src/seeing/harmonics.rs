@@ -5,6 +5,7 @@
 //! ```text
 //! P_m   = 1/2 [ var(a_m) + var(b_m) ] N_eff / (N_eff - 1) / (1 - 1/N)     temporal mean removed
 //! dof_m = 2 (N_eff,m - 1) / (1 + q)
+//! P_0, dof_0: a_0 alone, half of the freedom
 //! q     = [ var_t(Q) - 1/M ] / (1 + 1/M),   Q_t = mean over M harmonics of (a^2 + b^2) / (2 P_m)
 //! ```
 //!
@@ -43,7 +44,7 @@ pub struct HarmonicSeries<'a> {
     pub time_s: &'a [f64],
     /// Cosine coefficients, `[frame][m]`, m = 0..=`m_max`.
     pub cos_mas: &'a Array2<f64>,
-    /// Sine coefficients, `[frame][m]`.
+    /// Sine coefficients, `[frame][m]`; that of m = 0 is never looked at.
     pub sin_mas: &'a Array2<f64>,
     /// Variance of one coefficient from photon and read noise, per m.
     pub noise_variance_mas2: &'a [f64],
@@ -103,7 +104,10 @@ pub fn harmonic_power(
         }
     }
     let raw: Vec<f64> = (0..orders)
-        .map(|m| 0.5 * (scatter(&cosines[m]) + scatter(&sines[m])))
+        .map(|m| match m {
+            0 => scatter(&cosines[0]),
+            _ => 0.5 * (scatter(&cosines[m]) + scatter(&sines[m])),
+        })
         .collect();
     let flicker_variance = flicker(&cosines, &sines, &raw, series.noise_variance_mas2);
     let power_mas2 = raw
@@ -113,7 +117,11 @@ pub fn harmonic_power(
         .collect();
     let degrees_of_freedom = n_effective
         .iter()
-        .map(|n| 2.0 * (n - 1.0) / (1.0 + flicker_variance))
+        .enumerate()
+        .map(|(m, n)| {
+            let coefficients = if m == 0 { 1.0 } else { 2.0 };
+            coefficients * (n - 1.0) / (1.0 + flicker_variance)
+        })
         .collect();
     Ok(HarmonicPower {
         power_mas2,
@@ -201,4 +209,47 @@ fn flicker(cosines: &[Vec<f64>], sines: &[Vec<f64>], raw: &[f64], noise: &[f64])
         .collect();
     let per_harmonic = 1.0 / used.len() as f64;
     ((scatter(&index) - per_harmonic) / (1.0 + per_harmonic)).max(0.0)
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+
+    #[test]
+    fn the_mean_radius_has_one_coefficient() {
+        // Whatever stands where a sine of m = 0 would be: nothing, as from a projection on harmonics,
+        // or anything else.
+        let frames = 40;
+        let time_s: Vec<f64> = (0..frames).map(|k| k as f64).collect();
+        let cos_mas = Array2::from_shape_fn((frames, 8), |(k, m)| {
+            if (k * (m + 3) + k / 7) % 2 == 0 {
+                10.0
+            } else {
+                -10.0
+            }
+        });
+        let power = |first: f64| {
+            let mut sin_mas = cos_mas.clone();
+            sin_mas.column_mut(0).fill(first);
+            let series = HarmonicSeries {
+                time_s: &time_s,
+                cos_mas: &cos_mas,
+                sin_mas: &sin_mas,
+                noise_variance_mas2: &[0.0; 8],
+                zenith_rad: 0.0,
+                sector_rad: 0.05,
+                limb_radius_rad: 4.65e-3,
+                exposure_s: 0.0,
+            };
+            harmonic_power(0, &series).unwrap()
+        };
+        let (none, other) = (power(0.0), power(3.0));
+        assert_eq!(none.power_mas2, other.power_mas2);
+        let n = none.n_effective[0];
+        let wanted = scatter(&cos_mas.column(0).to_vec()) * n / (n - 1.0);
+        assert!((none.power_mas2[0] / wanted - 1.0).abs() < 1e-12);
+        let per_coefficient = none.degrees_of_freedom[0] / (n - 1.0);
+        let of_two = none.degrees_of_freedom[2] / (none.n_effective[2] - 1.0);
+        assert!((of_two / per_coefficient - 2.0).abs() < 1e-12);
+    }
 }

@@ -65,14 +65,8 @@ pub struct Contribution {
     pub how: String,
 }
 
-/// Sine terms about the solar axis, zero for the Sun.
-#[derive(Clone, Copy, Debug, PartialEq)]
-pub struct SineTerms {
-    /// m = 2: value and standard uncertainty, mas.
-    pub second_mas: (f64, f64),
-    /// m = 4.
-    pub fourth_mas: (f64, f64),
-}
+/// Two terms about the solar axis that are zero for the Sun: value and standard uncertainty, mas.
+pub type NullTerms = [(f64, f64); 2];
 
 /// The fitted shape.
 #[derive(Clone, Debug, PartialEq)]
@@ -87,12 +81,16 @@ pub struct Fit {
     pub covariance: DMatrix<f64>,
     /// Where the variances come from.
     pub contributions: Vec<Contribution>,
+    /// How much one unit of each harmonic of each observation moves radius, oblateness and `R c4`.
+    pub influence: Vec<[Component; 3]>,
     /// Chi square of the blocks' m = 2 and 4 and its degrees of freedom.
     pub chi2: (f64, f64),
     /// Factor on the blocks' variances where they scatter more than their frames say.
     pub excess: f64,
     /// Degrees of freedom behind the random error.
     pub degrees: f64,
+    /// Answer of radius and oblateness to each component of each block's mean, in the blocks' order.
+    pub gain: [Vec<Component>; 2],
     /// Whether the distortion was free.
     pub free_instrument: bool,
     /// Slopes against readings.
@@ -247,24 +245,68 @@ pub fn sine_terms(
     blocks: &[Block],
     known: &Known,
     separability: &Separability,
-) -> Option<SineTerms> {
+) -> Option<NullTerms> {
     if !(separability.oblateness && separability.p4) {
         return None;
     }
+    let sine = |m: usize| (m, std::f64::consts::FRAC_PI_2 / m as f64);
+    null_terms(
+        observations,
+        blocks,
+        known,
+        separability,
+        [sine(2), sine(4)],
+    )
+}
+
+/// Largest mean of `e^(3 i alpha)` at which a term of the Sun is told from one of the instrument:
+/// beyond it its error is more than five times that of a term standing alone.
+const THIRD_TURNED: f64 = 0.98;
+
+/// The m = 3 cosine (north limb against south) and sine (east limb against west) about the solar axis,
+/// fitted beside everything else; none where the axis did not turn enough on the detector.
+pub fn odd_terms(
+    observations: &[Observation],
+    blocks: &[Block],
+    known: &Known,
+    separability: &Separability,
+) -> Option<NullTerms> {
+    let (mut c, mut s, mut total) = (0.0, 0.0, 0.0);
+    for o in observations {
+        c += o.weight * (3.0 * o.axis_rad).cos();
+        s += o.weight * (3.0 * o.axis_rad).sin();
+        total += o.weight;
+    }
+    if known.distortion_sigma_mas.is_none() && !(c.hypot(s) < THIRD_TURNED * total) {
+        return None;
+    }
+    let quarter = std::f64::consts::FRAC_PI_6;
+    null_terms(
+        observations,
+        blocks,
+        known,
+        separability,
+        [(3, 0.0), (3, quarter)],
+    )
+}
+
+/// Two terms `cos m (theta - axis - turn)`, each `(m, turn)`, fitted beside everything else.
+fn null_terms(
+    observations: &[Observation],
+    blocks: &[Block],
+    known: &Known,
+    separability: &Separability,
+    terms: [(usize, f64); 2],
+) -> Option<NullTerms> {
     let mut unknowns = unknowns(blocks, known, separability);
     let at = unknowns.len();
-    for m in [2_usize, 4] {
-        let quarter = std::f64::consts::FRAC_PI_2 / m as f64;
-        unknowns.push(Unknown::new("sine of the Sun", "mas", None, move |o| {
-            about(m, o.axis_rad + quarter, 1.0)
+    for (m, turn) in terms {
+        unknowns.push(Unknown::new("null", "mas", None, move |o| {
+            about(m, o.axis_rad + turn, 1.0)
         }));
     }
     let it = solve(observations, blocks, known, &unknowns, 1.0).ok()?;
-    let term = |i: usize| (it.values[i], it.covariance[(i, i)].sqrt());
-    Some(SineTerms {
-        second_mas: term(at),
-        fourth_mas: term(at + 1),
-    })
+    Some([at, at + 1].map(|i| (it.values[i], it.covariance[(i, i)].sqrt())))
 }
 
 /// The unknowns in their fixed order: Sun, instrument, air, station, layers' tilt by sequence.
@@ -454,7 +496,13 @@ fn solve(
         })?
         .inverse();
     let covariance = DMatrix::from_fn(n, n, |i, j| inverse[(i, j)] / (scale[i] * scale[j]));
-    let values = &covariance * (weighted.transpose() * &data);
+    let response = &covariance * weighted.transpose();
+    let values = &response * &data;
+    let gain = [RADIUS, OBLATENESS].map(|i| {
+        (0..blocks.len())
+            .map(|b| std::array::from_fn(|c| response[(i, b * COMPONENTS + c)]))
+            .collect()
+    });
     let residual = &data - &design * &values;
     let mut chi2 = (0.0, 0.0);
     for b in 0..blocks.len() {
@@ -478,18 +526,19 @@ fn solve(
         0.0
     };
     chi2.1 -= fitted - free_third;
-    let frames: usize = blocks.iter().map(|it| it.frames.len()).sum();
-    let degrees = (2.0 * (frames as f64 - blocks.len() as f64)).max(2.0);
+    let degrees = blocks.iter().map(|it| it.degrees).sum::<f64>().max(2.0);
     Ok(Fit {
         terms: unknowns.iter().map(|it| it.name.clone()).collect(),
         units: unknowns.iter().map(|it| it.unit).collect(),
         contributions: contributions(&covariance, &information, &prior, known, unknowns),
         slopes: slopes(known, unknowns, &values, &covariance),
+        influence: by_observation(observations, blocks, &response),
         values,
         covariance,
         chi2,
         excess,
         degrees,
+        gain,
         free_instrument: known.distortion_sigma_mas.is_none(),
     })
 }
@@ -497,6 +546,24 @@ fn solve(
 /// Whether an unknown is a driver's of m = 3, whose components are not in chi square.
 fn driven_third(name: &str) -> bool {
     name.starts_with(DRIVER) && name.contains("m=3")
+}
+
+/// The answer of radius, oblateness and `R c4` to every observation, through its block's mean.
+fn by_observation(
+    observations: &[Observation],
+    blocks: &[Block],
+    response: &DMatrix<f64>,
+) -> Vec<[Component; 3]> {
+    let mut out = vec![[[0.0; COMPONENTS]; 3]; observations.len()];
+    for (b, block) in blocks.iter().enumerate() {
+        let total: f64 = block.frames.iter().map(|&k| observations[k].weight).sum();
+        for &k in &block.frames {
+            let share = observations[k].weight / total;
+            out[k] = [RADIUS, OBLATENESS, P4]
+                .map(|i| std::array::from_fn(|c| share * response[(i, b * COMPONENTS + c)]));
+        }
+    }
+    out
 }
 
 /// Precision of what is known before: independent terms, and the layers' tilt as a first-order

@@ -35,16 +35,18 @@
 //! Generalised least squares with prior knowledge; singular values for what can be told apart; GUM
 //! (JCGM 100:2008) for the budget. Legendre coefficients: any table.
 
+mod bootstrap;
 mod design;
 mod driver;
 mod fit;
 mod noise;
 mod separation;
 
+pub use bootstrap::{Bootstrap, bootstrap};
 pub use design::{COMPONENTS, Component, sun_columns};
 pub use driver::{Driver, DriverSlope};
-pub use fit::{Contribution, Fit, Known, RefractivityInput, SineTerms, fit, sine_terms};
-pub use noise::{Block, blocks};
+pub use fit::{Contribution, Fit, Known, NullTerms, RefractivityInput, fit, odd_terms, sine_terms};
+pub use noise::{Block, Correlation, Growth, blocks};
 pub use separation::{Separability, judge};
 
 use crate::units::MAS_RAD;

@@ -39,6 +39,8 @@ pub struct Block {
     pub mean_mas: Component,
     /// Variance of the mean.
     pub variance_mas2: Component,
+    /// Degrees of freedom behind the variance, frames that say the same counted once.
+    pub degrees: f64,
 }
 
 /// A block is cut where it grows longer than this, so that slow changes of the geometry stay in it.
@@ -50,19 +52,49 @@ const PRIOR_DOF: f64 = 10.0;
 /// Harmonic of each component.
 const HARMONIC: [usize; COMPONENTS] = [0, 2, 2, 3, 3, 4, 4];
 
-/// Blocks with means and variances, and the factors `f_m` for m = 0, 2, 3, 4.
-pub fn blocks(observations: &[Observation]) -> (Vec<Block>, [f64; 5], f64) {
+/// How the variance of a mean grows with the length of the batches it is judged by.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct Growth {
+    /// Frames in a batch.
+    pub frames: usize,
+    /// Its length, seconds.
+    pub length_s: f64,
+    /// Variance of batch means over that of independent frames.
+    pub factor: f64,
+    /// Degrees of freedom.
+    pub degrees: f64,
+}
+
+/// What correlation in time does to the variance of a mean.
+#[derive(Clone, Debug, PartialEq)]
+pub struct Correlation {
+    /// The factors `f_m` for m = 0, 2, 3, 4, by m.
+    pub factor: [f64; 5],
+    /// The factor for m = 2 by batches of growing length.
+    pub growth: Vec<Growth>,
+}
+
+impl Correlation {
+    /// Whether longer batches leave the variance as it is; none where there are too few batches to
+    /// say. The longest batches with enough degrees of freedom must not exceed the factor by more than
+    /// chance makes of them in 1 case of 100.
+    pub fn converged(&self) -> Option<bool> {
+        use statrs::distribution::{ChiSquared, ContinuousCDF};
+        let last = self.growth.iter().rev().find(|it| it.degrees >= 8.0)?;
+        let limit = ChiSquared::new(last.degrees).ok()?.inverse_cdf(0.99) / last.degrees;
+        Some(last.factor <= self.factor[2] * limit)
+    }
+}
+
+/// Blocks with means and variances, and what correlation in time does to them.
+pub fn blocks(observations: &[Observation]) -> (Vec<Block>, Correlation) {
     let groups = groups(observations);
     let residuals = residuals(observations, &groups);
     let mut factor = [1.0; 5];
-    let mut dof = 0.0;
     for m in [0, 2, 3, 4] {
-        let (it, batches) = correlation_factor(observations, &groups, &residuals, m);
-        factor[m] = it;
-        if m == 2 {
-            dof = batches;
-        }
+        factor[m] = correlation_factor(observations, &groups, &residuals, m);
     }
+    let growth = growth(observations, &groups, &residuals);
     let scatter = scatter(observations, &groups, &residuals);
     let out = groups
         .iter()
@@ -88,10 +120,11 @@ pub fn blocks(observations: &[Observation]) -> (Vec<Block>, [f64; 5], f64) {
                     };
                     factor[HARMONIC[c]] * own * squares / (sum * sum)
                 }),
+                degrees: 2.0 * (frames.len() as f64 - 1.0) / factor[2],
             }
         })
         .collect();
-    (out, factor, dof)
+    (out, Correlation { factor, growth })
 }
 
 /// Frames by sequence, cut at [`BLOCK_S`].
@@ -185,14 +218,13 @@ fn scatter(
         .collect()
 }
 
-/// The factor by which correlation in time inflates the variance of a mean, and the batches' degrees
-/// of freedom.
+/// The factor by which correlation in time inflates the variance of a mean.
 fn correlation_factor(
     observations: &[Observation],
     groups: &[Vec<usize>],
     residuals: &[Component],
     m: usize,
-) -> (f64, f64) {
+) -> f64 {
     let components: Vec<usize> = (0..COMPONENTS).filter(|&c| HARMONIC[c] == m).collect();
     let step = typical_step(observations, groups);
     let lags = groups.iter().map(Vec::len).max().unwrap_or(0).min(200);
@@ -218,7 +250,7 @@ fn correlation_factor(
         }
     }
     if zero == 0.0 || frames_at_zero < 16.0 {
-        return (1.0, 0.0);
+        return 1.0;
     }
     // Biased autocorrelation, as Geyer's sequence asks; the group means taken out cost 1/n at each lag.
     let groups_used = groups.iter().filter(|it| it.len() >= 8).count() as f64;
@@ -236,15 +268,44 @@ fn correlation_factor(
         sequence += 2.0 * smallest;
         k += 2;
     }
-    let (batch, dof) = batch_factor(groups, residuals, &components, sequence);
+    let length = ((50.0 * sequence) as usize).clamp(SHORTEST_BATCH, 100);
+    let (batch, dof) = batch_factor(groups, residuals, &components, length);
     let surely = 1.0 + 2.0 / dof.max(1.0).sqrt();
     let larger = if batch > surely && batch > sequence {
         batch
     } else {
         sequence
     };
-    (if larger > 1.0 { larger } else { 1.0 }, dof)
+    if larger > 1.0 { larger } else { 1.0 }
 }
+
+/// The factor for m = 2 by batches that double in length.
+fn growth(
+    observations: &[Observation],
+    groups: &[Vec<usize>],
+    residuals: &[Component],
+) -> Vec<Growth> {
+    let step = typical_step(observations, groups);
+    let longest = groups.iter().map(Vec::len).max().unwrap_or(0) / 2;
+    let mut out = Vec::new();
+    let mut frames = SHORTEST_BATCH;
+    while frames <= longest {
+        let (factor, degrees) = batch_factor(groups, residuals, &[1, 2], frames);
+        if degrees >= 4.0 {
+            out.push(Growth {
+                frames,
+                length_s: frames as f64 * step,
+                factor,
+                degrees,
+            });
+        }
+        frames *= 2;
+    }
+    out
+}
+
+/// Frames in the shortest batch.
+const SHORTEST_BATCH: usize = 10;
 
 /// Median spacing of neighbouring frames, seconds.
 fn typical_step(observations: &[Observation], groups: &[Vec<usize>]) -> f64 {
@@ -258,14 +319,14 @@ fn typical_step(observations: &[Observation], groups: &[Vec<usize>]) -> f64 {
     steps.get(steps.len() / 2).copied().unwrap_or(1.0)
 }
 
-/// Variance of batch means over what independent frames would give, and its degrees of freedom.
+/// Variance of means of batches of `length` frames over what independent frames would give, and its
+/// degrees of freedom.
 fn batch_factor(
     groups: &[Vec<usize>],
     residuals: &[Component],
     components: &[usize],
-    sequence: f64,
+    length: usize,
 ) -> (f64, f64) {
-    let length = ((50.0 * sequence) as usize).clamp(10, 100);
     let (mut between, mut within, mut dof, mut count) = (0.0, 0.0, 0.0, 0.0);
     for frames in groups {
         let batches = frames.len() / length;
@@ -290,5 +351,93 @@ fn batch_factor(
         (1.0, dof)
     } else {
         ((between / dof) / (within / count), dof)
+    }
+}
+
+#[cfg(test)]
+mod tests {
+    use super::*;
+    use rand::{RngExt, SeedableRng};
+    use rand_chacha::ChaCha8Rng;
+    use rand_distr::{Distribution, StandardNormal};
+
+    /// Frames half a second apart, in 8 sequences, whose harmonics forget themselves by `keep` a step.
+    fn frames(keep: f64, seed: u64) -> Vec<Observation> {
+        let mut random = ChaCha8Rng::seed_from_u64(seed);
+        let fresh = (1.0 - keep * keep).sqrt();
+        let mut out = Vec::new();
+        for sequence in 0..8 {
+            let mut state = [0.0; COMPONENTS];
+            for it in &mut state {
+                *it = StandardNormal.sample(&mut random);
+            }
+            for k in 0..80 {
+                for it in &mut state {
+                    let new: f64 = StandardNormal.sample(&mut random);
+                    *it = keep * *it + fresh * new;
+                }
+                out.push(Observation {
+                    sequence,
+                    time_s: 600.0 * sequence as f64 + 0.5 * f64::from(k),
+                    axis_rad: 0.0,
+                    zenith_rad: 0.0,
+                    b0_rad: 0.0,
+                    weight: 1.0,
+                    harmonics_mas: state.map(|it| 100.0 * it),
+                    noise_mas2: [1.0; COMPONENTS],
+                    air: crate::shape::AirResponse::default(),
+                });
+            }
+        }
+        out
+    }
+
+    /// Source: variance of the mean of a first-order process, `(1 + rho) / (1 - rho)`: any textbook.
+    #[test]
+    fn the_factor_is_that_of_a_first_order_process() {
+        for keep in [0.0, 0.5, 0.8] {
+            let wanted = (1.0 + keep) / (1.0 - keep);
+            let found: f64 = (0..20)
+                .map(|seed| blocks(&frames(keep, seed)).1.factor[2])
+                .sum::<f64>()
+                / 20.0;
+            assert!(
+                (found / wanted - 1.0).abs() < 0.15,
+                "{keep}: {found} {wanted}"
+            );
+        }
+    }
+
+    #[test]
+    fn another_order_in_time_never_shrinks_the_error() {
+        for seed in 0..10 {
+            let ordered = frames(0.7, seed);
+            let mut shuffled = ordered.clone();
+            let mut random = ChaCha8Rng::seed_from_u64(seed);
+            for sequence in shuffled.chunks_mut(80) {
+                for k in (1..sequence.len()).rev() {
+                    let other = random.random_range(0..=k);
+                    let (a, b) = (sequence[k].harmonics_mas, sequence[other].harmonics_mas);
+                    sequence[k].harmonics_mas = b;
+                    sequence[other].harmonics_mas = a;
+                }
+            }
+            let sum = |it: &[Observation]| -> f64 {
+                blocks(it).0.iter().map(|it| it.variance_mas2[1]).sum()
+            };
+            assert!(sum(&shuffled) <= sum(&ordered), "seed {seed}");
+        }
+    }
+
+    #[test]
+    fn slow_wander_is_called_not_converged() {
+        let mut slow = frames(0.2, 3);
+        for it in &mut slow {
+            let phase = (it.time_s % 600.0) / 40.0;
+            it.harmonics_mas[1] += 300.0 * (phase - 0.5);
+            it.harmonics_mas[2] -= 300.0 * (phase - 0.5);
+        }
+        assert_eq!(blocks(&slow).1.converged(), Some(false));
+        assert_eq!(blocks(&frames(0.2, 3)).1.converged(), Some(true));
     }
 }

@@ -5,7 +5,8 @@
 //! Every pixel of the grid is a true direction about the Sun's centre (tangent plane); the exact map of the disk and
 //! the camera's orientation give the place on each frame where that direction fell, and the frame's
 //! calibrated pixels are read there once by a cubic convolution whose sixteen weights add to one, so
-//! that surface brightness, and with it flux, is kept. Frames add with their weights; the variance
+//! that surface brightness is kept. The flux of the disk is then that of the frame times the area by
+//! which the air had pressed the disk together. Frames add with their weights; the variance
 //! of the sum follows the squares of both.
 //!
 //! # Valid for
@@ -15,18 +16,25 @@
 //!
 //! # Accuracy
 //!
-//! Cubic convolution reproduces parabolas; on an edge of 2 pixels it leaves a few mas, the reason why
-//! the stack is a check and the frames' limbs are the answer.
+//! Cubic convolution reproduces parabolas; on an edge of 2 pixels it leaves a few mas to some tens of mas
+//! in the radius, the reason why the stack is a check and the frames' limbs are the answer. With that
+//! predicted and taken off, the stack's limb is within 0.1 mas of the frames' where pixels sample the
+//! edge (`tests/selected_and_stacked.rs`); an aperture of 0.15 m in quiet air on pixels of 2 and 4 arcsec
+//! leaves 0.5 and 2 mas of the radius, 0.1 and 6 mas of the oblateness.
 //!
 //! # Source
 //!
 //! R. G. Keys, "Cubic convolution interpolation for digital image processing", IEEE Trans. ASSP 29,
 //! 1153 (1981).
 
+mod sharpness;
+
 use crate::calibrate::{Detector, variance_adu2};
 use crate::refraction::{Moment, Plate};
 use crate::units::ARCSEC_RAD;
 use ndarray::{Array2, ArrayView2};
+
+pub use sharpness::edge_energy;
 
 /// Radius of the grid in solar radii.
 const EXTENT: f64 = 1.06;
@@ -44,6 +52,8 @@ pub struct Stack {
     pub scale_arcsec_px: f64,
     /// Frames added.
     pub frames: usize,
+    /// Distances from the centre within which the grid is filled, px.
+    filled_px: (f64, f64),
 }
 
 /// Places on a frame for a coarse mesh of the grid, from which the rest is interpolated: the map is
@@ -62,7 +72,40 @@ impl Stack {
             weight: zero,
             scale_arcsec_px,
             frames: 0,
+            filled_px: (0.0, f64::INFINITY),
         }
+    }
+
+    /// The same grid, to be filled only from `inside_arcsec` inside to `outside_arcsec` outside a
+    /// limb: a small part of the work where no more is looked at.
+    pub fn ring(
+        radius_arcsec: f64,
+        scale_arcsec_px: f64,
+        limb_arcsec: f64,
+        (inside_arcsec, outside_arcsec): (f64, f64),
+    ) -> Self {
+        Self {
+            filled_px: (
+                (limb_arcsec - inside_arcsec) / scale_arcsec_px,
+                (limb_arcsec + outside_arcsec) / scale_arcsec_px,
+            ),
+            ..Self::new(radius_arcsec, scale_arcsec_px)
+        }
+    }
+
+    /// Whether no pixel from column `from` to before `to` of row `y` is to be filled.
+    fn is_left_out(&self, y: usize, from: usize, to: usize) -> bool {
+        let centre = self.centre_px();
+        let (a, b) = (from as f64 - centre, to as f64 - 1.0 - centre);
+        let (near, far) = if a > 0.0 {
+            (a, b)
+        } else if b < 0.0 {
+            (-b, -a)
+        } else {
+            (0.0, if -a > b { -a } else { b })
+        };
+        let dy = y as f64 - centre;
+        far.hypot(dy) < self.filled_px.0 || near.hypot(dy) > self.filled_px.1
     }
 
     /// Pixels a side.
@@ -85,6 +128,12 @@ impl Stack {
     ) {
         let n = self.size();
         let nodes = n.div_ceil(MESH) + 1;
+        let left_out: Vec<bool> = (0..n * (nodes - 1))
+            .map(|k| {
+                let (y, i) = (k / (nodes - 1), k % (nodes - 1));
+                self.is_left_out(y, i * MESH, ((i + 1) * MESH).min(n))
+            })
+            .collect();
         let mesh: Vec<(f64, f64)> = (0..nodes * nodes)
             .map(|k| {
                 let (west, north) = ((k % nodes) * MESH, (k / nodes) * MESH);
@@ -104,7 +153,7 @@ impl Stack {
                     let (a, b) = (mesh[j * nodes + i], mesh[(j + 1) * nodes + i]);
                     (a.0 + fy * (b.0 - a.0), a.1 + fy * (b.1 - a.1))
                 };
-                for i in 0..nodes - 1 {
+                for i in (0..nodes - 1).filter(|i| !left_out[y * (nodes - 1) + i]) {
                     let (from, to) = (row(i), row(i + 1));
                     for x in i * MESH..((i + 1) * MESH).min(n) {
                         let fx = (x % MESH) as f64 / MESH as f64;
@@ -130,13 +179,12 @@ impl Stack {
 
     /// Sums turned into means; pixels that no frame saw become NaN.
     #[must_use]
-    pub fn finished(&self) -> Self {
-        let mut out = self.clone();
-        for ((image, variance), weight) in out
+    pub fn into_means(mut self) -> Self {
+        for ((image, variance), weight) in self
             .image
             .iter_mut()
-            .zip(out.variance.iter_mut())
-            .zip(&out.weight)
+            .zip(self.variance.iter_mut())
+            .zip(&self.weight)
         {
             if *weight > 0.0 {
                 *image /= weight;
@@ -146,7 +194,7 @@ impl Stack {
                 *variance = f64::NAN;
             }
         }
-        out
+        self
     }
 
     /// Offset of a grid line from the centre, arcsec.
@@ -229,18 +277,4 @@ fn cubic(t: f64) -> [f64; 4] {
 }
 
 #[cfg(test)]
-mod tests {
-    use super::cubic;
-
-    /// Source: Keys (1981): the kernel's weights add to one and reproduce a parabola.
-    #[test]
-    fn cubic_convolution_keeps_flux_and_parabolas() {
-        for k in 0..=10 {
-            let t = f64::from(k) / 10.0;
-            let w = cubic(t);
-            assert!((w.iter().sum::<f64>() - 1.0).abs() < 1e-14);
-            let parabola: f64 = w.iter().zip([1.0, 0.0, 1.0, 4.0]).map(|(w, v)| w * v).sum();
-            assert!((parabola - t * t).abs() < 1e-12);
-        }
-    }
-}
+mod tests;

@@ -11,6 +11,7 @@ mod covariance;
 mod error;
 mod exposure;
 mod harmonics;
+mod memory;
 mod quadrature;
 mod spectrum;
 mod table;
@@ -20,5 +21,6 @@ pub use covariance::{covariance_kernels, limb_covariance_kernel, variance_kernel
 pub use error::TurbulenceError;
 pub use exposure::{finite_exposure, variance_exposure_factor};
 pub use harmonics::{harmonic_correlation_length_m, harmonic_kernels};
+pub use memory::{LagKernel, harmonic_lag_kernels};
 pub use spectrum::{PHASE_PSD_CONSTANT, STRUCTURE_CONSTANT};
 pub use table::KernelTable;

@@ -234,10 +234,11 @@ fn twice_the_noise_is_not_worse_seeing() {
 #[test]
 fn r0_of_random_sessions_is_right_and_its_error_too() {
     let mut rng = ChaCha8Rng::seed_from_u64(41);
-    let (mut ratios, mut pulls) = (Vec::new(), Vec::new());
-    for session in 0..12 {
+    let (mut ratios, mut pulls, mut steps) = (Vec::new(), Vec::new(), Vec::new());
+    for session in 0..20_usize {
         let aperture = Aperture::clear([0.10, 0.15, 0.20, 0.30][session % 4]);
-        let r0_m = 0.03 * (20.0_f64 / 3.0).powf(rng.random::<f64>());
+        // Even steps of the logarithm from 3 to 20 cm, in an order that no aperture follows.
+        let r0_m = 0.03 * (20.0_f64 / 3.0).powf((7 * session % 20) as f64 / 19.0);
         // A power law through the boundary layer of random steepness, and some free air.
         let (steepness, free) = (rng.random_range(0.9..1.4), rng.random_range(0.05..0.20));
         let heights: Vec<f64> = (0..10).map(|k| 7.0 * 1.75_f64.powi(k)).collect();
@@ -256,23 +257,38 @@ fn r0_of_random_sessions_is_right_and_its_error_too() {
             .map(|k| {
                 let zenith_rad = (first_deg + 2.5 * f64::from(k)) * DEG_RAD;
                 sequence(
-                    &mut rng, &aperture, &layers, r0_m, zenith_rad, 60, noise_mas, 0.18,
+                    &mut rng, &aperture, &layers, r0_m, zenith_rad, 63, noise_mas, 0.18,
                 )
             })
             .unzip();
         let truth_m = (realised.iter().sum::<f64>() / 8.0).powf(-0.6);
         let found = measure(&sequences, &gradient_setup(aperture)).unwrap();
         ratios.push(found.r0_zenith_500nm_m / truth_m);
+        steps.push((r0_m / 0.0775).ln());
         pulls.push((found.r0_zenith_500nm_m - truth_m) / found.r0_zenith_sigma_m);
     }
-    let mean = ratios.iter().sum::<f64>() / 12.0;
-    let pull_rms = (pulls.iter().map(|it| it * it).sum::<f64>() / 12.0).sqrt();
-    // 5 percent for the mean; chi-square of 12 pulls between its 0.5 and 99.5 percent points about
+    let mean = ratios.iter().sum::<f64>() / 20.0;
+    let pull_rms = (pulls.iter().map(|it| it * it).sum::<f64>() / 20.0).sqrt();
+    // 5 percent for the mean; chi-square of 20 pulls between its 0.5 and 99.5 percent points about
     // errors that are right to a third.
     assert!((mean - 1.0).abs() < 0.05, "mean ratio {mean}: {ratios:?}");
     assert!(
         (0.35..1.5).contains(&pull_rms),
         "pulls {pull_rms}: {pulls:?}"
+    );
+    // No trend from 3 to 20 cm: below three of its standard errors and 5 percent end to end.
+    let square: f64 = steps.iter().map(|it: &f64| it * it).sum();
+    let slope = steps
+        .iter()
+        .zip(&ratios)
+        .map(|(x, y)| x * (y - mean))
+        .sum::<f64>()
+        / square;
+    let scatter = (ratios.iter().map(|it| (it - mean).powi(2)).sum::<f64>() / 19.0).sqrt();
+    let allowed = 3.0 * scatter / square.sqrt() + 0.05 / (20.0_f64 / 3.0).ln();
+    assert!(
+        slope.abs() < allowed,
+        "slope {slope}, scatter {scatter}: {ratios:?}"
     );
 }
 

@@ -39,6 +39,11 @@ pub(crate) enum Command {
         after_help = "Example: truelimb recover session.toml --injected 0,8 --n 40 --result result"
     )]
     Recover(crate::recover::Recover),
+    /// The air alone: Fried's parameter by motion and by blur, its time scale, the floor it sets.
+    #[command(
+        after_help = "Example: truelimb seeing session.toml -o air\n\nIt needs no rolls: a session whose oblateness would be refused is measured all the same."
+    )]
+    Seeing(Seeing),
     /// Make a session with known truth.
     #[command(after_help = "Example: truelimb simulate -o fake --seed 7")]
     Simulate(Simulate),
@@ -91,6 +96,20 @@ pub(crate) struct Reduce {
     /// Seed of everything random.
     #[arg(long, default_value_t = 1)]
     pub(crate) seed: u64,
+}
+
+/// `truelimb seeing`.
+#[derive(Args, Debug)]
+pub(crate) struct Seeing {
+    /// The session file.
+    #[arg(value_name = "SESSION")]
+    pub(crate) session: PathBuf,
+    /// Folder for seeing.ecsv (a row a frame) and seeing.json; made when it is not there.
+    #[arg(short, long, value_name = "DIR")]
+    pub(crate) output: Option<PathBuf>,
+    /// Print JSON in place of the table.
+    #[arg(long)]
+    pub(crate) json: bool,
 }
 
 /// `truelimb simulate`.

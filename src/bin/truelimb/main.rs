@@ -6,6 +6,7 @@ mod commands;
 mod progress;
 mod recover;
 mod refraction;
+mod seeing;
 
 use arguments::{Arguments, Command};
 use clap::Parser;
@@ -34,6 +35,7 @@ fn main() -> ExitCode {
         Command::Reduce(it) => commands::reduce(&it, quiet),
         Command::Combine(it) => combine::combine(&it, quiet),
         Command::Recover(it) => recover::recover(&it, quiet),
+        Command::Seeing(it) => seeing::seeing(&it, quiet),
         Command::Simulate(it) => commands::simulate(&it, quiet),
         Command::Limb(it) => commands::limb(&it),
         Command::Refraction(it) => refraction::refraction(&it, quiet),

@@ -2,7 +2,7 @@
 
 mod shape;
 mod interior;
-mod seeing;
+pub(super) mod seeing;
 mod turbulence;
 mod sequences;
 mod selection;
@@ -15,10 +15,10 @@ use super::measure::MeasuredSequence;
 use super::solve::{SeeingResult, Selected, Shape};
 use super::stacking::Stacks;
 use super::{Options, SetAside};
+use crate::budget;
 use crate::result::record::{Record, SCHEMA_VERSION, ShapeQuantity, SourceFile, Status, Traces};
 use crate::session::Session;
-use crate::shape::{Contribution, Fit, Known};
-use statrs::distribution::{ContinuousCDF, StudentsT};
+use crate::shape::{Block, Contribution, Fit, Known};
 
 /// Everything the record is made from.
 pub(super) struct Parts<'a> {
@@ -30,7 +30,7 @@ pub(super) struct Parts<'a> {
     pub(super) seeing: &'a SeeingResult,
     pub(super) selected: &'a Selected,
     pub(super) shape: &'a Shape,
-    pub(super) by_stack: &'a Result<Fit, String>,
+    pub(super) by_stack: &'a Result<(Fit, Vec<Block>), String>,
     pub(super) model: &'a LimbModel,
     pub(super) known: &'a Known,
     pub(super) stacks: &'a Stacks,
@@ -52,7 +52,7 @@ pub(super) fn record(p: &Parts<'_>) -> (Record, Traces) {
         settings: crate::session::resolved(p.session),
         seed: p.options.seed,
         shape: shape::record(p),
-        seeing: seeing::record(p),
+        seeing: seeing::record(p.seeing),
         turbulence: turbulence::record(p),
         refraction: p
             .measured
@@ -74,12 +74,6 @@ fn lines<'a>(p: &'a Parts<'_>, fit: &'a Fit) -> impl Iterator<Item = &'a Contrib
     fit.contributions.iter().chain(&p.model.lines)
 }
 
-/// Multiple of the standard uncertainty that holds a share of Student's distribution.
-fn reach(degrees: f64, share: f64) -> f64 {
-    let at = 0.5 + 0.5 * share;
-    StudentsT::new(0.0, 1.0, degrees.max(2.0)).map_or(f64::NAN, |it| it.inverse_cdf(at))
-}
-
 /// Share of a normal distribution within one standard deviation.
 const ONE_SIGMA: f64 = 0.682_689_492;
 
@@ -93,7 +87,7 @@ fn quantity(value: f64, random: f64, systematic: f64, degrees: f64, unit: &str) 
         1e6
     };
     let effective = if effective < 1e6 { effective } else { 1e6 };
-    let (one, two) = (reach(effective, ONE_SIGMA), reach(effective, 0.95));
+    let [one, two] = [ONE_SIGMA, 0.95].map(|share| budget::coverage_factor(effective, share));
     ShapeQuantity {
         value: Some(value),
         sigma: Some(one * total),

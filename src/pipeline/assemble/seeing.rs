@@ -1,15 +1,21 @@
-//! The record of the seeing, with the coherence time.
+//! The records of the seeing.
 
-use super::Parts;
-use crate::result::record::{LayerRecord, PowerRecord, Quantity, SeeingRecord};
+use crate::pipeline::solve::SeeingResult;
+use crate::result::record::{FloorRecord, LayerRecord, PowerRecord, Quantity, SeeingRecord};
+use crate::seeing::{Coherence, OwnBlur};
 
 /// The record of the seeing.
-pub(super) fn record(p: &Parts<'_>) -> SeeingRecord {
-    let by_blur = match &p.seeing.blur {
-        Ok(it) => Quantity::measured(it.zenith_m, it.sigma_m, "m"),
+pub(in crate::pipeline) fn record(seeing: &SeeingResult) -> SeeingRecord {
+    let by_blur = match &seeing.blur {
+        Ok(it) => Quantity::measured(it.r0_zenith_500nm_m, it.r0_zenith_sigma_m, "m"),
         Err(reason) => Quantity::missing("m", reason),
     };
-    let it = match &p.seeing.motion {
+    let own_blur = own_blur(seeing);
+    let noise_over_expected = match &seeing.noise {
+        Some(it) => Quantity::measured(it.value, it.sigma, "1"),
+        None => Quantity::missing("1", "too few frames could be measured twice"),
+    };
+    let it = match &seeing.motion {
         Ok(it) => it,
         Err(reason) => {
             let none = |unit: &str| Quantity::missing(unit, reason);
@@ -24,6 +30,8 @@ pub(super) fn record(p: &Parts<'_>) -> SeeingRecord {
                 height_proxy: none("m"),
                 independent_frames: Vec::new(),
                 layers: Vec::new(),
+                own_blur,
+                noise_over_expected,
             };
         }
     };
@@ -35,7 +43,7 @@ pub(super) fn record(p: &Parts<'_>) -> SeeingRecord {
         by_motion,
         by_blur,
         fwhm: Quantity::measured(it.fwhm_arcsec, it.fwhm_arcsec * relative, "arcsec"),
-        coherence_time: coherence_time(p),
+        coherence_time: coherence_time(&seeing.coherence),
         outer_scale: match it.outer_scale_m {
             Some(v) => Quantity::computed(v, "m"),
             None => Quantity::missing("m", &it.outer_scale_reason),
@@ -64,46 +72,68 @@ pub(super) fn record(p: &Parts<'_>) -> SeeingRecord {
                 share: it.share,
             })
             .collect(),
+        own_blur,
+        noise_over_expected,
     }
 }
 
-/// The coherence time, where the frames follow each other fast enough to see it: the lag at which the
-/// correlation of the high harmonics falls to 1/e.
-fn coherence_time(p: &Parts<'_>) -> Quantity {
-    let mut steps = Vec::new();
-    let (mut product, mut square) = (0.0, 0.0);
-    for (sequence, corrected) in p.measured.iter().zip(p.limbs) {
-        for pair in corrected.frames.windows(2) {
-            let [a, b] = [&pair[0], &pair[1]];
-            let apart = sequence.frames[b.measured]
-                .utc
-                .minus(sequence.frames[a.measured].utc);
-            steps.push(apart);
-            let highest = a.harmonics.cos.len().min(b.harmonics.cos.len());
-            for m in 6..highest {
-                product += a.harmonics.cos[m] * b.harmonics.cos[m]
-                    + a.harmonics.sin[m] * b.harmonics.sin[m];
-                square += 0.5
-                    * (a.harmonics.cos[m].powi(2)
-                        + a.harmonics.sin[m].powi(2)
-                        + b.harmonics.cos[m].powi(2)
-                        + b.harmonics.sin[m].powi(2));
-            }
-        }
+/// The coherence time, where the cadence allows it.
+pub(in crate::pipeline) fn coherence_time(it: &Result<Coherence, String>) -> Quantity {
+    match it {
+        Ok(it) => Quantity::measured(it.time_s, it.sigma_s, "s"),
+        Err(reason) => Quantity::missing("s", reason),
     }
-    steps.sort_by(f64::total_cmp);
-    let Some(&step_s) = steps.get(steps.len() / 2) else {
-        return Quantity::missing("s", "fewer than two frames");
+}
+
+/// The instrument's own blur, where it is told from the air.
+fn own_blur(seeing: &SeeingResult) -> Quantity {
+    match seeing.blur.as_ref().map(|it| it.own) {
+        Ok(OwnBlur::Seen {
+            sigma_arcsec,
+            uncertainty_arcsec,
+        }) => Quantity::measured(sigma_arcsec, uncertainty_arcsec, "arcsec"),
+        Ok(OwnBlur::Below { limit_arcsec }) => Quantity::missing(
+            "arcsec",
+            &format!("not seen: below {limit_arcsec:.2} arcsec on an axis (95 percent)"),
+        ),
+        Ok(OwnBlur::NoMotion) => Quantity::missing(
+            "arcsec",
+            "the motion of the limb gave no seeing to compare the width with",
+        ),
+        Err(reason) => Quantity::missing("arcsec", reason),
+    }
+}
+
+/// The floors of the harmonics; none where the motion gave no seeing.
+pub(in crate::pipeline) fn floors(seeing: &SeeingResult) -> Vec<FloorRecord> {
+    let Ok(floors) = &seeing.floors else {
+        return Vec::new();
     };
-    let correlation = product / square;
-    if correlation < 0.15 {
-        return Quantity::missing(
-            "s",
-            &format!(
-                "frames {step_s:.2} s apart have forgotten each other (correlation {correlation:.2})"
-            ),
-        );
-    }
-    let tau_s = step_s / (1.0 / correlation).ln();
-    Quantity::measured(tau_s, 0.3 * tau_s, "s")
+    floors
+        .iter()
+        .map(|it| {
+            let frame = it.frame_observed_mas / it.frame_predicted_mas;
+            FloorRecord {
+                m: it.m,
+                frame_predicted_mas: it.frame_predicted_mas,
+                frame_observed_mas: it.frame_observed_mas,
+                observed_over_predicted: Quantity::measured(
+                    frame,
+                    frame * it.frame_relative_sigma,
+                    "1",
+                ),
+                time_s: it.time_s,
+                correlation_time_s: it.correlation_time_s,
+                mean_predicted_mas: it.mean_predicted_mas,
+                mean_observed_mas: it.mean_observed.map(|it| it.0),
+                mean_observed_over_predicted: match it.mean_observed {
+                    Some((observed, relative)) => {
+                        let ratio = observed / it.mean_predicted_mas;
+                        Quantity::measured(ratio, ratio * relative, "1")
+                    }
+                    None => Quantity::missing("1", "blocks within a sequence need 40 frames"),
+                },
+            }
+        })
+        .collect()
 }

@@ -46,6 +46,12 @@ pub(super) fn record(p: &Parts<'_>) -> SelectionRecord {
         criterion: "sharpness: mean blur of the limb's sectors; weights by the power of harmonics m >= 5".to_owned(),
         blind_to_shape: "blur holds no positions, and harmonics of m >= 5 are independent of those of the shape (m = 0, 2, 4) in isotropic turbulence".to_owned(),
         gain: p.shape.gain,
+        sigma_all_and_kept_mas: p
+            .shape
+            .separability
+            .oblateness
+            .then_some(p.shape.sigma_all_and_kept_mas),
+        weighting_gain: p.shape.weighting_gain,
     }
 }
 

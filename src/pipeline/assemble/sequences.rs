@@ -107,7 +107,13 @@ fn sequence(
             .map(|it| (it.harmonics.cos[order] - c).powi(2) + (it.harmonics.sin[order] - s).powi(2))
             .sum();
         let coefficients = if order == 0 { 1.0 } else { 2.0 };
-        let factor = p.shape.factor.get(order).copied().unwrap_or(1.0);
+        let factor = p
+            .shape
+            .correlation
+            .factor
+            .get(order)
+            .copied()
+            .unwrap_or(1.0);
         (
             c,
             s,

@@ -5,15 +5,15 @@ use super::{Parts, interior, lines, quantity};
 use crate::budget;
 use crate::pipeline::definitions;
 use crate::result::record::{
-    AirRecord, ByStack, Covariance, DistortionRecord, DriverRecord, NullTest, Quantity, Separation,
-    ShapeQuantity, ShapeRecord,
+    AirRecord, BatchRecord, BootstrapRecord, ByStack, Covariance, DistortionRecord, DriverRecord,
+    FactorRecord, NullTest, Quantity, RandomErrorRecord, Separation, ShapeQuantity, ShapeRecord,
 };
 use crate::shape::{DriverSlope, Fit};
 
 /// The record of the shape.
 pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
     let fit = &p.shape.fit;
-    let [radius, oblateness, p4] = three(p, fit);
+    let [radius, oblateness, p4] = three(p, fit, p.model.radius_bias_mas);
     let (with_instrument, with_air) = fit.correlations();
     let separability = &p.shape.separability;
     let [scale, vertical] = fit.air();
@@ -49,6 +49,8 @@ pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
         },
         definitions: definitions::list(p.measured, &radius, &oblateness, p.model.blur),
         kept_curve: p.shape.curve.clone(),
+        random_error: random_error(p),
+        kept_slope: p.shape.slope.clone(),
         quadrupole: interior::record(p, &oblateness, &p4),
         oblateness,
         radius,
@@ -56,8 +58,8 @@ pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
     }
 }
 
-/// The three quantities of a fit.
-fn three(p: &Parts<'_>, fit: &Fit) -> [ShapeQuantity; 3] {
+/// The three quantities of a fit whose radius the extraction has moved by `bias_mas`.
+fn three(p: &Parts<'_>, fit: &Fit, bias_mas: f64) -> [ShapeQuantity; 3] {
     let random = budget::total(lines(p, fit).filter(|it| it.random));
     let systematic = budget::total(lines(p, fit).filter(|it| !it.random));
     let degrees = fit.degrees;
@@ -79,7 +81,7 @@ fn three(p: &Parts<'_>, fit: &Fit) -> [ShapeQuantity; 3] {
         ShapeQuantity::not_separated("mas", &why_not(p, "the next harmonic"))
     };
     let radius = quantity(
-        (fit.radius_mas() - p.model.radius_bias_mas) / 1000.0,
+        (fit.radius_mas() - bias_mas) / 1000.0,
         random[0] / 1000.0,
         systematic[0] / 1000.0,
         degrees,
@@ -96,6 +98,41 @@ pub(super) fn why_not(p: &Parts<'_>, what: &str) -> String {
     )
 }
 
+/// How the random error was judged.
+fn random_error(p: &Parts<'_>) -> RandomErrorRecord {
+    let correlation = &p.shape.correlation;
+    let separability = &p.shape.separability;
+    RandomErrorRecord {
+        correlation_factor: [0, 2, 3, 4]
+            .map(|m| FactorRecord {
+                m,
+                factor: correlation.factor[m],
+            })
+            .to_vec(),
+        excess: p.shape.fit.excess,
+        degrees_of_freedom: p.shape.fit.degrees,
+        batches: correlation
+            .growth
+            .iter()
+            .map(|it| BatchRecord {
+                length_s: it.length_s,
+                factor: it.factor,
+                degrees_of_freedom: it.degrees,
+            })
+            .collect(),
+        converged: correlation.converged(),
+        bootstrap: p.shape.bootstrap.map(|it| BootstrapRecord {
+            sigma_radius_mas: it.sigma_mas[0],
+            sigma_oblateness_mas: separability.oblateness.then_some(it.sigma_mas[1]),
+            sigma_p4_mas: separability.p4.then_some(it.sigma_mas[2]),
+            run_frames: it.run_frames,
+            runs: it.runs,
+            resamples: it.resamples,
+            seed: p.options.seed,
+        }),
+    }
+}
+
 /// Quantities that are zero when all is well.
 fn null_tests(p: &Parts<'_>) -> Vec<NullTest> {
     let fit = &p.shape.fit;
@@ -108,21 +145,42 @@ fn null_tests(p: &Parts<'_>) -> Vec<NullTest> {
         reason: found.is_none().then(|| reason.to_owned()),
     };
     let open = "not separated from the instrument";
+    let apart = "one of the parts alone does not separate Sun and instrument";
     vec![
         test(
             "sine of m = 2 about the solar axis",
-            p.shape.sines.map(|it| it.second_mas),
+            p.shape.sines.map(|it| it[0]),
             open,
         ),
         test(
             "sine of m = 4 about the solar axis",
-            p.shape.sines.map(|it| it.fourth_mas),
+            p.shape.sines.map(|it| it[1]),
+            open,
+        ),
+        test(
+            "cosine of m = 3 about the solar axis (north limb against south)",
+            p.shape.odd.map(|it| it[0]),
+            open,
+        ),
+        test(
+            "sine of m = 3 about the solar axis (east limb against west)",
+            p.shape.odd.map(|it| it[1]),
             open,
         ),
         test(
             "oblateness of the early half of the sequences minus the late half",
-            p.shape.halves,
-            "one of the halves alone does not separate Sun and instrument",
+            p.shape.parts.halves,
+            apart,
+        ),
+        test(
+            "oblateness of the middle half of the sequences minus first and last quarter",
+            p.shape.parts.inner,
+            apart,
+        ),
+        test(
+            "oblateness before the Sun's passage through the meridian minus after it",
+            p.shape.parts.meridian,
+            apart,
         ),
         test(
             "oblateness against kept fraction: sharpest 40 percent minus all",
@@ -197,8 +255,9 @@ fn driver(it: &DriverSlope) -> DriverRecord {
 /// The shape from stacks, beside that from single frames.
 fn by_stack(p: &Parts<'_>, by_frame: &ShapeQuantity) -> ByStack {
     match p.by_stack {
-        Ok(fit) => {
-            let [radius, oblateness, p4] = three(p, fit);
+        Ok((fit, blocks)) => {
+            // The twins show what extraction leaves on their limbs as well: it is off already.
+            let [radius, oblateness, p4] = three(p, fit, 0.0);
             let difference_sigma = match (oblateness.value, by_frame.value, by_frame.sigma) {
                 (Some(a), Some(b), Some(sigma)) if sigma > 0.0 => Some((a - b) / sigma),
                 _ => None,
@@ -210,6 +269,8 @@ fn by_stack(p: &Parts<'_>, by_frame: &ShapeQuantity) -> ByStack {
                 p4,
                 difference_sigma,
                 stacks,
+                removed_mas: p.stacks.removed_mas(fit, blocks),
+                sharpness: p.stacks.sharpness.clone(),
                 reason: None,
             }
         }
@@ -224,6 +285,8 @@ fn by_stack(p: &Parts<'_>, by_frame: &ShapeQuantity) -> ByStack {
                 p4: none("mas"),
                 difference_sigma: None,
                 stacks: 0,
+                removed_mas: None,
+                sharpness: p.stacks.sharpness.clone(),
                 reason: Some(reason.clone()),
             }
         }

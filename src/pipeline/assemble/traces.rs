@@ -13,6 +13,7 @@ use std::f64::consts::TAU;
 pub(super) fn traces(p: &Parts<'_>) -> Traces {
     let mean_radius = p.shape.fit.radius_mas() - REFERENCE_RADIUS_MAS;
     let mut frames = Vec::new();
+    let mut influence = p.shape.fit.influence.iter();
     for (k, (it, &(position, frame))) in p
         .selected
         .observations
@@ -32,6 +33,17 @@ pub(super) fn traces(p: &Parts<'_>) -> Traces {
             radius_mas: it.harmonics_mas[0] - mean_radius,
             cos2_mas: it.harmonics_mas[1],
             sin2_mas: it.harmonics_mas[2],
+            north_deg: measured
+                .moment
+                .orientation
+                .detector_angle_rad(0.0)
+                .to_degrees()
+                .rem_euclid(360.0),
+            harmonics_mas: it.harmonics_mas,
+            influence: p.shape.kept[k]
+                .then(|| influence.next().copied())
+                .flatten()
+                .unwrap_or_default(),
         });
     }
     let (preview, preview_radius_px) = match &p.stacks.whole {

@@ -2,10 +2,7 @@
 
 use super::{Parts, lines};
 use crate::budget;
-use crate::pipeline::solve::{aperture, zenith_factor};
 use crate::result::record::{HoursTo, Quantity, TurbulenceRecord};
-use crate::seeing::LEAST_FRAMES;
-use crate::shape::REFERENCE_RADIUS_MAS;
 
 /// The record of turbulence's part in the error.
 pub(super) fn record(p: &Parts<'_>) -> TurbulenceRecord {
@@ -58,6 +55,7 @@ pub(super) fn record(p: &Parts<'_>) -> TurbulenceRecord {
             }
             Err(reason) => Quantity::missing("1", &reason),
         },
+        harmonics: super::seeing::floors(p.seeing),
     }
 }
 
@@ -93,36 +91,10 @@ fn observed_frame_mas(p: &Parts<'_>) -> f64 {
 
 /// The same as predicted from the seeing.
 fn predicted_frame_mas(p: &Parts<'_>) -> Result<f64, String> {
-    let it = p.seeing.motion.as_ref().map_err(Clone::clone)?;
-    let aperture = aperture(p.session);
-    let (mut sum, mut count) = (0.0, 0.0);
-    for (sequence, own) in p
-        .measured
+    let floors = p.seeing.floors.as_ref().map_err(Clone::clone)?;
+    floors
         .iter()
-        .filter(|it| it.frames.len() >= LEAST_FRAMES)
-        .zip(&it.sequences)
-    {
-        let view = crate::seeing::View {
-            zenith_rad: sequence.middle.sun.zenith_true_rad,
-            limb_radius_rad: REFERENCE_RADIUS_MAS * crate::units::MAS_RAD
-                / sequence.middle.sun.distance_au,
-            sector_rad: sequence.setup.annulus.sector_rad(),
-            drift_m: 0.0,
-        };
-        let gradient = crate::turbulence::Tilt::Gradient;
-        let variance =
-            crate::seeing::floor_variance_mas2(&it.profile, &aperture, gradient, &view, 2)
-                .map_err(|it| it.to_string())?[2];
-        // The profile is the session's; each sequence has its own strength.
-        let zenith_m = own.r0_los_500nm_m * zenith_factor(sequence);
-        let strength = (zenith_m / it.r0_zenith_500nm_m).powf(-5.0 / 3.0);
-        let n = sequence.frames.len() as f64;
-        sum += n * variance * strength * sequence.middle.sun.distance_au.powi(2);
-        count += n;
-    }
-    if count == 0.0 {
-        Err("no sequence has enough frames".to_owned())
-    } else {
-        Ok((sum / count).sqrt())
-    }
+        .find(|it| it.m == 2)
+        .map(|it| it.frame_predicted_mas)
+        .ok_or_else(|| "no sequence has enough frames".to_owned())
 }

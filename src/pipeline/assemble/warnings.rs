@@ -21,6 +21,25 @@ fn formula_weighs(p: &Parts<'_>) -> bool {
 /// Zenith distances above these deserve a word.
 const CAUTION_DEG: [f64; 2] = [60.0, 70.0];
 
+/// Chance below which a slope of the shape against the kept fraction deserves a word.
+const SLOPE_CHANCE: f64 = 0.01;
+
+/// What is said of slopes of the shape against the kept fraction that chance does not explain.
+fn slopes(p: &Parts<'_>) -> Vec<String> {
+    let slope = &p.shape.slope;
+    [("oblateness", &slope.oblateness), ("radius", &slope.radius)]
+        .into_iter()
+        .filter_map(|(name, test)| Some((name, test.as_ref()?)))
+        .filter(|(_, it)| it.chance < SLOPE_CHANCE)
+        .map(|(name, it)| {
+            format!(
+                "the {name} runs with the kept fraction by {:.1} +- {:.1} mas from none to all of the frames ({:+.1} sigma): something that goes with the sharpness moves the limb, and the answer depends on which frames are kept",
+                it.slope_mas, it.sigma_mas, it.pull
+            )
+        })
+        .collect()
+}
+
 /// All warnings, each once.
 pub(super) fn records(p: &Parts<'_>) -> Vec<WarningRecord> {
     let mut out: Vec<WarningRecord> = Vec::new();
@@ -116,6 +135,9 @@ pub(super) fn records(p: &Parts<'_>) -> Vec<WarningRecord> {
             say("seeing", text.clone());
         }
     }
+    for (code, text) in &p.seeing.warnings {
+        say(code, text.clone());
+    }
     if p.shape.fit.excess > 1.0 {
         say(
             "excess-scatter",
@@ -124,6 +146,15 @@ pub(super) fn records(p: &Parts<'_>) -> Vec<WarningRecord> {
                 p.shape.fit.excess.sqrt()
             ),
         );
+    }
+    if p.shape.correlation.converged() == Some(false) {
+        say(
+            "not-converged",
+            "the scatter of batches of frames still grows with their length: slow air or a drift; the random error is a lower limit, and more time, not more frames, is needed".to_owned(),
+        );
+    }
+    for text in slopes(p) {
+        say("kept-slope", text);
     }
     if !p.shape.separability.oblateness {
         say("not-separated", why_not(p, "the oblateness"));

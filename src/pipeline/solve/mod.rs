@@ -1,16 +1,20 @@
 //! Seeing, selection and shape of the corrected limbs.
 
+mod noise;
+mod blur;
+mod floor;
 mod seeing;
 mod select;
 mod drivers;
 mod known;
+mod slope;
 mod shape;
 
 use crate::session::{Session, WeatherSource};
 use crate::turbulence::Aperture;
 
 pub(super) use known::known;
-pub(super) use seeing::{SeeingResult, frame_r0_m, seeing, zenith_factor};
+pub(super) use seeing::{SeeingResult, SequenceAir, frame_r0_m, seeing, zenith_factor};
 pub(super) use select::{Selected, select};
 pub(super) use shape::{Shape, shape};
 

@@ -21,8 +21,8 @@ pub(super) fn plate(record: &Record) -> Option<Plate> {
         title: "Does the answer depend on the frames kept?",
         finding: finding(record),
         reading: "A criterion that is blind to the shape gives a flat curve. Bars are the random \
-                  part only; neighbouring points share frames, so they move together. The band is \
-                  the answer with its full error."
+                  part only; neighbouring points share frames, so they move together; the slope's \
+                  error allows for that. The band is the answer with its full error."
             .to_owned(),
         table: table(record),
     };
@@ -46,6 +46,25 @@ fn finding(record: &Record) -> String {
         curve.len(),
         numbers::beside(low, sigma),
         numbers::beside(high, sigma)
+    ) + &slope_clause(record)
+}
+
+/// One sentence on the slope of the oblateness; nothing where it was not tested.
+fn slope_clause(record: &Record) -> String {
+    let slope = &record.shape.kept_slope;
+    let Some(it) = &slope.oblateness else {
+        return String::new();
+    };
+    let verdict = if it.chance < 0.01 {
+        "chance does not explain it"
+    } else {
+        "no slope beyond chance"
+    };
+    format!(
+        " From none to all of the frames a line through {} of them changes by {} mas, {} sigma: {verdict}.",
+        slope.fractions.len(),
+        numbers::plus_minus(it.slope_mas, Some(it.sigma_mas)),
+        numbers::significant(it.pull, 2),
     )
 }
 
@@ -74,7 +93,37 @@ fn table(record: &Record) -> String {
             numbers::sigma(point.radius_sigma_mas),
         ]);
     }
-    table.folded("Numbers behind the curves")
+    table.folded("Numbers behind the curves") + &slopes(record)
+}
+
+/// The slopes and what chance makes of them; empty where none was tested.
+fn slopes(record: &Record) -> String {
+    let slope = &record.shape.kept_slope;
+    let mut table = Table::new(
+        "Slopes against the kept fraction, from none to all of the frames",
+        &[
+            Column::Text("Quantity"),
+            Column::Number("Slope, mas"),
+            Column::Number("Slope over its sigma"),
+            Column::Number("Probability by chance"),
+            Column::Number("Degrees of freedom"),
+        ],
+    );
+    for (name, test) in [("Oblateness", &slope.oblateness), ("Radius", &slope.radius)] {
+        if let Some(it) = test {
+            table.row([
+                name.to_owned(),
+                numbers::plus_minus(it.slope_mas, Some(it.sigma_mas)),
+                numbers::significant(it.pull, 2),
+                numbers::significant(it.chance, 2),
+                numbers::significant(it.degrees, 3),
+            ]);
+        }
+    }
+    if table.is_empty() {
+        return String::new();
+    }
+    table.folded("Numbers behind the slopes")
 }
 
 fn draw(record: &Record, room: Room) -> Option<Canvas> {

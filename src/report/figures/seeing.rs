@@ -21,24 +21,37 @@ pub(super) fn plate(record: &Record, traces: &Traces) -> Option<Plate> {
     let kept = traces.frames.iter().filter(|frame| frame.kept).count();
     let total = traces.frames.len();
     let words = Words {
-        title: "Seeing in time, and the frames kept",
+        title: "Sharpness in time, and the frames kept",
         finding: format!(
-            "Of {} measured frames {} were kept, {} percent.",
+            "Of {} measured frames {} were kept, {} percent.{}",
             numbers::count(total),
             numbers::count(kept),
-            numbers::percent(kept as f64 / total as f64)
+            numbers::percent(kept as f64 / total as f64),
+            match traces.frames.iter().filter(|it| is_off(it)).count() {
+                0 => String::new(),
+                off => format!(
+                    " {} were sharper than the pixels can tell and stand at the upper edge.",
+                    numbers::count(off)
+                ),
+            }
         ),
         reading:
             "Above: Fried's parameter from the width of each frame's limb, towards the Sun at \
                   500 nm; the line and band are the session's own value, from the limb's \
-                  motion. Below: the share of frames kept along the same time. Time runs to the \
-                  right; gaps between sequences are closed up."
-                .to_owned(),
+                  motion. Below: the mean weight of the frames along the same time, none where a \
+                  frame was set aside. Time runs to the right; gaps between sequences are closed \
+                  up."
+            .to_owned(),
         table: frame_table(traces),
     };
     super::plate("seeing", super::WIDE_PX, words, |room| {
         draw(record, traces, room)
     })
+}
+
+/// Whether the width of a frame's limb gives no value: it is narrower than the pixels can tell.
+fn is_off(frame: &FrameTrace) -> bool {
+    !frame.r0_blur_m.is_finite()
 }
 
 fn draw(record: &Record, traces: &Traces, room: Room) -> Option<Canvas> {
@@ -76,8 +89,12 @@ fn draw(record: &Record, traces: &Traces, room: Room) -> Option<Canvas> {
     }
     let place = |frame: &FrameTrace| {
         let x = line.px(frame.sequence, frame.time_s)?;
-        let r0_cm = frame.r0_blur_m * 100.0;
-        r0_cm.is_finite().then(|| (x, axis.px(r0_cm)))
+        let y = if is_off(frame) {
+            top
+        } else {
+            axis.px(frame.r0_blur_m * 100.0)
+        };
+        Some((x, y))
     };
     let chosen = |kept: bool| {
         let frames = traces.frames.iter().filter(move |frame| frame.kept == kept);
@@ -85,17 +102,20 @@ fn draw(record: &Record, traces: &Traces, room: Room) -> Option<Canvas> {
     };
     canvas.path(&strokes(chosen(false)), "unkept");
     canvas.path(&dots(chosen(true)), "blue-dots");
-    draw_strip(&mut canvas, &line, traces, strip);
+    let highest = draw_strip(&mut canvas, &line, traces, strip);
+    for (share, name) in [
+        (1.0, numbers::significant(highest, 2)),
+        (0.0, "0".to_owned()),
+    ] {
+        let y = strip + STRIP_PX * (1.0 - share);
+        canvas.text((left - 4.0, y + 4.0), Anchor::End, "cap", &name);
+    }
     canvas.text(
         (0.0, strip - 10.0),
         Anchor::Start,
         "label",
-        "share of frames kept, 0 to 1",
+        "mean weight in the answer, 1 for a frame of the session's mean",
     );
-    for (share, name) in [(1.0, "1"), (0.0, "0")] {
-        let y = strip + STRIP_PX * (1.0 - share);
-        canvas.text((left - 4.0, y + 4.0), Anchor::End, "cap", name);
-    }
     line.draw_labels(&mut canvas, strip + STRIP_PX);
     Some(canvas)
 }
@@ -111,13 +131,15 @@ fn legend(canvas: &mut Canvas, room: Room) {
     canvas.text((left + 168.0, y), Anchor::Start, "small", "session ± sigma");
 }
 
-/// Share of frames kept along time.
-fn draw_strip(canvas: &mut Canvas, line: &Timeline, traces: &Traces, top: f64) {
+/// Mean weight of the frames along time, nothing for those set aside; the weight at the top of the
+/// strip.
+fn draw_strip(canvas: &mut Canvas, line: &Timeline, traces: &Traces, top: f64) -> f64 {
     line.draw_grounds(canvas, (top, top + STRIP_PX));
+    let mut bars = Vec::new();
     for panel in &line.panels {
         let width = panel.right_px - panel.left_px;
         let bins = (width / BIN_PX).floor().max(1.0) as usize;
-        let mut counts = vec![(0usize, 0usize); bins];
+        let mut sums = vec![(0.0, 0usize); bins];
         let length_s = panel.to_s - panel.from_s;
         for frame in traces
             .frames
@@ -130,18 +152,22 @@ fn draw_strip(canvas: &mut Canvas, line: &Timeline, traces: &Traces, top: f64) {
                 0.0
             };
             let bin = ((share * bins as f64) as usize).min(bins - 1);
-            counts[bin].0 += usize::from(frame.kept);
-            counts[bin].1 += 1;
+            sums[bin].0 += if frame.kept { frame.weight } else { 0.0 };
+            sums[bin].1 += 1;
         }
-        for (bin, (kept, all)) in counts.into_iter().enumerate().filter(|bin| bin.1.1 > 0) {
-            let height = STRIP_PX * kept as f64 / all as f64;
-            let step = width / bins as f64;
-            let x = panel.left_px + step * bin as f64;
-            canvas.rect(
-                (x, top + STRIP_PX - height),
-                (step - 1.0, height),
-                "blue-fill",
-            );
+        let step = width / bins as f64;
+        for (bin, (weight, all)) in sums.into_iter().enumerate().filter(|bin| bin.1.1 > 0) {
+            bars.push((
+                panel.left_px + step * bin as f64,
+                step - 1.0,
+                weight / all as f64,
+            ));
         }
     }
+    let highest = bars.iter().map(|it| it.2).fold(1.0, f64::max);
+    for (x, width, weight) in bars {
+        let height = STRIP_PX * weight / highest;
+        canvas.rect((x, top + STRIP_PX - height), (width, height), "blue-fill");
+    }
+    highest
 }

@@ -174,6 +174,33 @@ pub(super) fn definitions(
     .collect()
 }
 
+pub(super) fn random_error() -> RandomErrorRecord {
+    RandomErrorRecord {
+        correlation_factor: [(0, 2.1), (2, 1.9), (3, 1.6), (4, 1.4)]
+            .map(|(m, factor)| FactorRecord { m, factor })
+            .to_vec(),
+        excess: 1.0,
+        degrees_of_freedom: 820.0,
+        batches: [(14.0, 1.6, 112.0), (28.0, 1.8, 48.0), (56.0, 1.7, 16.0)]
+            .map(|(length_s, factor, degrees_of_freedom)| BatchRecord {
+                length_s,
+                factor,
+                degrees_of_freedom,
+            })
+            .to_vec(),
+        converged: Some(true),
+        bootstrap: Some(BootstrapRecord {
+            sigma_radius_mas: 9.1,
+            sigma_oblateness_mas: Some(13.2),
+            sigma_p4_mas: Some(11.8),
+            run_frames: 10,
+            runs: 64,
+            resamples: 2000,
+            seed: 1,
+        }),
+    }
+}
+
 pub(super) fn kept_curve(
     noise: &mut Noise,
     scale: f64,
@@ -199,6 +226,27 @@ pub(super) fn kept_curve(
             }
         })
         .collect()
+}
+
+pub(super) fn kept_slope(scale: f64, oblateness: &ShapeQuantity) -> KeptSlope {
+    let test = |slope: f64, sigma: f64, chance: f64| SlopeTest {
+        slope_mas: slope,
+        sigma_mas: sigma,
+        pull: slope / sigma,
+        chance,
+        degrees: 56.0,
+    };
+    KeptSlope {
+        oblateness: oblateness
+            .value
+            .map(|_| test(-6.2 * scale, 14.8 * scale, 0.677)),
+        radius: Some(test(21.3 * scale, 33.1 * scale, 0.523)),
+        fractions: vec![1.0, 0.8, 0.6, 0.4, 0.2, 0.1],
+        reason: oblateness
+            .value
+            .is_none()
+            .then(|| "the oblateness is not separated".to_owned()),
+    }
 }
 
 pub(super) fn seeing(separated: bool) -> SeeingRecord {
@@ -245,6 +293,8 @@ pub(super) fn seeing(separated: bool) -> SeeingRecord {
                 share: 0.16,
             },
         ],
+        own_blur: Quantity::missing("arcsec", "not seen: below 0.4 arcsec"),
+        noise_over_expected: Quantity::measured(1.02, 0.03, "1"),
     }
 }
 
@@ -330,6 +380,9 @@ pub(super) fn traces(
                 radius_mas: 210.0 * factor * noise.normal(),
                 cos2_mas: -18.0 + 150.0 * factor * noise.normal(),
                 sin2_mas: 11.0 + 150.0 * factor * noise.normal(),
+                north_deg: 90.0,
+                harmonics_mas: [0.0; 7],
+                influence: [[0.0; 7]; 3],
             });
         }
     }
