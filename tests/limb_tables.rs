@@ -98,6 +98,10 @@ fn a_second_fit_without_frames_gives_the_same_answer() {
     assert_eq!(a.selection.read, b.selection.read);
     assert_eq!(a.masked, b.masked);
     assert_eq!(a.seeing.r0.value.is_some(), b.seeing.r0.value.is_some());
+    if let Some((a, b)) = a.seeing.r0.value.zip(b.seeing.r0.value) {
+        assert!((a / b - 1.0).abs() < 1e-9, "{a} {b}");
+    }
+    assert_eq!(first.noise.is_some(), again.noise.is_some());
     assert!(
         b.created_from
             .iter()

@@ -2,10 +2,9 @@
 
 use super::assemble::seeing::{coherence_time, floors, record};
 use super::correct::{self, CorrectedSequence};
-use super::limb_table::Given;
 use super::measure::{MeasuredSequence, kind_word};
 use super::solve::{SeeingResult, SequenceAir, frame_r0_m, seeing, zenith_factor};
-use super::{Error, Progress, measure_all, products};
+use super::{Error, Progress, measure_all, products, with_tables};
 use crate::frames::{Column, Value, Values, write_ecsv};
 use crate::result::air::{AIR_SCHEMA_VERSION, AirFrame, AirReport, AirSequence};
 use crate::result::record::{Quantity, WarningRecord};
@@ -28,7 +27,8 @@ pub struct Air {
 ///
 /// As [`super::reduce`], but for the shape.
 pub fn measure_air(session: &Session, progress: &dyn Progress) -> Result<Air, Error> {
-    let given: Vec<Option<Given>> = session.sequences.iter().map(|_| None).collect();
+    let (session, given) = with_tables(session)?;
+    let session = &*session;
     let (measured, set_aside) = measure_all(session, &given, progress)?;
     let limbs: Vec<CorrectedSequence> = measured.iter().map(correct::correct).collect();
     let found = seeing(session, &measured, &limbs);

@@ -73,6 +73,8 @@ pub struct Outcome {
     pub stack: Option<Stack>,
     /// The station's limbs as measured, for the tables.
     pub measured: Vec<MeasuredSequence>,
+    /// Variance of the limb's noise over what photons and read noise let expect, with its uncertainty.
+    pub noise: Option<(f64, f64)>,
 }
 
 /// Runs every stage once, in order.
@@ -217,12 +219,14 @@ fn stages(
         sources: products::sources(session)?,
     };
     let (record, traces) = assemble::record(&parts);
+    let noise = seeing.noise.map(|it| (it.value, it.sigma));
     Ok(Outcome {
         record,
         traces,
         limbs,
         stack: stacks.whole,
         measured,
+        noise,
     })
 }
 

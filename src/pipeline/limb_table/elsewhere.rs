@@ -236,6 +236,7 @@ fn given(path: &Path, sheet: &LimbSheet) -> Result<Given, Error> {
         unreadable: Vec::new(),
         exposure_s: 0.0,
         rescaled: 1.0,
+        noise: None,
         elsewhere: true,
     })
 }

@@ -59,6 +59,8 @@ pub(in crate::pipeline) struct Given {
     pub(super) exposure_s: f64,
     /// Scale of the radii over that of the table.
     pub(super) rescaled: f64,
+    /// Variance of their noise over its expectation, with its uncertainty.
+    pub(in crate::pipeline) noise: Option<(f64, f64)>,
     /// Whether another program measured them.
     pub(in crate::pipeline) elsewhere: bool,
 }

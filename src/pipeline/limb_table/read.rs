@@ -65,7 +65,8 @@ impl Saved {
             return Err(damaged("LIMBS has no DATEREF".to_owned()));
         };
         let reference = Utc::parse(&reference)?;
-        let mut sequences = sequences(path, reference)?;
+        let noise = table.real("TL_NOISE")?.zip(table.real("TL_NOISU")?);
+        let mut sequences = sequences(path, reference, noise)?;
         lost(path, &mut sequences)?;
         fill(&table, reference, &mut sequences, &damaged)?;
         Ok(Self {
@@ -167,7 +168,11 @@ impl Saved {
 }
 
 /// The table SEQUENCES.
-fn sequences(path: &Path, reference: Utc) -> Result<BTreeMap<usize, SavedSequence>, Error> {
+fn sequences(
+    path: &Path,
+    reference: Utc,
+    noise: Option<(f64, f64)>,
+) -> Result<BTreeMap<usize, SavedSequence>, Error> {
     let table = TableFile::open(path, Some("SEQUENCES"))?;
     let [index, frames, start, stop, exposure] =
         ["SEQUENCE", "FRAMES", "START", "STOP", "XPOSURE"].map(|it| table.needed(it));
@@ -187,6 +192,7 @@ fn sequences(path: &Path, reference: Utc) -> Result<BTreeMap<usize, SavedSequenc
                     span: (reference.plus_s(start[k]), reference.plus_s(stop[k])),
                     exposure_s: exposure[k],
                     rescaled: 1.0,
+                    noise,
                     elsewhere: false,
                 },
                 scale_arcsec_px: scale[k],

@@ -12,8 +12,8 @@ use crate::sky::Utc;
 use std::collections::BTreeMap;
 use std::path::Path;
 
-/// Writes `limbs.fits`: the table LIMBS, a row for every frame and sector, SEQUENCES, and LOST, the
-/// frames without a limb.
+/// Writes `limbs.fits`: the table LIMBS, a row for every frame and sector, FRAMES, a row for every
+/// frame, SEQUENCES, and LOST, the frames without a limb.
 ///
 /// # Errors
 ///
@@ -30,8 +30,24 @@ pub(in crate::pipeline) fn write(
     let mut cards = common;
     cards.push(Card::text("DATEREF", printed, "TIME counts from here"));
     cards.extend(made_with(session));
+    if let Some((value, sigma)) = outcome.noise {
+        cards.push(Card::real(
+            "TL_NOISE",
+            value,
+            "variance of the noise over that expected",
+        ));
+        cards.push(Card::real(
+            "TL_NOISU",
+            sigma,
+            "standard uncertainty of TL_NOISE",
+        ));
+    }
     let mut file = FitsWriter::create(path)?;
     file.table("LIMBS", &limbs(outcome, reference), &cards)?;
+    let counted = cards.iter().filter(|it| it.name == "DATEREF").cloned();
+    let counted: Vec<Card> = counted.collect();
+    let frames = frame_table::columns(&outcome.traces.frames);
+    file.table("FRAMES", &frames, &counted)?;
     file.table("SEQUENCES", &sequences(outcome, reference), &[])?;
     let counted = Card::text("DATEREF", reference.to_iso(), "TIME counts from here");
     let frames = frame_table::columns(&outcome.traces.frames);

@@ -63,6 +63,8 @@ pub struct MeasuredSequence {
     pub from_table: bool,
     /// Whether another program measured them.
     pub elsewhere: bool,
+    /// Of limbs from a table: variance of their noise over its expectation, with its uncertainty.
+    pub saved_noise: Option<(f64, f64)>,
     /// Its files and frames.
     pub list: frames::Sequence,
     /// Frames with a limb, in order of time.
@@ -221,6 +223,7 @@ pub(in crate::pipeline) fn measure(
         span_utc: (first.0, last.0),
         from_table: given.is_some(),
         elsewhere: given.is_some_and(|it| it.elsewhere),
+        saved_noise: given.and_then(|it| it.noise),
         list,
         frames: measured,
         lost,

@@ -25,6 +25,9 @@ const OUTLIER: f64 = 8.0;
 /// The ratio for one sequence, from a few of its frames spread over it; none where they cannot be read
 /// again or are too few.
 pub(super) fn noise_ratio(sequence: &MeasuredSequence) -> Option<NoiseRatio> {
+    if sequence.from_table {
+        return None;
+    }
     let halves = [false, true].map(|odd| sequence.setup.annulus.half(odd));
     let (model, slope) = predicted(&sequence.setup, &sequence.middle);
     let mut reader = Reader::new();

@@ -73,7 +73,11 @@ pub(in crate::pipeline) fn seeing(
         };
     }
     let ratios: Vec<Option<NoiseRatio>> = measured.par_iter().map(noise_ratio).collect();
-    let noise = pooled(&ratios);
+    // Limbs of a table bring the ratio of the run that measured them.
+    let noise = pooled(&ratios).or_else(|| {
+        let saved = measured.iter().find_map(|it| it.saved_noise);
+        saved.map(|(value, sigma)| NoiseRatio { value, sigma })
+    });
     let owned: Vec<Series> = measured
         .iter()
         .zip(limbs)
