@@ -1,11 +1,15 @@
 //! The main job: the stages in order, each called once.
 
 mod assemble;
+pub mod axis_blur;
 mod band;
+mod blemishes;
 mod correct;
 mod definitions;
 mod error;
 mod limb_model;
+mod mask_image;
+mod masking;
 pub mod measure;
 pub mod products;
 pub mod single;
@@ -78,9 +82,18 @@ pub fn reduce(
     options: &Options,
     progress: &dyn Progress,
 ) -> Result<Outcome, Error> {
-    let (measured, set_aside) = measure_all(session, progress)?;
+    let (mut measured, set_aside) = measure_all(session, progress)?;
+    let image = session.mask.as_ref().map(mask_image::bins).transpose()?;
+    let blemishes = blemishes::judge(&mut measured, image.as_deref());
+    axis_blur::work_out(&mut measured)?;
     let limbs: Vec<CorrectedSequence> = measured.iter().map(correct::correct).collect();
-    let seeing = solve::seeing(session, &measured, &limbs);
+    // What stays where it is moves no harmonic in time: the seeing uses the whole limb.
+    let bare: Vec<CorrectedSequence> = measured
+        .iter()
+        .zip(&limbs)
+        .map(|(m, l)| correct::without_mask(m, l))
+        .collect();
+    let seeing = solve::seeing(session, &measured, &bare);
     let selected = solve::select(&measured, &limbs)?;
     let model = limb_model::lines(session, &measured)?;
     let known = solve::known(session, &measured);
@@ -92,7 +105,17 @@ pub fn reduce(
     };
     let by_stack = stacking::shape(&stacks, &measured, &shape, &known, &model);
 
+    let masking = masking::record(
+        &blemishes,
+        &measured,
+        &bare,
+        &selected,
+        &shape,
+        &known,
+        model.radius_bias_mas,
+    );
     let parts = assemble::Parts {
+        masking: &masking,
         session,
         options,
         measured: &measured,

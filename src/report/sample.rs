@@ -3,8 +3,8 @@
 mod parts;
 
 use parts::{
-    budget, covariance, definitions, instrument, kept_curve, null_tests, refraction, seeing,
-    sequence, traces,
+    budget, covariance, definitions, instrument, kept_curve, masking, null_tests, refraction,
+    seeing, sequence, traces,
 };
 
 use crate::result::record::*;
@@ -168,6 +168,8 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
                     else { Quantity::missing("arcsec/century", "the oblateness was not separated") },
                 rotation_figure: Quantity::measured(7.84, 0.12, "mas"),
             },
+            masking: Some(masking(separated)),
+            axis_blur: Vec::new(),
             oblateness,
             radius,
         },

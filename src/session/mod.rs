@@ -43,8 +43,8 @@ mod tests;
 
 pub use environment::Environment;
 pub use facts::{
-    Calibration, Camera, Filter, Instrument, Kind, LimbSettings, Moment, Projection, Refractivity,
-    ScaleOf, Sequence, Session, Site, Telescope, Time, Weather, WeatherSource,
+    Calibration, Camera, Filter, Instrument, Kind, LimbSettings, MaskImage, Moment, Projection,
+    Refractivity, ScaleOf, Sequence, Session, Site, Telescope, Time, Weather, WeatherSource,
 };
 pub use fault::{Fault, FaultKind, SessionError};
 pub use filter_curve::FilterCurve;
@@ -140,6 +140,7 @@ fn assembled(
     let refractivity = build::refractivity(&mut reader, &root);
     let time = build::time(&mut reader, &root);
     let limb = build::limb(&mut reader, &root);
+    let mask = build::mask(&mut reader, &root, &mut read);
     let environment = build::environment(&mut reader, &root, &mut read);
     let mut common = sequences::Common::new(&root, calibration.as_ref());
     let sequences: Vec<Option<Sequence>> = outlines
@@ -179,6 +180,7 @@ fn assembled(
             time: time?,
             limb: limb?,
             headers,
+            mask: mask?,
             environment: environment?,
             sequences: sequences.into_iter().collect::<Option<_>>()?,
             sources: read,

@@ -14,13 +14,16 @@ use super::measure::MeasuredSequence;
 use super::solve::{SeeingResult, Selected, Shape};
 use super::stacking::Stacks;
 use super::{Options, SetAside};
-use crate::result::record::{Record, SCHEMA_VERSION, ShapeQuantity, SourceFile, Status, Traces};
+use crate::result::record::{
+    MaskingRecord, Record, SCHEMA_VERSION, ShapeQuantity, SourceFile, Status, Traces,
+};
 use crate::session::Session;
 use crate::shape::{Contribution, Fit, Known};
 use statrs::distribution::{ContinuousCDF, StudentsT};
 
 /// Everything the record is made from.
 pub(super) struct Parts<'a> {
+    pub(super) masking: &'a MaskingRecord,
     pub(super) session: &'a Session,
     pub(super) options: &'a Options,
     pub(super) measured: &'a [MeasuredSequence],

@@ -3,7 +3,7 @@
 
 use super::{Parts, lines, quantity};
 use crate::budget;
-use crate::pipeline::definitions;
+use crate::pipeline::{definitions, masking};
 use crate::result::record::{
     AirRecord, ByStack, Covariance, DistortionRecord, NullTest, Quadrupole, Quantity, Separation,
     ShapeQuantity, ShapeRecord,
@@ -49,6 +49,8 @@ pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
         definitions: definitions::list(p.measured, &radius, &oblateness, p.model.blur),
         kept_curve: p.shape.curve.clone(),
         quadrupole: quadrupole(&oblateness),
+        masking: Some(p.masking.clone()),
+        axis_blur: masking::axis_blurs(p.measured),
         oblateness,
         radius,
         p4,

@@ -4,20 +4,22 @@ mod sky;
 mod setup;
 mod reading;
 
+use super::axis_blur::{self, AxisBlur};
 use super::{Error, Progress};
 use crate::air::{BandInAir, Conditions};
 use crate::frames::{self, FrameRef};
 use crate::limb::blemish::{self, Blemish};
+use crate::limb::residual::{Facing, Residuals};
 use crate::limb::{self, Extraction, LimbError, ObservedLimb};
 use crate::refraction::{self, Moment};
 use crate::session::{Kind, Session, WeatherNote};
 use crate::shape::{AirResponse, LARGEST_ZENITH_DEG};
-use crate::sky::Utc;
+use crate::sky::{Parity, Utc};
 use ndarray::Array2;
 use reading::{each_frame, first_blur, start, times};
 use setup::setup;
 use sky::{Sky, interpolated};
-use std::sync::Arc;
+use std::sync::{Arc, Mutex, PoisonError};
 
 pub use setup::Setup;
 pub(super) use setup::{limb_optics, predicted};
@@ -64,6 +66,15 @@ pub struct MeasuredSequence {
     pub lost: Vec<LostFrame>,
     /// Sectors left out of the whole sequence, and why.
     pub blemishes: Vec<Option<Blemish>>,
+    /// Bins of the position angle from solar north, a full turn, that are left out of every frame
+    /// wherever they fall; empty for none.
+    pub sun_masked: Vec<bool>,
+    /// Share of a sector and frame left out because the brightness passed, a cloud or a bird.
+    pub passing: f64,
+    /// The lasting second harmonic of the blur, and what it does to the radius.
+    pub axis_blur: AxisBlur,
+    /// What the frames' pixels leave over inside the limb.
+    pub residuals: Residuals,
     /// What stacking and the budget need again.
     pub setup: Arc<Setup>,
     /// Conditions at mid sequence.
@@ -121,25 +132,51 @@ pub fn measure(
     let expected_px =
         model_radii.0.iter().sum::<f64>() / model_radii.0.len() as f64 / setup.scale_arcsec_px;
 
+    let extraction = |blur_start: f64| Extraction {
+        table: &setup.table,
+        annulus: &setup.annulus,
+        calibration: &setup.calibration,
+        detector: setup.detector,
+        model_arcsec: &model_radii.0,
+        model_slope: &model_radii.1,
+        blur_start,
+    };
     let measure_one = |raw: &Array2<f32>, blur_start: f64| -> Result<ObservedLimb, LimbError> {
         let start = start(raw, &setup, expected_px)?;
-        let extraction = Extraction {
-            table: &setup.table,
-            annulus: &setup.annulus,
-            calibration: &setup.calibration,
-            detector: setup.detector,
-            model_arcsec: &model_radii.0,
-            model_slope: &model_radii.1,
-            blur_start,
-        };
-        limb::extract(raw.view(), start, &extraction)
+        limb::extract(raw.view(), start, &extraction(blur_start))
     };
     let blur_start = first_blur(&list, &setup, &measure_one);
+    let mut moments: Vec<Option<Result<Moment, Error>>> = times
+        .iter()
+        .map(|&(utc, _)| Some(sky.moment(utc).map(|it| it.0)))
+        .collect();
+    let facings: Vec<Option<Facing>> = moments
+        .iter()
+        .map(|it| it.as_ref()?.as_ref().ok().map(facing))
+        .collect();
+    let empty = Residuals::new(setup.annulus.sectors());
+    let residuals = Mutex::new(empty.clone());
     progress.stage(
         &format!("sequence {}: limbs", index + 1),
         list.frames.len() as u64,
     );
-    let outcomes = each_frame(&list, progress, |raw| measure_one(raw, blur_start));
+    let outcomes = each_frame(
+        &list,
+        progress,
+        || empty.clone(),
+        |sums, frame, raw| {
+            let limb = measure_one(raw, blur_start)?;
+            if let Some(Some(facing)) = facings.get(frame) {
+                sums.add(raw.view(), &limb, *facing, &extraction(blur_start));
+            }
+            Ok(limb)
+        },
+        // Whole numbers: the order of the runs does not matter.
+        |sums| {
+            let mut all = residuals.lock().unwrap_or_else(PoisonError::into_inner);
+            all.merge(&sums);
+        },
+    );
 
     let mut measured = Vec::new();
     let mut lost: Vec<LostFrame> = list
@@ -155,7 +192,10 @@ pub fn measure(
         match outcome {
             Ok(limb) => {
                 let utc = times[frame].0;
-                let (moment, ..) = sky.moment(utc)?;
+                let Some(moment) = moments[frame].take() else {
+                    continue;
+                };
+                let moment = moment?;
                 let air = interpolated(&nodes, utc.minus(first.0));
                 measured.push(MeasuredFrame {
                     frame,
@@ -183,6 +223,9 @@ pub fn measure(
         });
     }
     let blemishes = blemish::judge(&measured.iter().map(|it| &it.limb).collect::<Vec<_>>());
+    let mut limbs: Vec<&mut ObservedLimb> = measured.iter_mut().map(|it| &mut it.limb).collect();
+    let passing = blemish::leave_out_passing(&mut limbs, &blemishes);
+    let axis_blur = axis_blur::second_harmonic(measured.iter().map(|it| &it.limb));
     let zenith_deg = middle.sun.zenith_true_rad.to_degrees();
     let set_aside = (zenith_deg > LARGEST_ZENITH_DEG && middle.map.is_some()).then(|| {
         format!(
@@ -204,6 +247,12 @@ pub fn measure(
         frames: measured,
         lost,
         blemishes,
+        sun_masked: Vec::new(),
+        passing,
+        axis_blur,
+        residuals: residuals
+            .into_inner()
+            .unwrap_or_else(PoisonError::into_inner),
         setup,
         conditions: station.as_ref().map(|it| it.0.conditions),
         weather_note: station.and_then(|it| it.1),
@@ -215,6 +264,14 @@ pub fn measure(
         set_aside,
         exposure_s: times[0].1.unwrap_or(0.0),
     })
+}
+
+/// How the detector lies on the Sun at a moment.
+pub(super) fn facing(moment: &Moment) -> Facing {
+    Facing {
+        zero_rad: moment.orientation.position_angle_rad(0.0) - moment.sun.axis_rad,
+        forward: moment.orientation.parity == Parity::Sky,
+    }
 }
 
 /// Whether a sequence is of whole disks that are followed.
