@@ -12,7 +12,7 @@ use std::fs;
 use std::path::{Path, PathBuf};
 use std::process::{Command, Output};
 use truelimb::disk::{Darkening, DarkeningLaw};
-use truelimb::frames::{Column, CubeShape, FitsWriter, Values};
+use truelimb::frames::{Card, Column, CubeShape, FitsWriter, ImageFile, Values};
 
 /// A disk to be painted, pixels.
 #[derive(Clone, Copy)]
@@ -308,6 +308,65 @@ fn limb_refuses_what_holds_no_limb() {
     assert_refused_in_a_line(&["limb", shown(&at("cut.fits"))], &["cut.fits"]);
 }
 
+/// The image with everything to the left of a column dark, as behind a dome.
+fn occulted(disk: Painted, left_of: usize, path: &Path) {
+    let mut image = disk.image(4000.0).mapv(|it| it.round().max(0.0) as u16);
+    image.slice_mut(ndarray::s![.., ..left_of]).fill(80);
+    let shape = CubeShape {
+        width: disk.width,
+        height: disk.height,
+        planes: 1,
+        compressed: false,
+    };
+    let mut file = FitsWriter::create(path).unwrap();
+    file.begin_u16(None, shape, &[]).unwrap();
+    file.plane_u16(&image).unwrap();
+    file.finish().unwrap();
+}
+
+#[test]
+fn limb_of_a_disk_that_is_cut_or_occulted_in_part_is_right_or_refused() {
+    let folder = folder();
+    let mut answered = Vec::new();
+    // Share of the limb that is there, by the painter's geometry.
+    let there = |left_px: f64| {
+        let at = (DISK.x_px - left_px) / DISK.radius_px;
+        1.0 - at.clamp(-1.0, 1.0).acos() / (0.5 * TAU)
+    };
+    for gone_px in [10.0, 45.0, 90.0, 130.0, 180.0] {
+        let path = folder.path().join("occulted.fits");
+        let left = DISK.x_px - DISK.radius_px + gone_px;
+        occulted(DISK, left.round() as usize, &path);
+        let cut = Painted {
+            x_px: DISK.x_px - left,
+            ..DISK
+        };
+        let outside = folder.path().join("cut.fits");
+        cut.write_u16(&outside);
+        for (path, disk) in [(path, DISK), (outside, cut)] {
+            let output = run(&["limb", shown(&path), "--json"]);
+            if output.status.code() == Some(0) {
+                assert_limb(&path, disk);
+                answered.push(there(left));
+            } else {
+                assert_refused_in_a_line(
+                    &["limb", shown(&path)],
+                    &[path.file_name().unwrap().to_str().unwrap()],
+                );
+                assert!(
+                    there(left) < 0.8,
+                    "refused with {:.2} of the limb there: {}",
+                    there(left),
+                    text(&output.stderr)
+                );
+            }
+        }
+    }
+    println!("answered with these shares of the limb: {answered:.2?}");
+    assert!(answered.len() >= 2, "{answered:?}");
+    assert!(answered.iter().all(|it| *it > 0.45), "{answered:?}");
+}
+
 // ---- reduce ----------------------------------------------------------------------------------
 
 /// A copy of the small session, with its `session.toml` changed.
@@ -434,8 +493,8 @@ fn frames_without_a_sun_are_refused() {
         compressed: false,
     };
     let cards = [
-        truelimb::frames::Card::text("DATE-OBS", "2026-06-14T07:20:00.000", ""),
-        truelimb::frames::Card::real("EXPTIME", 0.002, ""),
+        Card::text("DATE-OBS", "2026-06-14T07:20:00.000", ""),
+        Card::real("EXPTIME", 0.002, ""),
     ];
     let mut file = FitsWriter::create(&copy.path("blank.fits")).unwrap();
     file.begin_u16(None, shape, &cards).unwrap();
@@ -445,6 +504,145 @@ fn frames_without_a_sun_are_refused() {
     .unwrap();
     file.finish().unwrap();
     copy.assert_refused(&["sequence 1", "disk"]);
+}
+
+/// Every cube of the small session with everything to the left of a column dark.
+fn occulted_session(left_of: usize) -> Copied {
+    let copy = Copied::new(ToOwned::to_owned);
+    for (name, date) in [
+        ("burst_000.fits", "2026-06-14T07:20:00.000"),
+        ("roll_001.fits", "2026-06-14T07:32:00.000"),
+        ("roll_002.fits", "2026-06-14T07:44:00.000"),
+        ("roll_003.fits", "2026-06-14T07:56:00.000"),
+    ] {
+        let mut planes = Vec::new();
+        {
+            let mut file = ImageFile::open(&copy.path(name)).unwrap();
+            for plane in 0..file.planes() {
+                let mut image = Array2::zeros((0, 0));
+                file.read_plane(plane, &mut image).unwrap();
+                let mut image = image.mapv(|it: f32| it.round() as u16);
+                image.slice_mut(ndarray::s![.., ..left_of]).fill(100);
+                planes.push(image);
+            }
+        }
+        let shape = CubeShape {
+            width: 384,
+            height: 384,
+            planes: planes.len(),
+            compressed: false,
+        };
+        let cards = [
+            Card::text("DATE-OBS", date, ""),
+            Card::text("DATEREF", date, ""),
+            Card::real("EXPTIME", 0.002, ""),
+            Card::text("CTYPE3", "UTC", ""),
+            Card::text("CUNIT3", "s", ""),
+            Card::real("CRPIX3", 1.0, ""),
+            Card::real("CRVAL3", 0.0, ""),
+            Card::real("CDELT3", 0.8, ""),
+        ];
+        let mut file = FitsWriter::create(&copy.path(name)).unwrap();
+        file.begin_u16(None, shape, &cards).unwrap();
+        for it in &planes {
+            file.plane_u16(it).unwrap();
+        }
+        file.finish().unwrap();
+    }
+    copy
+}
+
+#[test]
+fn a_disk_occulted_in_part_is_reduced_with_honest_errors_or_refused() {
+    // A fifth of the limb behind the dome.
+    let copy = occulted_session(60);
+    let (session, output) = (copy.path("session.toml"), copy.path("out"));
+    let found = json(&[
+        "reduce",
+        shown(&session),
+        "-o",
+        shown(&output),
+        "--json",
+        "-q",
+    ]);
+    let truth: Value =
+        serde_json::from_str(&fs::read_to_string(copy.path("truth.json")).unwrap()).unwrap();
+    let radius = number(&truth["shape"], "R_au_as") + number(&truth, "limb_inflection_offset_as");
+    for (key, truth) in [
+        ("radius", radius),
+        ("oblateness", number(&truth["shape"], "dr_mas")),
+    ] {
+        let it = &found["shape"][key];
+        let off = (number(it, "value") - truth) / number(it, "sigma");
+        println!("{key}: {off:.2} sigma off, sigma {}", number(it, "sigma"));
+        assert!(off.abs() < 4.0, "{key} is {off} sigma off: {it}");
+    }
+    let left_out: f64 = found["masked"]
+        .as_array()
+        .unwrap()
+        .iter()
+        .filter(|it| it["sequence"] == 0)
+        .map(|it| number(it, "to_deg") - number(it, "from_deg"))
+        .sum();
+    assert!(
+        (75.0..140.0).contains(&left_out),
+        "{left_out} degrees left out"
+    );
+
+    // More than half of it.
+    occulted_session(250).assert_refused(&["sequence"]);
+}
+
+#[test]
+fn a_mask_image_leaves_its_arcs_out_and_a_wrong_one_is_refused() {
+    let keys = |radius_px: f64| {
+        format!(
+            "[mask]\nimage = \"picture.fits\"\ncentre_x_px = 150\ncentre_y_px = 150\nradius_px = {radius_px}\nbrighter_than = 1.3\n\n[[sequence]]\nkind = \"burst\""
+        )
+    };
+    let with = |radius_px: f64| {
+        let copy =
+            Copied::new(|text| replaced(text, "[[sequence]]\nkind = \"burst\"", &keys(radius_px)));
+        // Solar north up, east to the left; bright from 60 to 70 degrees of position angle.
+        let picture = Array2::from_shape_fn((301, 301), |(y, x)| {
+            let (dx, dy) = (x as f64 - 150.0, y as f64 - 150.0);
+            let bright = (150.0..160.0).contains(&dy.atan2(dx).to_degrees());
+            if bright { 2.0_f32 } else { 1.0 }
+        });
+        let mut file = FitsWriter::create(&copy.path("picture.fits")).unwrap();
+        file.image_f32(None, &picture, &[]).unwrap();
+        file.finish().unwrap();
+        copy
+    };
+    let copy = with(120.0);
+    let (session, output) = (copy.path("session.toml"), copy.path("out"));
+    let found = json(&[
+        "reduce",
+        shown(&session),
+        "-o",
+        shown(&output),
+        "--json",
+        "-q",
+    ]);
+    let arcs = found["shape"]["masking"]["arcs"].as_array().unwrap();
+    let arc = arcs.iter().find(|it| it["kind"] == "image").unwrap();
+    assert_eq!(arc["stays_on"], "sun");
+    assert!((number(arc, "from_deg") - 60.0).abs() < 1.1, "{arc}");
+    assert!((number(arc, "to_deg") - 70.0).abs() < 1.1, "{arc}");
+    for sequence in 0..4 {
+        let covered = found["masked"]
+            .as_array()
+            .unwrap()
+            .iter()
+            .filter(|it| it["sequence"] == sequence && it["reason"] == "covered by the mask image")
+            .map(|it| number(it, "to_deg") - number(it, "from_deg"))
+            .sum::<f64>();
+        assert!(
+            (9.0..16.0).contains(&covered),
+            "{covered} degrees in sequence {sequence}"
+        );
+    }
+    with(160.0).assert_refused(&["picture.fits", "mask.radius_px", "301 x 301"]);
 }
 
 #[test]

@@ -132,7 +132,7 @@ fn noise_free(
 }
 
 /// Level of the noise-free limb: only ratios matter.
-const LEVEL_ADU: f64 = 30_000.0;
+pub const LEVEL_ADU: f64 = 30_000.0;
 
 /// Measures a noise-free limb that is made with the tables `truth` by the extraction as it stands.
 ///

@@ -38,9 +38,28 @@ const ORDINARY_MISFIT: f64 = 1.5;
 /// Half width of the running median, as a share of the limb.
 const RUNNING_SHARE: f64 = 0.06;
 
+/// Change of a sector's brightness against its own median in time, and standard deviations of it,
+/// beyond which something passed before it.
+const PASSING: (f64, f64) = (0.05, 7.0);
+
+/// Neighbouring sectors that must change together: a cloud is wide, a particle hit is not.
+const PASSING_SECTORS: usize = 3;
+
 /// Why a sector is left out of every frame of a sequence.
 #[derive(Clone, Copy, Debug, PartialEq, Eq)]
 pub enum Blemish {
+    /// A dark structure that stays on the Sun.
+    Spot,
+    /// A bright structure that stays on the Sun.
+    Facula,
+    /// The mask image covers it.
+    Image,
+    /// A structure that stays on the detector.
+    Dust,
+    /// Dead columns or rows cross it.
+    Column,
+    /// It lies outside the field.
+    Edge,
     /// Its brightness is not that of its neighbours.
     Brightness,
     /// Its pixels do not follow the limb's profile.
@@ -55,12 +74,94 @@ impl Blemish {
     /// The reason in words.
     pub fn words(self) -> &'static str {
         match self {
+            Self::Spot => "spot: dark structure that stays on the Sun",
+            Self::Facula => "facula: bright structure that stays on the Sun",
+            Self::Image => "covered by the mask image",
+            Self::Dust => "dust: structure that stays on the detector",
+            Self::Column => "dead columns or rows",
+            Self::Edge => "outside the field",
             Self::Brightness => "brightness differs from the neighbouring limb",
             Self::Profile => "pixels do not follow the profile of the limb",
             Self::Seldom => "outside the field or unusable in most frames",
             Self::Margin => "margin beside a blemish",
         }
     }
+
+    /// What kind of thing it is, in one word.
+    pub fn kind(self) -> &'static str {
+        match self {
+            Self::Spot => "spot",
+            Self::Facula => "facula",
+            Self::Image => "image",
+            Self::Dust => "dust",
+            Self::Column => "column",
+            Self::Edge => "edge",
+            Self::Brightness => "brightness",
+            Self::Profile => "profile",
+            Self::Seldom => "absent",
+            Self::Margin => "margin",
+        }
+    }
+
+    /// Whether the sector is not there at all.
+    pub fn is_absence(self) -> bool {
+        matches!(self, Self::Seldom | Self::Edge | Self::Column)
+    }
+
+    /// Whether it stays at its angle on the Sun, not on the detector.
+    pub fn on_the_sun(self) -> bool {
+        matches!(self, Self::Spot | Self::Facula | Self::Image)
+    }
+}
+
+/// Marks as masked, frame by frame, sectors before which something passed: their brightness changed
+/// with their neighbours' against its own course in time. Sectors with a blemish are not looked at.
+/// Returns the share of all sectors and frames that it took.
+pub fn leave_out_passing(limbs: &mut [&mut ObservedLimb], blemishes: &[Option<Blemish>]) -> f64 {
+    let count = blemishes.len();
+    if limbs.len() < 5 {
+        return 0.0;
+    }
+    let usable = |limb: &ObservedLimb, s: usize| {
+        limb.sectors[s].flag == Flag::Good && blemishes[s].is_none()
+    };
+    let mut ratio: Vec<Vec<f64>> = limbs
+        .iter()
+        .map(|it| {
+            let gains = |s: usize| usable(it, s).then_some(it.sectors[s].gain_adu);
+            let level = median((0..count).filter_map(gains));
+            (0..count)
+                .map(|s| gains(s).map_or(f64::NAN, |it| it / level))
+                .collect()
+        })
+        .collect();
+    for s in 0..count {
+        let middle = median(ratio.iter().map(|it| it[s]).filter(|it| it.is_finite()));
+        for it in &mut ratio {
+            it[s] = it[s] / middle - 1.0;
+        }
+    }
+    let all = ratio.iter().flatten().filter(|it| it.is_finite());
+    let sigma = 1.4826 * median(all.map(|it| it.abs()));
+    let mut taken = 0;
+    for (limb, row) in limbs.iter_mut().zip(&ratio) {
+        let odd: Vec<bool> = row
+            .iter()
+            .map(|it| it.abs() > PASSING.0 && it.abs() > PASSING.1 * sigma)
+            .collect();
+        let wide = |s: usize| {
+            (0..PASSING_SECTORS)
+                .any(|k| (0..PASSING_SECTORS).all(|j| odd[(s + count + j - k) % count]))
+        };
+        for s in 0..count {
+            let beside = [(s + count - 1) % count, s, (s + 1) % count];
+            if usable(limb, s) && beside.iter().any(|&n| wide(n)) {
+                limb.sectors[s].flag = Flag::Masked;
+                taken += 1;
+            }
+        }
+    }
+    f64::from(taken) / (count * limbs.len()) as f64
 }
 
 /// Judges the sectors of one sequence.
@@ -194,6 +295,34 @@ mod tests {
     fn a_clean_limb_loses_nothing() {
         let it = limb(ripple);
         assert!(judge(&[&it, &it, &it]).iter().all(Option::is_none));
+    }
+
+    #[test]
+    fn a_cloud_is_left_out_where_and_when_it_passes() {
+        let mut limbs: Vec<ObservedLimb> = (0..20)
+            .map(|k| {
+                limb(|s| {
+                    ripple(s + 7 * k)
+                        * if k == 6 && (30..42).contains(&s) {
+                            0.8
+                        } else {
+                            1.0
+                        }
+                })
+            })
+            .collect();
+        // One sector that flickers alone is no cloud.
+        limbs[3].sectors[90].gain_adu *= 0.7;
+        let mut list: Vec<&mut ObservedLimb> = limbs.iter_mut().collect();
+        let share = leave_out_passing(&mut list, &[None; 120]);
+        assert!((share - 14.0 / 2400.0).abs() < 1e-12, "{share}");
+        let masked = |k: usize| {
+            (0..120)
+                .filter(|&s| limbs[k].sectors[s].flag == Flag::Masked)
+                .collect::<Vec<_>>()
+        };
+        assert_eq!(masked(6), (29..43).collect::<Vec<_>>());
+        assert!((0..20).filter(|&k| k != 6).all(|k| masked(k).is_empty()));
     }
 
     #[test]

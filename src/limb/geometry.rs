@@ -12,6 +12,8 @@ use std::f64::consts::TAU;
 struct Offsets {
     dx: Vec<i32>,
     dy: Vec<i32>,
+    /// Detector angle about the whole-pixel centre, rad.
+    theta: Vec<f32>,
 }
 
 /// The annulus about the limb, cut in equal sectors.
@@ -60,10 +62,12 @@ impl Annulus {
                 if r < low || r > high {
                     continue;
                 }
-                let turn = (f64::from(dy).atan2(f64::from(dx)) - first_rad) / width_rad + 0.5;
+                let theta = f64::from(dy).atan2(f64::from(dx));
+                let turn = (theta - first_rad) / width_rad + 0.5;
                 let s = turn.floor().rem_euclid(sectors as f64) as usize;
                 offsets[s].dx.push(dx);
                 offsets[s].dy.push(dy);
+                offsets[s].theta.push(theta as f32);
             }
         }
         let directions = (0..sectors)
@@ -90,11 +94,14 @@ impl Annulus {
             .offsets
             .iter()
             .map(|it| {
-                let kept = it.dx.iter().zip(&it.dy);
-                let (dx, dy) = kept
-                    .filter(|(dx, dy)| (*dx + *dy).rem_euclid(2) == parity)
-                    .unzip();
-                Offsets { dx, dy }
+                let kept: Vec<usize> = (0..it.dx.len())
+                    .filter(|&k| (it.dx[k] + it.dy[k]).rem_euclid(2) == parity)
+                    .collect();
+                Offsets {
+                    dx: kept.iter().map(|&k| it.dx[k]).collect(),
+                    dy: kept.iter().map(|&k| it.dy[k]).collect(),
+                    theta: kept.iter().map(|&k| it.theta[k]).collect(),
+                }
             })
             .collect();
         Self {
@@ -161,6 +168,49 @@ impl Annulus {
         out
     }
 
+    /// How far inside the limb the annulus begins, arcsec.
+    pub fn inside_arcsec(&self) -> f64 {
+        self.inside_arcsec
+    }
+
+    /// What a sector lacks with the disk at a centre: share of its pixels outside a field of
+    /// `(height, width)`, share of them for which `bad` holds, and of these the share in the column or
+    /// row that has most.
+    pub fn lacks(
+        &self,
+        sector: usize,
+        centre_px: (f64, f64),
+        (height, width): (usize, usize),
+        bad: impl Fn([usize; 2]) -> bool,
+    ) -> (f64, f64, f64) {
+        let (cx, cy) = (centre_px.0.round() as i64, centre_px.1.round() as i64);
+        let offsets = &self.offsets[sector];
+        let all = offsets.dx.len() as f64;
+        let mut outside = 0.0;
+        let mut at_bad: Vec<[usize; 2]> = Vec::new();
+        for (&dx, &dy) in offsets.dx.iter().zip(&offsets.dy) {
+            let (px, py) = (cx + i64::from(dx), cy + i64::from(dy));
+            if px < 0 || py < 0 || px >= width as i64 || py >= height as i64 {
+                outside += 1.0;
+            } else if bad([py as usize, px as usize]) {
+                at_bad.push([py as usize, px as usize]);
+            }
+        }
+        let mut most = 0;
+        for it in &at_bad {
+            for axis in 0..2 {
+                most = most.max(at_bad.iter().filter(|o| o[axis] == it[axis]).count());
+            }
+        }
+        let bad_count = at_bad.len() as f64;
+        let in_line = if at_bad.is_empty() {
+            0.0
+        } else {
+            most as f64 / bad_count
+        };
+        (outside / all, bad_count / all, in_line)
+    }
+
     /// Pixels a side that hold the whole annulus.
     pub fn size_px(&self) -> usize {
         let reach = self
@@ -184,7 +234,26 @@ impl Annulus {
         into.x_arcsec.clear();
         into.value_adu.clear();
         into.flat_inverse.clear();
-        into.expected = 0;
+        into.expected = self.visit(sector, raw, centre_px, setup, |_, x, value, flat| {
+            into.x_arcsec.push(x);
+            into.value_adu.push(value);
+            into.flat_inverse.push(flat);
+        });
+    }
+
+    /// Shows every usable pixel of one sector: detector angle (rad, to half a pixel), distance from the
+    /// predicted limb (arcsec), calibrated value (ADU), inverse of the flat. Returns how many pixels the
+    /// sector would have in an unlimited field without blemishes.
+    #[inline(always)]
+    pub(super) fn visit(
+        &self,
+        sector: usize,
+        raw: ArrayView2<'_, f32>,
+        centre_px: (f64, f64),
+        setup: &Extraction<'_>,
+        mut show: impl FnMut(f64, f64, f64, f64),
+    ) -> usize {
+        let mut expected = 0;
         let (height, width) = raw.dim();
         let (whole_x, whole_y) = (centre_px.0.round(), centre_px.1.round());
         let (ex, ey) = (centre_px.0 - whole_x, centre_px.1 - whole_y);
@@ -195,7 +264,7 @@ impl Annulus {
         // Curvature of the limb across the sector's own tangential extent is exact in `r`; the
         // predicted radius is a straight line in angle.
         let offsets = &self.offsets[sector];
-        for (&dx, &dy) in offsets.dx.iter().zip(&offsets.dy) {
+        for ((&dx, &dy), &theta) in offsets.dx.iter().zip(&offsets.dy).zip(&offsets.theta) {
             let vx = f64::from(dx) - ex;
             let vy = f64::from(dy) - ey;
             // The plain root: numbers of some hundred pixels cannot overflow.
@@ -205,7 +274,7 @@ impl Annulus {
             if x < -self.inside_arcsec || x > self.outside_arcsec {
                 continue;
             }
-            into.expected += 1;
+            expected += 1;
             let (px, py) = (cx + i64::from(dx), cy + i64::from(dy));
             if px < 0 || py < 0 || px >= width as i64 || py >= height as i64 {
                 continue;
@@ -225,9 +294,13 @@ impl Annulus {
             if !value.is_finite() {
                 continue;
             }
-            into.x_arcsec.push(x);
-            into.value_adu.push(f64::from(value));
-            into.flat_inverse.push(f64::from(flat_inverse));
+            show(
+                f64::from(theta),
+                x,
+                f64::from(value),
+                f64::from(flat_inverse),
+            );
         }
+        expected
     }
 }

@@ -38,7 +38,9 @@ pub mod blemish;
 pub mod geometry;
 pub mod harmonics;
 pub mod locate;
+pub mod residual;
 pub mod sector;
+pub mod structure;
 pub mod template;
 
 use crate::calibrate::{Calibration, Detector};

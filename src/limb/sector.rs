@@ -1,6 +1,7 @@
 //! The fit of one sector: shift, gain, background, its slope, and blur.
 
 use super::geometry::Pixels;
+use super::template::Rows;
 use super::{Extraction, Flag};
 use nalgebra::{SMatrix, SVector};
 
@@ -16,6 +17,12 @@ const OUTLIER_SIGMAS: f64 = 7.0;
 
 /// See [`OUTLIER_SIGMAS`].
 const OUTLIER_SHARE: f64 = 0.08;
+
+/// How far the limb may be from where the fit starts: arcsec, and pixels beside.
+const FIRST_REACH: (f64, f64) = (3.0, 1.0);
+
+/// As [`OUTLIER_SHARE`], before the first round: the gain is not known yet.
+const FIRST_SHARE: f64 = 0.2;
 
 /// Prior width of a sector's blur about the frame's start, as a share of it, and floor in
 /// arcsec^(5/3): wide enough to leave a measured blur alone, so that only sectors that cannot tell
@@ -61,6 +68,29 @@ impl Fit {
         }
     }
 
+    /// Whether a pixel is an outlier wherever within [`FIRST_REACH`] of its start the limb may be:
+    /// what a fit that has not begun can say.
+    fn beyond_any_limb(
+        &self,
+        rows: &Rows<'_>,
+        (x, value): (f64, f64),
+        variance: f64,
+        pixel_arcsec: f64,
+    ) -> bool {
+        let reach = FIRST_REACH.0 + FIRST_REACH.1 * pixel_arcsec;
+        let at = |shift: f64| {
+            let it = rows.at(x - self.shift_arcsec - shift).value;
+            self.gain_adu * it + self.background_adu + self.slope_adu_arcsec * x
+        };
+        let (bright, dark) = (at(reach), at(-reach));
+        let off = if value > bright {
+            value - bright
+        } else {
+            dark - value
+        };
+        off > FIRST_SHARE * self.gain_adu && off * off > OUTLIER_SIGMAS * OUTLIER_SIGMAS * variance
+    }
+
     /// Gauss-Newton rounds on the gathered pixels.
     pub(super) fn refine(
         &mut self,
@@ -77,6 +107,7 @@ impl Fit {
         self.flag = Flag::Good;
         let read_adu2 = (setup.detector.read_noise_e / setup.detector.gain_e_adu).powi(2);
         let per_electron = 1.0 / setup.detector.gain_e_adu;
+        let pixel_arcsec = setup.annulus.scale_arcsec_px();
         let prior_sigma = BLUR_PRIOR.0 * setup.blur_start.abs() + BLUR_PRIOR.1;
         let mut normal = SMatrix::<f64, PARAMETERS, PARAMETERS>::zeros();
         let mut used = 0_usize;
@@ -99,6 +130,11 @@ impl Fit {
                 let signal = if model > 0.0 { model } else { 0.0 };
                 let variance = flat * (signal * per_electron + flat * read_adu2);
                 let residual = value - model;
+                if !self.shift_sigma_arcsec.is_finite()
+                    && self.beyond_any_limb(&rows, (x, value), variance, pixel_arcsec)
+                {
+                    continue;
+                }
                 if residual * residual > OUTLIER_SIGMAS * OUTLIER_SIGMAS * variance
                     && residual.abs() > OUTLIER_SHARE * self.gain_adu.abs()
                     && self.shift_sigma_arcsec.is_finite()

@@ -87,6 +87,44 @@ impl EdgeTable {
         pixel_arcsec: f64,
         angles_rad: &[f64],
     ) -> Result<Self, OpticsError> {
+        Self::of_widths(
+            optics,
+            gaussian_sigma_arcsec,
+            pixel_arcsec,
+            angles_rad,
+            &WIDTHS_ARCSEC,
+        )
+    }
+
+    /// The tables for one blur alone.
+    ///
+    /// # Errors
+    ///
+    /// As [`EdgeTable::new`].
+    pub fn of_blur(
+        optics: &LimbOptics,
+        gaussian_sigma_arcsec: f64,
+        pixel_arcsec: f64,
+        angles_rad: &[f64],
+        blur: f64,
+    ) -> Result<Self, OpticsError> {
+        let width = width_of_blur_arcsec(blur);
+        Self::of_widths(
+            optics,
+            gaussian_sigma_arcsec,
+            pixel_arcsec,
+            angles_rad,
+            &[width, width + 0.01],
+        )
+    }
+
+    fn of_widths(
+        optics: &LimbOptics,
+        gaussian_sigma_arcsec: f64,
+        pixel_arcsec: f64,
+        angles_rad: &[f64],
+        widths_arcsec: &[f64],
+    ) -> Result<Self, OpticsError> {
         let span_arcsec = (7.0 * pixel_arcsec).clamp(24.0, 90.0);
         let step_arcsec = (pixel_arcsec / 64.0).clamp(0.008, 0.04);
         let maker = ProfileMaker::new(optics, span_arcsec, step_arcsec, pixel_arcsec)?;
@@ -108,7 +146,7 @@ impl EdgeTable {
         let values = classes
             .par_iter()
             .map(|&angle| {
-                WIDTHS_ARCSEC
+                widths_arcsec
                     .iter()
                     .flat_map(|&width| {
                         let r0_m = if width > 0.0 {
@@ -129,7 +167,7 @@ impl EdgeTable {
         Ok(Self {
             values,
             class_of_sector,
-            blurs: WIDTHS_ARCSEC.iter().map(|&it| blur_of_width(it)).collect(),
+            blurs: widths_arcsec.iter().map(|&it| blur_of_width(it)).collect(),
             points: grid.n,
             x0_arcsec: grid.x0_arcsec,
             inverse_step: 1.0 / grid.step_arcsec,

@@ -1,10 +1,11 @@
-//! Where the limb is in a blurred profile: the inflection point, and the edge by a finite Fourier
-//! transform.
+//! Where the limb is in a blurred profile: the inflection point, the half intensity, and the edge by a
+//! finite Fourier transform.
 //!
 //! # Model
 //!
 //! ```text
 //! inflection        x at which -dG/dx is greatest
+//! half intensity    x at which G = G(-10 arcsec) / 2
 //! finite transform  F(q) = Integral_{-1/2}^{1/2} G(q + a sin(pi s)) cos(2 pi s) ds = 0
 //! ```
 //!
@@ -31,7 +32,8 @@
 //!
 //! # Source
 //!
-//! Hill, Stebbins & Oleson 1975, `ApJ` 200, 484.
+//! Finite transform: Hill, Stebbins & Oleson 1975, `ApJ` 200, 484. Half intensity: common practice,
+//! no source.
 
 use super::limb_profile::Grid;
 use super::{OpticsError, within};
@@ -91,6 +93,35 @@ pub fn inflection_arcsec(profile: &[f64], grid: &Grid) -> Result<f64, OpticsErro
     } else {
         Err(no_inflection(profile, grid, middle as f64))
     }
+}
+
+/// Where the half intensity is taken of, arcsec from the unblurred limb.
+const LEVEL_ARCSEC: f64 = -10.0;
+
+/// Place at which a profile that falls outward has half of its brightness at 10 arcsec inside the
+/// unblurred limb, arcsec.
+///
+/// # Errors
+///
+/// [`OpticsError::OutOfRange`] for a profile that begins less than 10 arcsec inside, and
+/// [`OpticsError::NoInflection`] where it has no such place.
+pub fn half_intensity_arcsec(profile: &[f64], grid: &Grid) -> Result<f64, OpticsError> {
+    within(
+        "beginning of the profile",
+        grid.x0_arcsec,
+        (f64::NEG_INFINITY, LEVEL_ARCSEC - 3.0 * grid.step_arcsec),
+        "arcsec",
+    )?;
+    let sampled = Sampled { profile, grid };
+    let level = 0.5 * sampled.at(LEVEL_ARCSEC);
+    let last = profile
+        .iter()
+        .rposition(|&it| it > level)
+        .filter(|&it| it + 1 < profile.len())
+        .ok_or_else(|| no_inflection(profile, grid, 0.0))?;
+    let off = |x: f64| sampled.at(x) - level;
+    let (a, b) = (grid.x_arcsec(last), grid.x_arcsec(last + 1));
+    Ok(zero(off, (a, off(a)), (b, off(b))))
 }
 
 fn no_inflection(profile: &[f64], grid: &Grid, index: f64) -> OpticsError {

@@ -1,7 +1,9 @@
 //! The air out of every frame, and the frame's limb in harmonics.
 
-use super::measure::{MeasuredFrame, MeasuredSequence};
+use super::blemishes::on_marked_sun;
+use super::measure::{MeasuredFrame, MeasuredSequence, facing};
 use crate::limb::Flag;
+use crate::limb::blemish::Blemish;
 use crate::limb::harmonics::{Harmonics, Projector};
 use crate::refraction::{self, TrueLimb};
 
@@ -43,7 +45,11 @@ pub(super) fn correct(sequence: &MeasuredSequence) -> CorrectedSequence {
     };
     let mut last: Option<(Vec<bool>, Projector)> = None;
     for (k, frame) in sequence.frames.iter().enumerate() {
-        let limb = refraction::remove(&frame.limb, sequence.setup.plate, &frame.moment);
+        let mut limb = refraction::remove(&frame.limb, sequence.setup.plate, &frame.moment);
+        let to_mas = 1000.0 * frame.moment.sun.distance_au;
+        for (radius, &theta) in limb.radius_mas.iter_mut().zip(&limb.angles_rad) {
+            *radius -= to_mas * sequence.axis_blur.shift_arcsec(theta);
+        }
         let usable = usable(frame, sequence);
         if last.as_ref().is_none_or(|it| it.0 != usable) {
             let Some(it) = Projector::new(&limb.angles_rad, &usable, HIGHEST) else {
@@ -68,11 +74,51 @@ pub(super) fn correct(sequence: &MeasuredSequence) -> CorrectedSequence {
 }
 
 fn usable(frame: &MeasuredFrame, sequence: &MeasuredSequence) -> Vec<bool> {
+    let facing = facing(&frame.moment);
     frame
         .limb
         .sectors
         .iter()
         .zip(&sequence.blemishes)
-        .map(|(it, blemish)| it.flag == Flag::Good && blemish.is_none())
+        .enumerate()
+        .map(|(s, (it, blemish))| {
+            it.flag == Flag::Good
+                && blemish.is_none_or(Blemish::on_the_sun)
+                && !on_marked_sun(sequence, facing, s)
+        })
         .collect()
+}
+
+/// The same limbs projected with everything that was left out for structure taken in again: only
+/// sectors that are not there stay away.
+pub(super) fn without_mask(
+    sequence: &MeasuredSequence,
+    corrected: &CorrectedSequence,
+) -> CorrectedSequence {
+    let mut out = corrected.clone();
+    let mut last: Option<(Vec<bool>, Projector)> = None;
+    for it in &mut out.frames {
+        let frame = &sequence.frames[it.measured];
+        let usable: Vec<bool> = frame
+            .limb
+            .sectors
+            .iter()
+            .zip(&sequence.blemishes)
+            .map(|(sector, blemish)| {
+                sector.flag == Flag::Good && !blemish.is_some_and(Blemish::is_absence)
+            })
+            .collect();
+        if last.as_ref().is_none_or(|known| known.0 != usable) {
+            last = Projector::new(&it.limb.angles_rad, &usable, HIGHEST)
+                .map(|projector| (usable.clone(), projector));
+        }
+        let Some((_, projector)) = &last else {
+            continue;
+        };
+        let variances: Vec<f64> = it.limb.sigma_mas.iter().map(|it| it * it).collect();
+        it.harmonics = projector.apply(&it.limb.radius_mas);
+        it.noise_mas2 = projector.noise(&variances);
+        it.usable = usable;
+    }
+    out
 }

@@ -7,7 +7,7 @@
 use super::measure::MeasuredSequence;
 use crate::limb::Flag;
 use crate::limb::template::width_of_blur_arcsec;
-use crate::optics::definitions::{fftd_arcsec, inflection_arcsec};
+use crate::optics::definitions::{fftd_arcsec, half_intensity_arcsec, inflection_arcsec};
 use crate::optics::limb_profile::{Blur, ProfileMaker};
 use crate::result::record::{DefinitionRecord, ShapeQuantity};
 use crate::units::ARCSEC_RAD;
@@ -80,6 +80,10 @@ pub(super) fn list(
     push("inflection of the blurred limb".to_owned(), &|blur| {
         inflection_arcsec(&profile(blur), &grid).ok()
     });
+    push(
+        "half-intensity: half of the brightness at 10 arcsec inside".to_owned(),
+        &|blur| half_intensity_arcsec(&profile(blur), &grid).ok(),
+    );
     for window in WINDOWS_ARCSEC {
         push(
             format!("finite Fourier transform, window {window} arcsec"),

@@ -63,6 +63,16 @@ pub enum Error {
         "the session has no sequence of kind \"burst\" or \"roll\", from which the shape is measured; add one under [[sequence]]"
     )]
     NoSequence,
+    /// The mask image cannot be used.
+    #[error("{}: mask image: {found}: {cure}", path.display())]
+    MaskImage {
+        /// The file.
+        path: PathBuf,
+        /// What was found, and what is allowed.
+        found: String,
+        /// What to do.
+        cure: String,
+    },
     /// A file could not be written or read.
     #[error("{}: {what}: {reason}", path.display())]
     File {

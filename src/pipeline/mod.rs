@@ -2,12 +2,16 @@
 
 pub mod air;
 mod assemble;
+pub mod axis_blur;
 mod band;
+mod blemishes;
 mod correct;
 mod definitions;
 mod error;
 mod limb_model;
 mod limb_table;
+mod mask_image;
+mod masking;
 pub mod measure;
 mod frame_table;
 pub mod products;
@@ -181,9 +185,18 @@ fn stages(
     options: &Options,
     progress: &dyn Progress,
 ) -> Result<Outcome, Error> {
-    let (measured, set_aside) = measure_all(session, given, progress)?;
+    let (mut measured, set_aside) = measure_all(session, given, progress)?;
+    let image = session.mask.as_ref().map(mask_image::bins).transpose()?;
+    let blemishes = blemishes::judge(&mut measured, image.as_deref());
+    axis_blur::work_out(&mut measured)?;
     let limbs: Vec<CorrectedSequence> = measured.iter().map(correct::correct).collect();
-    let seeing = solve::seeing(session, &measured, &limbs);
+    // What stays where it is moves no harmonic in time: the seeing uses the whole limb.
+    let bare: Vec<CorrectedSequence> = measured
+        .iter()
+        .zip(&limbs)
+        .map(|(m, l)| correct::without_mask(m, l))
+        .collect();
+    let seeing = solve::seeing(session, &measured, &bare);
     let selected = solve::select(&measured, &limbs)?;
     let model = limb_model::lines(session, &measured)?;
     let known = solve::known(session, &measured)?;
@@ -203,7 +216,17 @@ fn stages(
     };
     let by_stack = stacking::shape(&stacks, &shape, &known);
 
+    let masking = masking::record(
+        &blemishes,
+        &measured,
+        &bare,
+        &selected,
+        &shape,
+        &known,
+        model.radius_bias_mas,
+    );
     let parts = assemble::Parts {
+        masking: &masking,
         session,
         options,
         measured: &measured,

@@ -14,7 +14,7 @@ use crate::limb::geometry::Annulus;
 use crate::limb::harmonics::Projector;
 use crate::limb::template::{EdgeTable, blur_of_width, width_of_blur_arcsec};
 use crate::limb::{self, Extraction, Flag, LimbError, ObservedLimb};
-use crate::optics::definitions::{fftd_arcsec, inflection_arcsec};
+use crate::optics::definitions::{fftd_arcsec, half_intensity_arcsec, inflection_arcsec};
 use crate::optics::limb_profile::{Blur, LimbOptics, ProfileMaker};
 use crate::optics::{Exposure, Telescope};
 use crate::units::ARCSEC_RAD;
@@ -30,6 +30,8 @@ pub enum Definition {
     Template,
     /// The blurred limb's inflection point.
     Inflection,
+    /// Half of the blurred limb's brightness at 10 arcsec inside the unblurred limb.
+    HalfIntensity,
     /// Zero of the finite Fourier transform of a window, arcsec.
     Fourier(f64),
 }
@@ -40,6 +42,9 @@ impl Definition {
         match self {
             Self::Template => "template: inflection of the unblurred limb".to_owned(),
             Self::Inflection => "inflection of the blurred limb".to_owned(),
+            Self::HalfIntensity => {
+                "half-intensity: half of the brightness at 10 arcsec inside".to_owned()
+            }
             Self::Fourier(window) => format!("finite Fourier transform, window {window} arcsec"),
         }
     }
@@ -249,6 +254,7 @@ fn displacement_arcsec(
     );
     Ok(match definition {
         Definition::Fourier(window) => fftd_arcsec(&profile, &maker.grid(), window)?,
+        Definition::HalfIntensity => half_intensity_arcsec(&profile, &maker.grid())?,
         _ => inflection_arcsec(&profile, &maker.grid())?,
     })
 }

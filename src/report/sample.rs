@@ -3,8 +3,8 @@
 mod parts;
 
 use parts::{
-    budget, covariance, definitions, instrument, kept_curve, kept_slope, null_tests, random_error,
-    refraction, seeing, sequence, traces,
+    budget, covariance, definitions, instrument, kept_curve, kept_slope, masking, null_tests,
+    random_error, refraction, seeing, sequence, traces,
 };
 
 use crate::result::record::*;
@@ -187,6 +187,8 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
                 by_law: Vec::new(),
                 note: None,
             },
+            masking: Some(masking(separated)),
+            axis_blur: Vec::new(),
             oblateness,
             radius,
         },

@@ -1,6 +1,7 @@
 //! Words and tables of the sections, beside their figures.
 
 mod closing;
+mod masking;
 mod shape;
 
 use super::axis::POINTS_MAX;
@@ -228,6 +229,7 @@ fn left_out(out: &mut String, record: &Record, traces: &Traces) {
     } else {
         out.push_str(&arcs.html());
     }
+    masking::write(out, record);
     if traces.preview.is_none() {
         out.push_str("<p>No picture of the stacked disk was kept.</p>\n");
     }

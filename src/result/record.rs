@@ -432,6 +432,92 @@ pub struct ShapeRecord {
     pub kept_slope: KeptSlope,
     /// J2 and the perihelion.
     pub quadrupole: Quadrupole,
+    /// What was left out for structure at the limb, and what that does.
+    #[serde(default)]
+    pub masking: Option<MaskingRecord>,
+    /// Blur along one axis by sequence, and what was taken off for it.
+    #[serde(default)]
+    pub axis_blur: Vec<AxisBlurRecord>,
+}
+
+/// An arc of the limb left out for what was seen in it, margin included.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct MaskArc {
+    /// `spot`, `facula`, `dust` or `image`.
+    pub kind: String,
+    /// `sun` or `detector`.
+    pub stays_on: String,
+    /// First angle, degrees: on the Sun from its north through east, on the detector from +x towards +y.
+    pub from_deg: f64,
+    /// Last angle, degrees.
+    pub to_deg: f64,
+    /// Greatest contrast, percent of disk centre; a lower limit above 15.
+    pub contrast_percent: Option<f64>,
+    /// Robust standard deviations there.
+    pub robust_sigmas: Option<f64>,
+    /// How it was found.
+    pub how: String,
+}
+
+/// A straight line of radius against brightness over sectors.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct RegressionLine {
+    /// Slope, mas of radius a percent of brightness.
+    pub slope_mas_percent: f64,
+    /// Its standard uncertainty, by the scatter of the sectors.
+    pub sigma_mas_percent: f64,
+    /// Sectors of all sequences.
+    pub sectors: usize,
+}
+
+/// Radius residual against limb brightness: the brightness of each place on the Sun is that in the other
+/// sequences, so that the noise of one does not enter both sides.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct BrightnessRegression {
+    /// Over all sectors.
+    pub whole_limb: Option<RegressionLine>,
+    /// Over the sectors that went to the shape.
+    pub masked_out: Option<RegressionLine>,
+}
+
+/// The shape with and without the mask.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct MaskingRecord {
+    /// Mean share of the limb left out for structure, 0 to 1.
+    pub share_of_limb: f64,
+    /// Mean share of the limb left out, frame by frame, because something passed before it, 0 to 1.
+    pub passing_share: f64,
+    /// Pixels of the annulus, the edge itself apart, that are hit by particles, a frame.
+    pub hits_per_frame: f64,
+    /// The arcs.
+    pub arcs: Vec<MaskArc>,
+    /// Structures that were found and not left out.
+    pub structures_left_in: usize,
+    /// Radius at 1 AU with the mask, arcsec.
+    pub radius_with_arcsec: Option<f64>,
+    /// Radius at 1 AU with nothing left out for structure, arcsec.
+    pub radius_without_arcsec: Option<f64>,
+    /// Oblateness with the mask, mas; none where it is not separated.
+    pub oblateness_with_mas: Option<f64>,
+    /// Oblateness with nothing left out for structure, mas.
+    pub oblateness_without_mas: Option<f64>,
+    /// How radius goes with brightness along the limb.
+    pub brightness_regression: BrightnessRegression,
+}
+
+/// Blur along one axis in one sequence.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct AxisBlurRecord {
+    /// Index of the sequence.
+    pub sequence: usize,
+    /// Mean blur, arcsec^(5/3).
+    pub blur_arcsec53: f64,
+    /// Amplitude of its second harmonic, arcsec^(5/3).
+    pub amplitude_arcsec53: f64,
+    /// Detector angle of the most blurred limb from +x towards +y, degrees, 0 to 180.
+    pub axis_deg: f64,
+    /// What was taken off the radius along that axis, and added across it, mas at 1 AU.
+    pub removed_mas: f64,
 }
 
 /// One turbulent layer of the fit.

@@ -5,8 +5,8 @@ use std::path::{Path, PathBuf};
 use super::document::{Value, folder};
 use super::environment::Environment;
 use super::facts::{
-    Calibration, Camera, Filter, Instrument, LimbSettings, Moment, Projection, Refractivity,
-    RotationLaw, ScaleOf, Session, Site, Telescope, Time, Weather, WeatherSource,
+    Calibration, Camera, Filter, Instrument, LimbSettings, MaskImage, Moment, Projection,
+    Refractivity, RotationLaw, ScaleOf, Session, Site, Telescope, Time, Weather, WeatherSource,
 };
 use super::fault::{Fault, FaultKind, Finding};
 use super::filter_curve::FilterCurve;
@@ -310,6 +310,43 @@ pub(super) fn limb(reader: &mut Reader<'_>, root: &View) -> Option<LimbSettings>
 pub(super) fn rotation(reader: &mut Reader<'_>, root: &View) -> Option<RotationLaw> {
     let view = root.inner("gravity");
     reader.choice(&view, "rotation", tables::ROTATIONS, &RotationLaw::ALL)
+}
+
+/// The mask image. The outer none means that a fault was noted.
+#[expect(
+    clippy::option_option,
+    reason = "the outer none is a fault, the inner one a silence"
+)]
+pub(super) fn mask(
+    reader: &mut Reader<'_>,
+    root: &View,
+    read: &mut Vec<PathBuf>,
+) -> Option<Option<MaskImage>> {
+    if !root.has("mask") {
+        return Some(None);
+    }
+    let view = root.inner("mask");
+    reader.rules(&view);
+    let image = reader.file(&view, "image");
+    let x = reader.number(&view, "centre_x_px");
+    let y = reader.number(&view, "centre_y_px");
+    let radius_px = reader.number(&view, "radius_px");
+    let angle_deg = reader.number(&view, "angle_deg");
+    let parities = [Parity::Sky, Parity::Mirrored];
+    let parity = reader.choice(&view, "parity", tables::PARITIES, &parities);
+    let brighter_than = reader.open_number(&view, "brighter_than");
+    let darker_than = reader.open_number(&view, "darker_than");
+    let image = image??;
+    read.push(image.clone());
+    Some(Some(MaskImage {
+        image,
+        centre_px: (x?, y?),
+        radius_px: radius_px?,
+        angle_deg: angle_deg?,
+        parity: parity?,
+        brighter_than: brighter_than?,
+        darker_than: darker_than?,
+    }))
 }
 
 /// Readings beside the weather. The outer none means that a fault was noted.

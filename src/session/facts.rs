@@ -40,6 +40,8 @@ pub struct Session {
     /// FITS keywords of a station that names them otherwise, by the fact they give: `date`,
     /// `exposure_s`, and the names of keys such as `gain_e_adu`.
     pub headers: BTreeMap<String, String>,
+    /// A picture of the Sun that says which arcs of the limb to leave out.
+    pub mask: Option<MaskImage>,
     /// Readings against which the instrument's terms may drift.
     pub environment: Option<Environment>,
     /// The sequences, in the order of the file.
@@ -50,6 +52,25 @@ pub struct Session {
     pub assumed: Vec<String>,
     /// Keys that are not in the file and were found in the header of a frame.
     pub from_headers: Vec<String>,
+}
+
+/// A picture of the Sun that says which arcs of the limb to leave out.
+#[derive(Clone, Debug, PartialEq)]
+pub struct MaskImage {
+    /// FITS image of the whole disk.
+    pub image: PathBuf,
+    /// Centre of its disk, 0-based pixel centres.
+    pub centre_px: (f64, f64),
+    /// Radius of its disk, px.
+    pub radius_px: f64,
+    /// Position angle of its +y from solar north through east, degrees.
+    pub angle_deg: f64,
+    /// Whether it is mirrored.
+    pub parity: Parity,
+    /// An arc brighter than this, in units of the limb's median, is left out.
+    pub brighter_than: Option<f64>,
+    /// An arc darker than this is left out.
+    pub darker_than: Option<f64>,
 }
 
 impl Session {

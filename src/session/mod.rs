@@ -44,8 +44,9 @@ mod tests;
 
 pub use environment::Environment;
 pub use facts::{
-    Calibration, Camera, Filter, Instrument, Kind, LimbSettings, Moment, Projection, Refractivity,
-    RotationLaw, ScaleOf, Sequence, Session, Site, Telescope, Time, Weather, WeatherSource,
+    Calibration, Camera, Filter, Instrument, Kind, LimbSettings, MaskImage, Moment, Projection,
+    Refractivity, RotationLaw, ScaleOf, Sequence, Session, Site, Telescope, Time, Weather,
+    WeatherSource,
 };
 pub use fault::{Fault, FaultKind, SessionError};
 pub use filter_curve::FilterCurve;
@@ -156,6 +157,7 @@ fn assembled(
     let time = build::time(&mut reader, &root);
     let limb = build::limb(&mut reader, &root);
     let rotation = build::rotation(&mut reader, &root);
+    let mask = build::mask(&mut reader, &root, &mut read);
     let environment = build::environment(&mut reader, &root, &mut read);
     let mut common = sequences::Common::new(&root, calibration.as_ref());
     let sequences: Vec<Option<Sequence>> = outlines
@@ -196,6 +198,7 @@ fn assembled(
             limb: limb?,
             rotation: rotation?,
             headers,
+            mask: mask?,
             environment: environment?,
             sequences: sequences.into_iter().collect::<Option<_>>()?,
             sources: read,

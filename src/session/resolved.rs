@@ -70,6 +70,19 @@ pub fn resolved(session: &Session) -> Value {
             "window_outside_arcsec": limb.window_outside_arcsec,
         },
         "gravity": { "rotation": session.rotation.name() },
+        "mask": session.mask.as_ref().map(|it| json!({
+            "image": shown(&it.image, folder),
+            "centre_x_px": it.centre_px.0,
+            "centre_y_px": it.centre_px.1,
+            "radius_px": it.radius_px,
+            "angle_deg": it.angle_deg,
+            "parity": match it.parity {
+                Parity::Sky => "sky",
+                Parity::Mirrored => "mirrored",
+            },
+            "brighter_than": it.brighter_than,
+            "darker_than": it.darker_than,
+        })),
         "headers": session.headers,
         "environment": session.environment.as_ref().map(|it| json!({
             "log": shown(&it.path, folder),

@@ -18,6 +18,7 @@ mod limb_displacement;
 mod limb_extraction;
 mod limb_map;
 mod limb_motion_kernels;
+mod limb_structure;
 mod meeus_1998;
 mod motion_inversion;
 mod motion_monte_carlo;

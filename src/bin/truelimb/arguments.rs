@@ -176,7 +176,7 @@ pub(crate) struct Limb {
     /// Aperture: diffraction.
     #[arg(long, default_value_t = 0.15)]
     pub(crate) aperture_m: f64,
-    /// Which edge is called the limb: template, inflection, or fourier:WINDOW in arcsec.
+    /// Which edge is called the limb: template, inflection, half-intensity, or fourier:WINDOW in arcsec.
     #[arg(long, default_value = "template")]
     pub(crate) definition: String,
     /// Print JSON.

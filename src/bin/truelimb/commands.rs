@@ -281,12 +281,13 @@ pub(crate) fn limb(it: &Limb) -> Result<Ending, Failure> {
 fn definition(text: &str) -> Result<Definition, Failure> {
     let refused = || {
         Failure::Usage(format!(
-            "--definition is \"{text}\"; allowed are template, inflection, and fourier:WINDOW with a window of 2 to 25 arcsec, such as fourier:10"
+            "--definition is \"{text}\"; allowed are template, inflection, half-intensity, and fourier:WINDOW with a window of 2 to 25 arcsec, such as fourier:10"
         ))
     };
     match text.split_once(':') {
         None if text == "template" => Ok(Definition::Template),
         None if text == "inflection" => Ok(Definition::Inflection),
+        None if text == "half-intensity" => Ok(Definition::HalfIntensity),
         Some(("fourier", window)) => window
             .parse()
             .ok()

@@ -16,12 +16,15 @@ use super::solve::{SeeingResult, Selected, Shape};
 use super::stacking::Stacks;
 use super::{Options, SetAside};
 use crate::budget;
-use crate::result::record::{Record, SCHEMA_VERSION, ShapeQuantity, SourceFile, Status, Traces};
+use crate::result::record::{
+    MaskingRecord, Record, SCHEMA_VERSION, ShapeQuantity, SourceFile, Status, Traces,
+};
 use crate::session::Session;
 use crate::shape::{Block, Contribution, Fit, Known};
 
 /// Everything the record is made from.
 pub(super) struct Parts<'a> {
+    pub(super) masking: &'a MaskingRecord,
     pub(super) session: &'a Session,
     pub(super) options: &'a Options,
     pub(super) measured: &'a [MeasuredSequence],

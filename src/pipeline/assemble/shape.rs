@@ -3,7 +3,7 @@
 
 use super::{Parts, interior, lines, quantity};
 use crate::budget;
-use crate::pipeline::definitions;
+use crate::pipeline::{definitions, masking};
 use crate::result::record::{
     AirRecord, BatchRecord, BootstrapRecord, ByStack, Covariance, DistortionRecord, DriverRecord,
     FactorRecord, NullTest, Quantity, RandomErrorRecord, Separation, ShapeQuantity, ShapeRecord,
@@ -52,6 +52,8 @@ pub(super) fn record(p: &Parts<'_>) -> ShapeRecord {
         random_error: random_error(p),
         kept_slope: p.shape.slope.clone(),
         quadrupole: interior::record(p, &oblateness, &p4),
+        masking: Some(p.masking.clone()),
+        axis_blur: masking::axis_blurs(p.measured),
         oblateness,
         radius,
         p4,

@@ -156,6 +156,15 @@ pub(super) fn records(p: &Parts<'_>) -> Vec<WarningRecord> {
     for text in slopes(p) {
         say("kept-slope", text);
     }
+    if p.masking.structures_left_in > 0 {
+        say(
+            "structure-left-in",
+            format!(
+                "{} structures at the limb were found and not left out, so that enough of it remains; the weaker ones stayed in",
+                p.masking.structures_left_in
+            ),
+        );
+    }
     if !p.shape.separability.oblateness {
         say("not-separated", why_not(p, "the oblateness"));
     }

@@ -4,21 +4,23 @@ mod sky;
 mod setup;
 mod reading;
 
+use super::axis_blur::{self, AxisBlur};
 use super::limb_table::Given;
 use super::{Error, Progress};
 use crate::air::{BandInAir, Conditions};
 use crate::frames::{self, FrameRef};
 use crate::limb::blemish::{self, Blemish};
+use crate::limb::residual::{Facing, Residuals};
 use crate::limb::{self, Extraction, LimbError, ObservedLimb};
 use crate::refraction::{self, Moment};
 use crate::session::{Kind, Session, WeatherNote};
 use crate::shape::{AirResponse, LARGEST_ZENITH_DEG};
-use crate::sky::Utc;
+use crate::sky::{Parity, Utc};
 use ndarray::Array2;
 use reading::{each_frame, first_blur, start, times};
 use setup::setup;
 use sky::{Sky, interpolated};
-use std::sync::Arc;
+use std::sync::{Arc, Mutex, PoisonError};
 
 pub use setup::Setup;
 pub(super) use setup::{limb_optics, predicted};
@@ -73,6 +75,15 @@ pub struct MeasuredSequence {
     pub lost: Vec<LostFrame>,
     /// Sectors left out of the whole sequence, and why.
     pub blemishes: Vec<Option<Blemish>>,
+    /// Bins of the position angle from solar north, a full turn, that are left out of every frame
+    /// wherever they fall; empty for none.
+    pub sun_masked: Vec<bool>,
+    /// Share of a sector and frame left out because the brightness passed, a cloud or a bird.
+    pub passing: f64,
+    /// The lasting second harmonic of the blur, and what it does to the radius.
+    pub axis_blur: AxisBlur,
+    /// What the frames' pixels leave over inside the limb.
+    pub residuals: Residuals,
     /// What stacking and the budget need again.
     pub setup: Arc<Setup>,
     /// Conditions at mid sequence.
@@ -138,19 +149,35 @@ pub(in crate::pipeline) fn measure(
     let expected_px =
         model_radii.0.iter().sum::<f64>() / model_radii.0.len() as f64 / setup.scale_arcsec_px;
 
+    let extraction = |blur_start: f64| Extraction {
+        table: &setup.table,
+        annulus: &setup.annulus,
+        calibration: &setup.calibration,
+        detector: setup.detector,
+        model_arcsec: &model_radii.0,
+        model_slope: &model_radii.1,
+        blur_start,
+    };
     let measure_one = |raw: &Array2<f32>, blur_start: f64| -> Result<ObservedLimb, LimbError> {
         let start = start(raw, &setup, expected_px)?;
-        let extraction = Extraction {
-            table: &setup.table,
-            annulus: &setup.annulus,
-            calibration: &setup.calibration,
-            detector: setup.detector,
-            model_arcsec: &model_radii.0,
-            model_slope: &model_radii.1,
-            blur_start,
-        };
-        limb::extract(raw.view(), start, &extraction)
+        limb::extract(raw.view(), start, &extraction(blur_start))
     };
+    let mut moments: Vec<Option<Result<Moment, Error>>> = times
+        .iter()
+        .enumerate()
+        .map(|(frame, &(utc, _))| {
+            Some(sky.moment(utc).map(|(mut moment, ..)| {
+                moment.orientation = hung(frame).unwrap_or(moment.orientation);
+                moment
+            }))
+        })
+        .collect();
+    let facings: Vec<Option<Facing>> = moments
+        .iter()
+        .map(|it| it.as_ref()?.as_ref().ok().map(facing))
+        .collect();
+    let empty = Residuals::new(setup.annulus.sectors());
+    let residuals = Mutex::new(empty.clone());
     let outcomes = if let Some(it) = given {
         it.limbs(session, &setup, &model_radii.0)
     } else {
@@ -159,7 +186,23 @@ pub(in crate::pipeline) fn measure(
             &format!("sequence {}: limbs", index + 1),
             list.frames.len() as u64,
         );
-        each_frame(&list, progress, |raw| measure_one(raw, blur_start))
+        each_frame(
+            &list,
+            progress,
+            || empty.clone(),
+            |sums, frame, raw| {
+                let limb = measure_one(raw, blur_start)?;
+                if let Some(Some(facing)) = facings.get(frame) {
+                    sums.add(raw.view(), &limb, *facing, &extraction(blur_start));
+                }
+                Ok(limb)
+            },
+            // Whole numbers: the order of the runs does not matter.
+            |sums| {
+                let mut all = residuals.lock().unwrap_or_else(PoisonError::into_inner);
+                all.merge(&sums);
+            },
+        )
     };
 
     let mut measured = Vec::new();
@@ -174,8 +217,10 @@ pub(in crate::pipeline) fn measure(
         match outcome {
             Ok(limb) => {
                 let utc = times[frame].0;
-                let (mut moment, ..) = sky.moment(utc)?;
-                moment.orientation = hung(frame).unwrap_or(moment.orientation);
+                let Some(moment) = moments[frame].take() else {
+                    continue;
+                };
+                let moment = moment?;
                 let air = interpolated(&nodes, utc.minus(first.0));
                 measured.push(MeasuredFrame {
                     frame,
@@ -203,6 +248,9 @@ pub(in crate::pipeline) fn measure(
         });
     }
     let blemishes = blemish::judge(&measured.iter().map(|it| &it.limb).collect::<Vec<_>>());
+    let mut limbs: Vec<&mut ObservedLimb> = measured.iter_mut().map(|it| &mut it.limb).collect();
+    let passing = blemish::leave_out_passing(&mut limbs, &blemishes);
+    let axis_blur = axis_blur::second_harmonic(measured.iter().map(|it| &it.limb));
     let zenith_deg = middle.sun.zenith_true_rad.to_degrees();
     let set_aside = (zenith_deg > LARGEST_ZENITH_DEG && middle.map.is_some()).then(|| {
         format!(
@@ -228,6 +276,12 @@ pub(in crate::pipeline) fn measure(
         frames: measured,
         lost,
         blemishes,
+        sun_masked: Vec::new(),
+        passing,
+        axis_blur,
+        residuals: residuals
+            .into_inner()
+            .unwrap_or_else(PoisonError::into_inner),
         setup,
         conditions: station.as_ref().map(|it| it.0.conditions),
         weather_note: station.and_then(|it| it.1),
@@ -254,6 +308,14 @@ pub fn times_of(session: &Session, index: usize) -> Result<(frames::Sequence, Ve
     let list = frames::list(&session.sequences[index].files)?;
     let times = times(&list, session)?;
     Ok((list, times))
+}
+
+/// How the detector lies on the Sun at a moment.
+pub(super) fn facing(moment: &Moment) -> Facing {
+    Facing {
+        zero_rad: moment.orientation.position_angle_rad(0.0) - moment.sun.axis_rad,
+        forward: moment.orientation.parity == Parity::Sky,
+    }
 }
 
 /// Whether a sequence is of whole disks that are followed.

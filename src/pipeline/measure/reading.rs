@@ -96,11 +96,14 @@ pub(super) fn first_blur(
 type FrameOutcome<T> = Result<T, (&'static str, String)>;
 
 /// Reads every frame once, in contiguous runs for each worker, into one reused buffer, and does
-/// `work` on it; results in the order of the frames whatever the number of threads.
-pub(super) fn each_frame<T: Send>(
+/// `work` on it, with the frame's number and the worker's own sums; results in the order of the frames
+/// whatever the number of threads. A run's sums end in `close`, in any order.
+pub(super) fn each_frame<T: Send, A>(
     list: &frames::Sequence,
     progress: &dyn Progress,
-    work: impl Fn(&Array2<f32>) -> Result<T, LimbError> + Sync,
+    open: impl Fn() -> A + Sync,
+    work: impl Fn(&mut A, usize, &Array2<f32>) -> Result<T, LimbError> + Sync,
+    close: impl Fn(A) + Sync,
 ) -> Vec<FrameOutcome<T>> {
     let run = list
         .frames
@@ -110,18 +113,24 @@ pub(super) fn each_frame<T: Send>(
     let runs: Vec<Vec<FrameOutcome<T>>> = list
         .frames
         .par_chunks(run)
-        .map(|frames| {
+        .enumerate()
+        .map(|(number, frames)| {
             let mut reader = Reader::new();
             let mut raw = Array2::zeros((0, 0));
-            frames
+            let mut sums = open();
+            let outcomes = frames
                 .iter()
-                .map(|&it| {
+                .enumerate()
+                .map(|(k, &it)| {
                     let read = reader.read(list, it, &mut raw);
                     progress.tick();
                     read.map_err(|it| ("could not be read", it.to_string()))?;
-                    work(&raw).map_err(|it| (short(&it), it.to_string()))
+                    work(&mut sums, number * run + k, &raw)
+                        .map_err(|it| (short(&it), it.to_string()))
                 })
-                .collect()
+                .collect();
+            close(sums);
+            outcomes
         })
         .collect();
     runs.into_iter().flatten().collect()

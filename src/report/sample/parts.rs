@@ -429,3 +429,39 @@ fn picture(noise: &mut Noise) -> ndarray::Array2<f32> {
         ((1.0 - 0.62 * (1.0 - mu)) * dark + 0.006 * noise.normal()) as f32
     })
 }
+
+/// A facula and a piece of dust left out.
+pub(super) fn masking(separated: bool) -> MaskingRecord {
+    let line = |slope_mas_percent, sectors| RegressionLine {
+        slope_mas_percent,
+        sigma_mas_percent: 0.83,
+        sectors,
+    };
+    let arc = |kind: &str, stays_on: &str, from_deg, contrast| MaskArc {
+        kind: kind.to_owned(),
+        stays_on: stays_on.to_owned(),
+        from_deg,
+        to_deg: from_deg + 2.25,
+        contrast_percent: Some(contrast),
+        robust_sigmas: Some(11.4),
+        how: "brightness inside the limb against its neighbours".to_owned(),
+    };
+    MaskingRecord {
+        share_of_limb: 0.042,
+        passing_share: 0.0,
+        hits_per_frame: 0.31,
+        arcs: vec![
+            arc("facula", "sun", 71.25, 2.1),
+            arc("dust", "detector", 211.5, -3.4),
+        ],
+        structures_left_in: 0,
+        radius_with_arcsec: Some(959.8662),
+        radius_without_arcsec: Some(959.8671),
+        oblateness_with_mas: separated.then_some(8.23),
+        oblateness_without_mas: separated.then_some(8.71),
+        brightness_regression: BrightnessRegression {
+            whole_limb: Some(line(-2.41, 960)),
+            masked_out: Some(line(0.57, 918)),
+        },
+    }
+}

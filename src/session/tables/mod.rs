@@ -1,5 +1,6 @@
 //! Every key of the session file: name, unit, range, default and meaning.
 
+mod mask;
 mod model;
 mod run;
 mod station;
@@ -11,6 +12,7 @@ pub(super) use words::{
 
 use super::keys::Absent::Open;
 use super::keys::{Form, Key, Table};
+use mask::MASK;
 use model::{GRAVITY, LIMB, REFRACTIVITY, TIME, WEATHER};
 use run::{ENVIRONMENT, HEADERS, SEQUENCE};
 use station::{CALIBRATION, CAMERA, FILTER, INSTRUMENT, SITE, TELESCOPE};
@@ -80,6 +82,12 @@ pub(super) static SESSION: Table = Table::plain(
             Form::Table(&GRAVITY),
             Open,
             "What the figure is compared with.",
+        ),
+        Key::new(
+            "mask",
+            Form::Table(&MASK),
+            Open,
+            "A picture of the Sun that says which arcs of the limb to leave out.",
         ),
         Key::new(
             "headers",

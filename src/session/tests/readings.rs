@@ -264,3 +264,28 @@ fn other_readings_follow_in_time() {
     let fault = bench.only_fault("[instrument]", one);
     assert!(fault.cure.contains("tube_c"), "{}", fault.cure);
 }
+
+#[test]
+fn a_mask_image_needs_its_place_and_a_limit() {
+    let bench = Bench::new();
+    bench.write("picture.fits", "");
+    let whole = "[mask]\nimage = \"picture.fits\"\ncentre_x_px = 511.5\ncentre_y_px = 500\nradius_px = 440\nangle_deg = 12\nbrighter_than = 1.4\n\n[instrument]";
+    let mask = bench.with("[instrument]", whole).unwrap().mask.unwrap();
+    assert!(mask.image.ends_with("picture.fits"));
+    assert_eq!(
+        (mask.centre_px, mask.radius_px, mask.angle_deg),
+        ((511.5, 500.0), 440.0, 12.0)
+    );
+    assert_eq!((mask.brighter_than, mask.darker_than), (Some(1.4), None));
+    let without = |line: &str| bench.only_fault("[instrument]", &whole.replace(line, ""));
+    let fault = without("brighter_than = 1.4\n");
+    assert!(fault.cure.contains("darker_than"), "{}", fault.cure);
+    let fault = without("radius_px = 440\n");
+    assert_eq!(fault.key, "mask.radius_px");
+    let absent = whole.replace("picture", "nothing");
+    let fault = bench.only_fault("[instrument]", &absent);
+    assert_eq!(fault.key, "mask.image");
+    let low = whole.replace("brighter_than = 1.4", "brighter_than = 0.9");
+    let fault = bench.only_fault("[instrument]", &low);
+    assert_eq!(fault.key, "mask.brighter_than");
+}
