@@ -57,6 +57,8 @@ pub mod limb;
 pub mod shape;
 pub mod refraction;
 pub mod seeing;
+pub mod drift;
+pub mod scan;
 pub mod select;
 pub mod stack;
 pub mod budget;

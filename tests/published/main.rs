@@ -6,6 +6,7 @@
 mod band;
 mod ciddor_1996;
 mod disk_transform;
+mod drift_transits;
 mod finite_fourier_edge_1975;
 mod fits_readers;
 mod limb_darkening;
