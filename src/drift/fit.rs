@@ -34,7 +34,7 @@ use super::noise::{Correlation, whitened};
 use super::{DriftError, FixedCamera, Mounting, Seen};
 use crate::sky::Parity;
 use crate::units::wrapped_rad;
-use nalgebra::{Matrix4, Vector4};
+use nalgebra::{DMatrix, DVector, Matrix4, Vector4};
 
 /// Whole disks that a drift needs at least.
 pub const LEAST_FRAMES: usize = 6;
@@ -138,7 +138,8 @@ pub fn fit(
     let mounting = settled(centres, camera, start)?;
     let velocity_px_s = velocity(centres);
     let turned = Turned::new(centres, camera, &mounting, velocity_px_s);
-    let solved = turned.averaged().ok_or(DriftError::Singular { frames: n })?;
+    let singular = DriftError::Singular { frames: n };
+    let solved = turned.averaged(&turned.columns).ok_or(singular)?;
     Ok(turned.finished(mounting, &solved, velocity_px_s))
 }
 
@@ -228,9 +229,7 @@ fn moved(it: &Mounting, by: &Vector4<f64>) -> Mounting {
     Mounting {
         scale_arcsec_px: it.scale_arcsec_px * by[0].exp(),
         up_rad: it.up_rad + by[1],
-        axis: it
-            .axis
-            .offset(along.hypot(across), across.atan2(along)),
+        axis: it.axis.offset(along.hypot(across), across.atan2(along)),
     }
 }
 
@@ -362,69 +361,120 @@ impl Turned {
         for i in 0..steps {
             let tau_s = shortest * (longest / shortest).powf(f64::from(i) / f64::from(steps - 1));
             // Without a share there is no time: the white point stands for one row of the grid.
-            out.extend([0.1, 0.2, 0.3, 0.4, 0.5, 0.6, 0.7, 0.8, 0.9, 0.99].map(|share| {
-                Correlation { share, tau_s }
-            }));
+            out.extend(
+                [0.1, 0.2, 0.3, 0.4, 0.5, 0.6, 0.7, 0.8, 0.9, 0.99]
+                    .map(|share| Correlation { share, tau_s }),
+            );
+        }
+        out
+    }
+
+    /// The columns with two more unknowns for each axis: a bend and a cubic of the way, so that what the
+    /// lens does slowly along it is not taken for noise.
+    fn bent(&self) -> [Vec<Vec<f64>>; 2] {
+        let n = self.along_px.len();
+        let mean = self.along_px.iter().sum::<f64>() / n as f64;
+        let reach = self
+            .along_px
+            .iter()
+            .map(|it| (it - mean).abs())
+            .fold(1e-9, |a, b| if b > a { b } else { a });
+        let legendre = |x: f64| [1.5 * x * x - 0.5, 2.5 * x * x * x - 1.5 * x];
+        let mut out = self.columns.clone();
+        for own in 0..2 {
+            for order in 0..2 {
+                for (axis, columns) in out.iter_mut().enumerate() {
+                    columns.push(
+                        self.along_px
+                            .iter()
+                            .map(|it| {
+                                if axis == own {
+                                    legendre((it - mean) / reach)[order]
+                                } else {
+                                    0.0
+                                }
+                            })
+                            .collect(),
+                    );
+                }
+            }
         }
         out
     }
 
     /// The solution for one correlation, with the logarithm of the residual likelihood.
-    fn solved(&self, it: Correlation) -> Option<(Solved, f64)> {
+    fn solved(&self, columns: &[Vec<Vec<f64>>; 2], it: Correlation) -> Option<(Solved, f64)> {
         let n = self.times_s.len();
-        let (along, log_determinant) = whitened(&self.times_s, it, &self.columns[0]);
-        let (across, _) = whitened(&self.times_s, it, &self.columns[1]);
-        let white = [along, across];
-        let degrees = n as f64 - 0.5 * UNKNOWNS as f64;
+        let unknowns = columns[0].len() - 1;
+        let (along, log_determinant) = whitened(&self.times_s, it, &columns[0]);
+        let (across, _) = whitened(&self.times_s, it, &columns[1]);
+        // For unit variance: the products of the columns with each other and with the data.
+        let products = [along, across].map(|white| {
+            let design = DMatrix::from_fn(n, unknowns, |k, j| white[j + 1][k]);
+            let data = DVector::from_column_slice(&white[0]);
+            (
+                design.transpose() * &design,
+                design.transpose() * &data,
+                data.norm_squared(),
+            )
+        });
+        let degrees = n as f64 - 0.5 * unknowns as f64;
         let mut noise = [1.0, 1.0];
-        let mut step = Vector4::zeros();
-        let mut covariance = Matrix4::zeros();
-        let mut information = Matrix4::zeros();
         for round in 0..4 {
-            information = Matrix4::zeros();
-            let mut right = Vector4::zeros();
-            for (columns, variance) in white.iter().zip(noise) {
-                for k in 0..n {
-                    let row = Vector4::from_fn(|j, _| columns[j + 1][k]);
-                    information += row * row.transpose() / variance;
-                    right += row * columns[0][k] / variance;
-                }
+            let mut information = DMatrix::zeros(unknowns, unknowns);
+            let mut right = DVector::zeros(unknowns);
+            for ((normal, with_data, _), variance) in products.iter().zip(noise) {
+                information += normal / variance;
+                right += with_data / variance;
             }
-            covariance = information.try_inverse()?;
-            step = covariance * right;
+            // Relative and angular unknowns differ by far in size.
+            let size: Vec<f64> = (0..unknowns)
+                .map(|i| information[(i, i)].max(1e-300).sqrt())
+                .collect();
+            let scaled = DMatrix::from_fn(unknowns, unknowns, |i, j| {
+                information[(i, j)] / (size[i] * size[j])
+            });
+            let cholesky = scaled.cholesky()?;
+            let log_information = 2.0
+                * (0..unknowns)
+                    .map(|i| (cholesky.l_dirty()[(i, i)] * size[i]).ln())
+                    .sum::<f64>();
+            let inverse = cholesky.inverse();
+            let covariance = DMatrix::from_fn(unknowns, unknowns, |i, j| {
+                inverse[(i, j)] / (size[i] * size[j])
+            });
+            let step = &covariance * right;
             if round == 3 {
-                break;
+                // The information has the variances in it; the squares of the residuals come to a
+                // constant.
+                let log_likelihood = -0.5 * n as f64 * (noise[0].ln() + noise[1].ln())
+                    - log_determinant
+                    - 0.5 * log_information;
+                return log_likelihood.is_finite().then_some((
+                    Solved {
+                        step: step.fixed_rows::<UNKNOWNS>(0).into_owned(),
+                        covariance: covariance
+                            .fixed_view::<UNKNOWNS, UNKNOWNS>(0, 0)
+                            .into_owned(),
+                        noise_arcsec2: noise,
+                        correlation: it,
+                    },
+                    log_likelihood,
+                ));
             }
-            for (columns, variance) in white.iter().zip(&mut noise) {
-                let sum: f64 = (0..n)
-                    .map(|k| {
-                        let fitted: f64 = (0..UNKNOWNS).map(|j| columns[j + 1][k] * step[j]).sum();
-                        (columns[0][k] - fitted).powi(2)
-                    })
-                    .sum();
-                *variance = (sum / degrees).max(1e-12);
+            for ((normal, with_data, square), variance) in products.iter().zip(&mut noise) {
+                let left = square - 2.0 * step.dot(with_data) + step.dot(&(normal * &step));
+                *variance = (left / degrees).max(1e-12);
             }
         }
-        // The information has the variances in it; the squares of the residuals come to a constant.
-        let log_likelihood = -0.5 * n as f64 * (noise[0].ln() + noise[1].ln())
-            - log_determinant
-            - 0.5 * information.determinant().ln();
-        log_likelihood.is_finite().then_some((
-            Solved {
-                step,
-                covariance,
-                noise_arcsec2: noise,
-                correlation: it,
-            },
-            log_likelihood,
-        ))
+        None
     }
 
-    fn averaged(&self) -> Option<Solved> {
+    fn averaged(&self, columns: &[Vec<Vec<f64>>; 2]) -> Option<Solved> {
         let all: Vec<(Solved, f64)> = self
             .grid()
             .into_iter()
-            .filter_map(|it| self.solved(it))
+            .filter_map(|it| self.solved(columns, it))
             .collect();
         let best = all
             .iter()
@@ -459,12 +509,7 @@ impl Turned {
         Some(out)
     }
 
-    fn finished(
-        &self,
-        mounting: Mounting,
-        solved: &Solved,
-        velocity_px_s: (f64, f64),
-    ) -> DriftFit {
+    fn finished(&self, mounting: Mounting, solved: &Solved, velocity_px_s: (f64, f64)) -> DriftFit {
         let n = self.times_s.len();
         let fitted = |axis: usize, k: usize| -> f64 {
             (0..UNKNOWNS)
@@ -500,7 +545,9 @@ impl Turned {
             independent: solved.noise_arcsec2[0] / (a * spread),
             travel_arcsec: speed * (self.times_s[n - 1] - self.times_s[0]) * self.scale_arcsec_px,
             velocity_px_s,
-            distortion: distortion(&residuals, &self.times_s, solved),
+            distortion: self
+                .averaged(&self.bent())
+                .map_or_else(Vec::new, |it| distortion(&residuals, &self.times_s, &it)),
             residuals,
         }
     }

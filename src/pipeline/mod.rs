@@ -8,12 +8,13 @@ mod error;
 mod limb_model;
 pub mod measure;
 pub mod products;
+mod ruler;
 pub mod single;
 mod solve;
 mod stacking;
 
 use crate::result::record::{Record, Traces};
-use crate::session::Session;
+use crate::session::{Kind, Session};
 use crate::stack::Stack;
 use correct::CorrectedSequence;
 use measure::{MeasuredSequence, is_followed};
@@ -78,7 +79,14 @@ pub fn reduce(
     options: &Options,
     progress: &dyn Progress,
 ) -> Result<Outcome, Error> {
-    let (measured, set_aside) = measure_all(session, progress)?;
+    let given = session;
+    let mut shared = Vec::new();
+    let (mut ruler, session) = ruler::drifts(given, &mut shared, progress)?;
+    let session = &session;
+    let (measured, mut set_aside) = measure_all(session, &mut shared, progress)?;
+    let refractivity_sigma_rel = solve::refractivity_sigma_rel(session, &measured[0]);
+    ruler::scans(&mut ruler, session, refractivity_sigma_rel, progress)?;
+    set_aside.extend(ruler.set_aside.iter().cloned());
     let limbs: Vec<CorrectedSequence> = measured.iter().map(correct::correct).collect();
     let seeing = solve::seeing(session, &measured, &limbs);
     let selected = solve::select(&measured, &limbs)?;
@@ -94,6 +102,8 @@ pub fn reduce(
 
     let parts = assemble::Parts {
         session,
+        given,
+        ruler: &ruler,
         options,
         measured: &measured,
         limbs: &limbs,
@@ -124,13 +134,16 @@ type SetAside = (usize, String);
 /// left.
 fn measure_all(
     session: &Session,
+    shared: &mut Vec<Arc<measure::Setup>>,
     progress: &dyn Progress,
 ) -> Result<(Vec<MeasuredSequence>, Vec<SetAside>), Error> {
-    let mut shared: Vec<Arc<measure::Setup>> = Vec::new();
     let mut measured = Vec::new();
     let mut set_aside = Vec::new();
     let mut first_error = None;
     for (index, sequence) in session.sequences.iter().enumerate() {
+        if matches!(sequence.kind, Kind::Drift | Kind::Scan) {
+            continue;
+        }
         if !is_followed(sequence.kind) {
             let reason = format!(
                 "kind \"{}\" does not go to the shape of followed disks",
@@ -139,7 +152,7 @@ fn measure_all(
             set_aside.push((index, reason));
             continue;
         }
-        match measure::measure(index, session, &mut shared, progress) {
+        match measure::measure(index, session, shared, progress) {
             Ok(it) => measured.push(it),
             Err(it @ Error::NoFrames { .. }) => {
                 set_aside.push((index, it.to_string()));

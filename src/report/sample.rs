@@ -206,6 +206,10 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
             .enumerate()
             .map(|(k, it)| sequence(k, *it, &mut noise, scale))
             .collect(),
+        camera: None,
+        drifts: Vec::new(),
+        scans: Vec::new(),
+        by_scan: None,
         masked: vec![
             MaskedArc { sequence: 0, from_deg: 41.0, to_deg: 49.5, frames: 1.0, reason: "bright structure at the limb".to_owned() },
             MaskedArc { sequence: 0, from_deg: 212.0, to_deg: 214.0, frames: 0.0375, reason: "dust on the window".to_owned() },

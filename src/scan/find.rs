@@ -82,7 +82,11 @@ pub fn find(lines: ArrayView2<'_, f32>) -> Result<Passage, ScanError> {
     }
     if last + 1 == height {
         // What is there is at most the half when the chord still grows.
-        let widest = rows.iter().enumerate().max_by_key(|it| *it.1).map_or(0, |it| it.0);
+        let widest = rows
+            .iter()
+            .enumerate()
+            .max_by_key(|it| *it.1)
+            .map_or(0, |it| it.0);
         return Err(ScanError::NoSecondContact {
             lines: height,
             needed: height.max(first + 2 * (widest - first)) + first,

@@ -224,10 +224,7 @@ pub fn fit(transits: &[Transit], known: &ScanKnown) -> Result<ScanFit, ScanError
         oblateness_mas: loose.values[1],
         contributions,
         slits,
-        scale: (
-            loose.values[SCALE],
-            loose.covariance[(SCALE, SCALE)].sqrt(),
-        ),
+        scale: (loose.values[SCALE], loose.covariance[(SCALE, SCALE)].sqrt()),
         scatter_mas: [0, 1, 2].map(|i| scatter[(i, i)].sqrt()),
         degrees,
     })

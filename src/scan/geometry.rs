@@ -107,10 +107,7 @@ pub fn near_limb(
             if !(apart > low && apart < high) {
                 continue;
             }
-            let (up, left) = (
-                dot(direction, &line.axes[1]),
-                dot(direction, &line.axes[2]),
-            );
+            let (up, left) = (dot(direction, &line.axes[1]), dot(direction, &line.axes[2]));
             let radius = 2.0 * (0.5 * apart.sqrt()).asin();
             let position_angle = left.atan2(up) + line.parallactic_rad;
             out.push(LinePixel {

@@ -12,7 +12,8 @@ mod geometry;
 
 pub use find::{Passage, find};
 pub use fit::{
-    ScanContribution, ScanFit, ScanKnown, SlitAngle, Transit, fit, radius_across_slit_mas,
+    LEAST_TRANSITS, LOOSE_SUN_MAS, ScanContribution, ScanFit, ScanKnown, SlitAngle, Transit, fit,
+    radius_across_slit_mas,
 };
 pub use geometry::{LineSky, Slit, near_limb};
 

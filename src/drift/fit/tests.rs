@@ -73,8 +73,7 @@ fn noisy(exact: &[Centre], sigma_arcsec: f64, share: f64, tau_s: f64, seed: u64)
             last_s = it.time_s;
             let add = slow.each_mut().map(|slow| {
                 *slow = kept * *slow + (1.0 - kept * kept).sqrt() * normal();
-                sigma_arcsec / SCALE
-                    * (share.sqrt() * *slow + (1.0 - share).sqrt() * normal())
+                sigma_arcsec / SCALE * (share.sqrt() * *slow + (1.0 - share).sqrt() * normal())
             });
             Centre {
                 x_px: it.x_px + add[0],
@@ -121,14 +120,21 @@ fn pulls_have_unit_width_whatever_the_correlation() {
         let allowed = 4.0 * (2.0 / n).sqrt();
         let stated = sigmas.iter().sum::<f64>() / n;
         let scatter = (estimates.iter().map(|it| it * it).sum::<f64>() / n).sqrt();
-        eprintln!("{share} {tau_s}: {} {} {stated:e} {scatter:e}", scale / n, angle / n);
+        eprintln!(
+            "{share} {tau_s}: {} {} {stated:e} {scatter:e}",
+            scale / n,
+            angle / n
+        );
         assert!((scale / n - 1.0).abs() < allowed, "scale {}", scale / n);
         assert!((angle / n - 1.0).abs() < allowed, "angle {}", angle / n);
         assert!((stated / scatter).ln().abs() < 1.2_f64.ln());
         if share == 0.0 {
             let travel = 15.0 * 23.2_f64.to_radians().cos() * 120.0;
             let formula = 0.5 * 12.0_f64.sqrt() / (travel * 60.0_f64.sqrt());
-            assert!((stated / formula).ln().abs() < 1.2_f64.ln(), "{stated:e} {formula:e}");
+            assert!(
+                (stated / formula).ln().abs() < 1.2_f64.ln(),
+                "{stated:e} {formula:e}"
+            );
         }
     }
 }
@@ -148,10 +154,13 @@ fn residuals_along_the_way_map_the_distortion() {
         .iter()
         .map(|it| (it.along_mas / it.sigma_mas.0).abs())
         .fold(0.0, f64::max);
-    eprintln!("{:?} {:?}", found.distortion, found.correlated);
     assert!(beyond > 4.0, "{:?}", found.distortion);
     // Without it, nothing stands out.
-    let plain = fit(&noisy(&drift(200, 150.0), 0.2, 0.3, 1.0, 4), &camera(), (SCALE, UP_RAD));
+    let plain = fit(
+        &noisy(&drift(200, 150.0), 0.2, 0.3, 1.0, 4),
+        &camera(),
+        (SCALE, UP_RAD),
+    );
     let chi2: f64 = plain
         .unwrap()
         .distortion
@@ -198,5 +207,8 @@ fn wrong_times_and_too_few_disks_are_named() {
     let error = fit(&slow, &camera(), (SCALE, UP_RAD)).unwrap_err();
     assert!(matches!(error, DriftError::WrongRate { .. }), "{error}");
     let error = fit(&slow[..3], &camera(), (SCALE, UP_RAD)).unwrap_err();
-    assert!(matches!(error, DriftError::TooFew { found: 3, .. }), "{error}");
+    assert!(
+        matches!(error, DriftError::TooFew { found: 3, .. }),
+        "{error}"
+    );
 }

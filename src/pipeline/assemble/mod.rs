@@ -5,12 +5,14 @@ mod seeing;
 mod turbulence;
 mod sequences;
 mod selection;
+mod ruler;
 mod warnings;
 mod traces;
 
 use super::correct::CorrectedSequence;
 use super::limb_model::LimbModel;
 use super::measure::MeasuredSequence;
+use super::ruler::Ruler;
 use super::solve::{SeeingResult, Selected, Shape};
 use super::stacking::Stacks;
 use super::{Options, SetAside};
@@ -21,7 +23,11 @@ use statrs::distribution::{ContinuousCDF, StudentsT};
 
 /// Everything the record is made from.
 pub(super) struct Parts<'a> {
+    /// The session with the camera that the drifts gave.
     pub(super) session: &'a Session,
+    /// The session as it was given.
+    pub(super) given: &'a Session,
+    pub(super) ruler: &'a Ruler,
     pub(super) options: &'a Options,
     pub(super) measured: &'a [MeasuredSequence],
     pub(super) limbs: &'a [CorrectedSequence],
@@ -48,7 +54,7 @@ pub(super) fn record(p: &Parts<'_>) -> (Record, Traces) {
         time_utc: [first.frames[0].utc.to_iso(), end.to_iso()],
         summary: String::new(),
         created_from: p.sources.clone(),
-        settings: crate::session::resolved(p.session),
+        settings: crate::session::resolved(p.given),
         seed: p.options.seed,
         shape: shape::record(p),
         seeing: seeing::record(p),
@@ -61,6 +67,10 @@ pub(super) fn record(p: &Parts<'_>) -> (Record, Traces) {
         selection: selection::record(p),
         budget: selection::budget_lines(p),
         sequences: sequences::records(p),
+        camera: ruler::camera(p),
+        drifts: ruler::drifts(p),
+        scans: ruler::scans(p),
+        by_scan: ruler::by_scan(p),
         masked: p.measured.iter().flat_map(sequences::masked).collect(),
         warnings: warnings::records(p),
     };

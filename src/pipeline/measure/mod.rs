@@ -3,6 +3,8 @@
 mod sky;
 mod setup;
 mod reading;
+mod drift;
+mod scan;
 
 use super::{Error, Progress};
 use crate::air::{BandInAir, Conditions};
@@ -19,6 +21,8 @@ use setup::setup;
 use sky::{Sky, interpolated};
 use std::sync::Arc;
 
+pub use drift::{MeasuredDrift, measure_drift};
+pub use scan::{MeasuredScan, MeasuredTransit, measure_scan};
 pub use setup::Setup;
 pub(super) use setup::{limb_optics, predicted};
 pub use sky::place;
