@@ -23,7 +23,7 @@
 //!
 //! # Accuracy
 //!
-//! That of the covariance: pulls of unit width over made sessions (`tests/published/drift_sessions.rs`).
+//! That of the covariance: squares of the pulls 0.8 to 1.2 over 400 made drifts of each kind of noise (tests).
 //!
 //! # Source
 //!

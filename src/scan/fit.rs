@@ -25,7 +25,7 @@
 //!
 //! # Accuracy
 //!
-//! That of the covariance, judged in `tests/published/scan_sessions.rs`. Tilted layers, 0.7 mas for 3 arcmin
+//! That of the covariance: squares of the pulls near 1 over 400 made sessions (tests). Tilted layers, 0.7 mas for 3 arcmin
 //! at 45 deg from the zenith, are left out, as are distortions of the optics along the slit.
 //!
 //! # Source

@@ -3,6 +3,7 @@
 mod answer;
 mod budget;
 mod correlation;
+mod drift;
 mod frames;
 mod harmonics;
 mod kept;
@@ -11,6 +12,7 @@ mod power;
 mod refraction;
 mod ring;
 mod ring_marks;
+mod scan;
 mod seeing;
 mod separation;
 
@@ -110,6 +112,8 @@ pub(crate) fn all(record: &Record, traces: &Traces, preview: Option<&Preview>) -
         nulls::plate(record),
         separation::plate(record),
         correlation::plate(record),
+        drift::plate(record),
+        scan::plate(record),
     ]
     .into_iter()
     .flatten()
