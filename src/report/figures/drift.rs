@@ -34,7 +34,10 @@ pub(super) fn plate(record: &Record) -> Option<Plate> {
 
 fn finding(record: &Record) -> String {
     let Some(camera) = &record.camera else {
-        return format!("{} measured.", numbers::plural(record.drifts.len(), "drift"));
+        return format!(
+            "{} measured.",
+            numbers::plural(record.drifts.len(), "drift")
+        );
     };
     let said = |name: &str, it: &CameraNumber| {
         let other = if it.used == "drift" {
@@ -74,10 +77,7 @@ fn table(record: &Record) -> String {
         ],
     );
     if let Some(it) = &record.camera {
-        for (name, it) in [
-            ("Scale, arcsec/px", &it.scale),
-            ("Angle, deg", &it.angle),
-        ] {
+        for (name, it) in [("Scale, arcsec/px", &it.scale), ("Angle, deg", &it.angle)] {
             camera.row([
                 name.to_owned(),
                 cell(&it.nominal),
@@ -135,7 +135,12 @@ fn draw(drifts: &[DriftRecord], room: Room) -> Option<Canvas> {
         let top = PITCH_PX * place as f64 + 32.0;
         let span = (top, top + PLOT_PX);
         let points: Vec<(f64, f64)> = centres()
-            .map(|it| (it.along_px, if along { it.along_mas } else { it.across_mas }))
+            .map(|it| {
+                (
+                    it.along_px,
+                    if along { it.along_mas } else { it.across_mas },
+                )
+            })
             .filter(|it| it.0.is_finite() && it.1.is_finite())
             .collect();
         let up = Axis::linear(

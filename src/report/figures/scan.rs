@@ -73,9 +73,8 @@ fn table(record: &Record) -> String {
                 Column::Number("Apart, sigma"),
             ],
         );
-        let apart = |it: Option<f64>| {
-            it.map_or(numbers::MISSING.to_owned(), |it| numbers::fixed(it, 2))
-        };
+        let apart =
+            |it: Option<f64>| it.map_or(numbers::MISSING.to_owned(), |it| numbers::fixed(it, 2));
         routes.row([
             "Radius at 1 AU, arcsec".to_owned(),
             shape_cell(&it.radius),
