@@ -21,7 +21,7 @@
 //! # Valid for
 //!
 //! Three or more transits. Where one direction of the slit leaves the oblateness to the slit's scale, the
-//! radius is stated for an oblateness of zero within [`LOOSE_SUN_MAS`].
+//! radius is stated for an oblateness of [`ROTATION_MAS`] within [`LOOSE_SUN_MAS`].
 //!
 //! # Accuracy
 //!
@@ -39,8 +39,11 @@ use nalgebra::{DMatrix, DVector, Matrix3, Vector3};
 /// Transits needed for an error: three components leave no freedom below.
 pub const LEAST_TRANSITS: usize = 3;
 
-/// Prior width of the oblateness for the radius, and of `R c4`, mas.
+/// Prior width of the oblateness about [`ROTATION_MAS`] for the radius, and of `R c4` about zero, mas.
 pub const LOOSE_SUN_MAS: [f64; 2] = [12.0, 4.0];
+
+/// Oblateness that surface rotation alone gives, rounded, mas (physics of rotation figures: 7.8 to 8.0).
+pub const ROTATION_MAS: f64 = 8.0;
 
 /// One transit in harmonics.
 #[derive(Clone, Copy, Debug, PartialEq)]
@@ -167,10 +170,13 @@ fn columns(it: &Transit) -> [Vector3<f64>; 4] {
     ]
 }
 
-/// Radius across the slit that a transit's harmonics have, mas at 1 AU: from time alone.
-pub fn radius_across_slit_mas(it: &Transit) -> f64 {
+/// Radius across the slit, and along it, that a transit's harmonics have, mas at 1 AU, for a slit turned
+/// by an angle from the nominal direction: across it from time alone.
+pub fn radii_mas(it: &Transit, turned_rad: f64) -> [f64; 2] {
+    let turn = columns(it)[1] * turned_rad;
+    let h = Vector3::from(it.harmonics_mas) - turn;
     // Across the slit means theta = 0 and 180 deg.
-    REFERENCE_RADIUS_MAS + it.harmonics_mas[0] + it.harmonics_mas[1]
+    [h[0] + h[1], h[0] - h[1]].map(|it| REFERENCE_RADIUS_MAS + it)
 }
 
 /// Position of the first unknown of its kind: radius, oblateness, P4, scale, clock, refractivity, angles.
@@ -297,6 +303,7 @@ fn solve(
         right += &weighted * data;
         information += weighted * &design;
     }
+    right[1] += prior[1] * ROTATION_MAS;
     let total = &information + DMatrix::from_diagonal(&prior);
     // Unknowns in mas stand beside relative ones: each is scaled to its own diagonal.
     let scale: Vec<f64> = (0..unknowns)

@@ -112,7 +112,11 @@ fn scan(p: &Parts<'_>, it: &MeasuredScan) -> ScanRecord {
                 )
             },
         ),
-        transits: it.transits.iter().map(transit).collect(),
+        transits: it
+            .transits
+            .iter()
+            .map(|it| transit(it, own.map_or(0.0, |it| it.turned_rad)))
+            .collect(),
         lost: it
             .lost
             .iter()
@@ -124,14 +128,15 @@ fn scan(p: &Parts<'_>, it: &MeasuredScan) -> ScanRecord {
     }
 }
 
-fn transit(it: &MeasuredTransit) -> TransitRecord {
-    let h = &it.observation.harmonics_mas;
+fn transit(it: &MeasuredTransit, turned_rad: f64) -> TransitRecord {
+    let [across, along] = crate::scan::radii_mas(&it.observation, turned_rad);
+    let seen_rad = across * crate::units::MAS_RAD / it.sun.distance_au;
     TransitRecord {
         transit: it.transit,
         time_utc: it.utc.to_iso(),
-        duration_s: it.duration_s,
-        across_slit_arcsec: (REFERENCE_RADIUS_MAS + h[0] + h[1]) / 1000.0,
-        along_slit_arcsec: (REFERENCE_RADIUS_MAS + h[0] - h[1]) / 1000.0,
+        duration_s: 2.0 * seen_rad / it.across_rad_s,
+        across_slit_arcsec: across / 1000.0,
+        along_slit_arcsec: along / 1000.0,
     }
 }
 
@@ -221,7 +226,7 @@ fn by_scan_fit(p: &Parts<'_>, fit: &ScanFit, transits: usize) -> ByScan {
                 "clock rate" => "time.clock_rate_sigma_ppm",
                 "refractivity along the slit" => "the weather's, through the stretch of the slit",
                 "Sun's terms not separated" => {
-                    "zero within 12 mas (oblateness, for the radius) and 4 mas (P4)"
+                    "8 mas within 12 (oblateness, for the radius) and 0 within 4 (P4)"
                 }
                 _ => "scatter of the transits, each with its lines' seeing as it was",
             };

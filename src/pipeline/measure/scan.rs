@@ -37,8 +37,8 @@ pub struct MeasuredTransit {
     pub observation: Transit,
     /// The Sun then.
     pub sun: SunPlace,
-    /// Seconds from contact to contact that the radius across the slit stands for.
-    pub duration_s: f64,
+    /// Motion across the slit, rad/s.
+    pub across_rad_s: f64,
 }
 
 /// One scan.
@@ -485,8 +485,6 @@ impl Studio<'_> {
             tan_zenith: moment.sun.zenith_true_rad.tan(),
             refractivity: moment.refractivity,
         };
-        let across_rad_s = rates.drift_rad_s() * (motion - FRAC_PI_2).sin().abs();
-        let radius = scan::radius_across_slit_mas(&observation) / au * crate::units::MAS_RAD;
         Ok(MeasuredTransit {
             transit,
             utc,
@@ -494,7 +492,7 @@ impl Studio<'_> {
             harmonics,
             observation,
             sun: moment.sun,
-            duration_s: 2.0 * radius / across_rad_s,
+            across_rad_s: rates.drift_rad_s() * (motion - FRAC_PI_2).sin().abs(),
         })
     }
 }
