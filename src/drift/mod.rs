@@ -5,14 +5,19 @@
 //! | `transit` | contacts with a slit, direction and curvature of the motion, a shutter that rolls |
 //! | `path` | where a camera that is fixed to the ground sees the Sun |
 //! | `noise` | noise of the disk's centre that is correlated in time |
-//! | `fit` | plate scale and camera angle from the centres, and what is left along the way |
+//! | `linear` | generalised least squares over all correlations |
+//! | `fit` | plate scale and camera angle from the centres |
+//! | `distortion` | what is left along the way |
 
+mod distortion;
 mod fit;
+mod linear;
 mod noise;
 mod path;
 mod transit;
 
-pub use fit::{Centre, DISTORTION_BINS, DistortionBin, DriftFit, LEAST_FRAMES, fit};
+pub use distortion::{DISTORTION_BINS, DistortionBin};
+pub use fit::{Centre, DriftFit, LEAST_FRAMES, fit};
 pub use path::{FixedCamera, Mounting, Seen};
 pub use transit::{
     RollingShutter, motion_position_angle_rad, path_turn_rad, rolling_shutter, sagitta_rad,

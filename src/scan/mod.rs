@@ -12,8 +12,8 @@ mod geometry;
 
 pub use find::{Passage, find};
 pub use fit::{
-    LEAST_TRANSITS, LOOSE_SUN_MAS, ROTATION_MAS, ScanContribution, ScanFit, ScanKnown, SlitAngle, Transit, fit,
-    radii_mas,
+    LEAST_TRANSITS, LOOSE_SUN_MAS, ROTATION_MAS, ScanContribution, ScanFit, ScanKnown, SlitAngle,
+    Transit, fit, radii_mas,
 };
 pub use geometry::{LineSky, Slit, near_limb};
 

@@ -1,3 +1,4 @@
+use super::super::distortion::DISTORTION_BINS;
 use super::*;
 use crate::refraction::Plate;
 use crate::session::{Projection, ScaleOf};

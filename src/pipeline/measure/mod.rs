@@ -5,6 +5,7 @@ mod setup;
 mod reading;
 mod drift;
 mod scan;
+mod slit;
 
 use super::{Error, Progress};
 use crate::air::{BandInAir, Conditions};
