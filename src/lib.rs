@@ -11,6 +11,8 @@
 //! | limb | [`limb::extract`] | a raw frame | [`limb::ObservedLimb`] |
 //! | refraction | [`refraction::remove`] | [`limb::ObservedLimb`] | [`refraction::TrueLimb`] |
 //! | seeing | [`seeing::by_motion`] | harmonics in time | [`seeing::MotionSeeing`] |
+//! | drift | [`drift::fit`] | centres of a Sun that drifts | scale, angle: [`drift::DriftFit`] |
+//! | scan | [`scan::fit`] | transits over a slit | [`scan::ScanFit`] |
 //! | selection | [`select::weights`], [`select::sharpest`] | sharpness, high harmonics | weights |
 //! | stack | [`stack::Stack`] | kept frames | image, variance, weight |
 //! | shape | [`shape::fit`] | blocks of frames | [`shape::Fit`] |

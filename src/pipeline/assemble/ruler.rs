@@ -383,10 +383,15 @@ pub(super) fn cautions(p: &Parts<'_>) -> Vec<(&'static str, String)> {
             ));
         }
         if it.touching > 0 || !it.measured.lost.is_empty() {
+            let first = it
+                .measured
+                .lost
+                .first()
+                .map_or(String::new(), |it| format!(" (the first: {})", it.detail));
             out.push((
                 "drift-frames",
                 format!(
-                    "sequence {name}: {} frames show the disk at the edge of the field and {} have no limb; the other {} give scale and angle",
+                    "sequence {name}: {} frames show the disk at the edge of the field and {} have no limb{first}; the other {} give scale and angle",
                     it.touching,
                     it.measured.lost.len(),
                     it.whole
