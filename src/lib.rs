@@ -11,6 +11,8 @@
 //! | limb | [`limb::extract`] | a raw frame | [`limb::ObservedLimb`] |
 //! | refraction | [`refraction::remove`] | [`limb::ObservedLimb`] | [`refraction::TrueLimb`] |
 //! | seeing | [`seeing::by_motion`] | harmonics in time | [`seeing::MotionSeeing`] |
+//! | drift | [`drift::fit`] | centres of a Sun that drifts | scale, angle: [`drift::DriftFit`] |
+//! | scan | [`scan::fit`] | transits over a slit | [`scan::ScanFit`] |
 //! | selection | [`select::weights`], [`select::sharpest`] | sharpness, high harmonics | weights |
 //! | stack | [`stack::Stack`] | kept frames | image, variance, weight |
 //! | shape | [`shape::fit`] | blocks of frames | [`shape::Fit`] |
@@ -62,6 +64,8 @@ pub mod limb;
 pub mod shape;
 pub mod refraction;
 pub mod seeing;
+pub mod drift;
+pub mod scan;
 pub mod select;
 pub mod stack;
 pub mod budget;

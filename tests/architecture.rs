@@ -217,13 +217,15 @@ fn the_library_never_looks_at_a_clock() {
 }
 
 /// Folders whose files are physics.
-const PHYSICS: [&str; 13] = [
+const PHYSICS: [&str; 15] = [
     "air",
     "sky",
     "disk",
     "optics",
     "turbulence",
     "seeing",
+    "drift",
+    "scan",
     "shape",
     "refraction",
     "select",

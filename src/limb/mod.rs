@@ -37,6 +37,7 @@
 pub mod blemish;
 pub mod geometry;
 pub mod harmonics;
+pub mod lines;
 pub mod locate;
 pub mod residual;
 pub mod sector;

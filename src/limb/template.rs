@@ -1,9 +1,9 @@
 //! Tables of the blurred limb by sector direction, blur and distance, made once a sequence.
 
 use crate::optics::OpticsError;
-use crate::optics::limb_profile::{Blur, LimbOptics, ProfileMaker};
+use crate::optics::limb_profile::{Blur, LimbOptics, PixelBox, ProfileMaker};
 use rayon::prelude::*;
-use std::f64::consts::FRAC_PI_2;
+use std::f64::consts::{FRAC_PI_2, PI};
 
 /// The steps of the table in seeing width `lambda / r0`, arcsec. Dense where the limb changes fast.
 const WIDTHS_ARCSEC: [f64; 40] = [
@@ -87,11 +87,13 @@ impl EdgeTable {
         pixel_arcsec: f64,
         angles_rad: &[f64],
     ) -> Result<Self, OpticsError> {
-        Self::of_widths(
+        let pixel = PixelBox::square(pixel_arcsec);
+        Self::made(
             optics,
             gaussian_sigma_arcsec,
-            pixel_arcsec,
+            pixel,
             angles_rad,
+            folded_rad,
             &WIDTHS_ARCSEC,
         )
     }
@@ -109,30 +111,49 @@ impl EdgeTable {
         blur: f64,
     ) -> Result<Self, OpticsError> {
         let width = width_of_blur_arcsec(blur);
-        Self::of_widths(
+        Self::made(
             optics,
             gaussian_sigma_arcsec,
-            pixel_arcsec,
+            PixelBox::square(pixel_arcsec),
             angles_rad,
+            folded_rad,
             &[width, width + 0.01],
         )
     }
 
-    fn of_widths(
+    /// The same for a pixel that is no square; the angles count from its first side.
+    ///
+    /// # Errors
+    ///
+    /// As [`EdgeTable::new`].
+    pub fn for_pixel(
+        optics: &LimbOptics,
+        pixel: PixelBox,
+        angles_rad: &[f64],
+    ) -> Result<Self, OpticsError> {
+        // Half a turn changes nothing, whatever the box.
+        let folded = |angle: f64| (angle.rem_euclid(PI) * 1e7).round() / 1e7;
+        Self::made(optics, 0.0, pixel, angles_rad, folded, &WIDTHS_ARCSEC)
+    }
+
+    fn made(
         optics: &LimbOptics,
         gaussian_sigma_arcsec: f64,
-        pixel_arcsec: f64,
+        pixel: PixelBox,
         angles_rad: &[f64],
+        fold: impl Fn(f64) -> f64,
         widths_arcsec: &[f64],
     ) -> Result<Self, OpticsError> {
-        let span_arcsec = (7.0 * pixel_arcsec).clamp(24.0, 90.0);
-        let step_arcsec = (pixel_arcsec / 64.0).clamp(0.008, 0.04);
-        let maker = ProfileMaker::new(optics, span_arcsec, step_arcsec, pixel_arcsec)?;
+        let [p, q] = pixel.sides_arcsec;
+        let (largest, smallest) = if p > q { (p, q) } else { (q, p) };
+        let span_arcsec = (7.0 * largest).clamp(24.0, 90.0);
+        let step_arcsec = (smallest / 64.0).clamp(0.008, 0.04);
+        let maker = ProfileMaker::for_pixel(optics, span_arcsec, step_arcsec, pixel)?;
         let mut classes: Vec<f64> = Vec::new();
         let class_of_sector = angles_rad
             .iter()
             .map(|&angle| {
-                let folded = folded_rad(angle);
+                let folded = fold(angle);
                 classes
                     .iter()
                     .position(|it| (it - folded).abs() < 1e-6)

@@ -16,6 +16,9 @@
 //! | `p` | side of the square pixel | arcsec |
 //! | `theta` | angle of the limb's normal from a side of the pixel | rad |
 //!
+//! A pixel of two sides `p`, `q`, the second leaning by `l` from the first one's normal, has
+//! `sinc(f p cos theta) sinc(f q sin(theta - l))`; the formulas below are its case `q = p`, `l = 0`.
+//!
 //! The two-dimensional transform of the disk is used, so that the curvature of the limb inside the
 //! blur is in the profile (see `limb_spectrum.rs`). A pixel that stands at `theta` averages, along the
 //! radius, over two boxes; along the limb its second moment is `p^2/12` for every `theta`, and the
@@ -98,6 +101,30 @@ impl Blur {
     }
 }
 
+/// The box over which a pixel takes the mean.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub struct PixelBox {
+    /// Lengths of its two sides, arcsec.
+    pub sides_arcsec: [f64; 2],
+    /// By how much the second side leans from the normal of the first, rad.
+    pub lean_rad: f64,
+}
+
+impl PixelBox {
+    /// A square.
+    pub fn square(side_arcsec: f64) -> Self {
+        Self {
+            sides_arcsec: [side_arcsec; 2],
+            lean_rad: 0.0,
+        }
+    }
+
+    /// Whether it is a point.
+    fn is_point(&self) -> bool {
+        self.sides_arcsec == [0.0; 2]
+    }
+}
+
 /// The limb and the optics that images it.
 #[derive(Clone, Copy, Debug, PartialEq)]
 pub struct LimbOptics {
@@ -142,7 +169,7 @@ struct Channel {
 #[derive(Clone, Debug)]
 pub struct ProfileMaker {
     grid: Grid,
-    pixel_arcsec: f64,
+    pixel: PixelBox,
     unlimited: bool,
     channels: Vec<Channel>,
     weights: Weights,
@@ -164,6 +191,25 @@ impl ProfileMaker {
         step_arcsec: f64,
         pixel_arcsec: f64,
     ) -> Result<Self, OpticsError> {
+        Self::for_pixel(
+            optics,
+            span_arcsec,
+            step_arcsec,
+            PixelBox::square(pixel_arcsec),
+        )
+    }
+
+    /// The same for a pixel that is no square, as a line detector's is in time and slit.
+    ///
+    /// # Errors
+    ///
+    /// As [`ProfileMaker::new`].
+    pub fn for_pixel(
+        optics: &LimbOptics,
+        span_arcsec: f64,
+        step_arcsec: f64,
+        pixel: PixelBox,
+    ) -> Result<Self, OpticsError> {
         optics.edge.check()?;
         optics.telescope.check()?;
         within("wavelength", optics.wavelength_nm, (200.0, 5000.0), "nm")?;
@@ -174,7 +220,9 @@ impl ProfileMaker {
             "arcsec",
         )?;
         within("step of the profile", step_arcsec, (1e-4, 1.0), "arcsec")?;
-        within("pixel", pixel_arcsec, (0.0, 10.0), "arcsec")?;
+        for side in pixel.sides_arcsec {
+            within("pixel", side, (0.0, 10.0), "arcsec")?;
+        }
         let wavelength_m = optics.wavelength_nm * 1e-9;
         let unlimited = !optics.telescope.aperture_m.is_finite();
         let highest = if unlimited {
@@ -230,7 +278,7 @@ impl ProfileMaker {
             .collect();
         Ok(Self {
             grid,
-            pixel_arcsec,
+            pixel,
             unlimited,
             channels,
             weights: weights(&optics.edge, &frequencies, &xs),
@@ -261,7 +309,7 @@ impl ProfileMaker {
             .map_or(0, |last| last + 1);
         let mut wide = vec![0.0; self.wide_len];
         let weighted = self.weights.radial.chunks_exact(self.wide_len);
-        if self.pixel_arcsec == 0.0 {
+        if self.pixel.is_point() {
             for (&(t, _), radial) in transfer[..used].iter().zip(weighted) {
                 for (value, r) in wide.iter_mut().zip(radial) {
                     *value += t * r;
@@ -283,19 +331,21 @@ impl ProfileMaker {
     fn transfer(&self, blur: &Blur, pixel_angle_rad: f64) -> Vec<(f64, f64)> {
         let air = blur.r0_m.powf(-5.0 / 3.0);
         let jitter = 2.0 * (PI * blur.gaussian_sigma_arcsec).powi(2);
-        let p = self.pixel_arcsec;
+        let [p, q] = self.pixel.sides_arcsec;
         let (sin, cos) = pixel_angle_rad.sin_cos();
+        let (lean_sin, lean_cos) = (pixel_angle_rad - self.pixel.lean_rad).sin_cos();
         self.channels
             .iter()
             .map(|it| {
                 let f = it.f_cycles_arcsec;
                 let round = it.telescope * (-it.air * air - jitter * f * f).exp();
                 let [g_a, d_a, dd_a] = sinc(f * p * cos);
-                let [g_b, d_b, dd_b] = sinc(f * p * sin);
-                let second =
-                    sin * sin * dd_a * g_b - 2.0 * sin * cos * d_a * d_b + cos * cos * g_a * dd_b;
-                let first = cos * d_a * g_b + sin * g_a * d_b;
-                (round * g_a * g_b, round * (p * p * second - p * first / f))
+                let [g_b, d_b, dd_b] = sinc(f * q * lean_sin);
+                let second = p * p * sin * sin * dd_a * g_b
+                    - 2.0 * p * q * sin * lean_cos * d_a * d_b
+                    + q * q * lean_cos * lean_cos * g_a * dd_b;
+                let first = p * cos * d_a * g_b + q * lean_sin * g_a * d_b;
+                (round * g_a * g_b, round * (second - first / f))
             })
             .collect()
     }

@@ -7,7 +7,7 @@ pub mod limb_profile;
 mod limb_spectrum;
 pub mod transfer;
 
-pub use limb_profile::{Blur, Exposure, Grid, LimbOptics, ProfileMaker};
+pub use limb_profile::{Blur, Exposure, Grid, LimbOptics, PixelBox, ProfileMaker};
 pub use transfer::Telescope;
 
 use crate::disk::DiskError;

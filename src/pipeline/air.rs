@@ -29,7 +29,7 @@ pub struct Air {
 pub fn measure_air(session: &Session, progress: &dyn Progress) -> Result<Air, Error> {
     let (session, given) = with_tables(session)?;
     let session = &*session;
-    let (measured, set_aside) = measure_all(session, &given, progress)?;
+    let (measured, set_aside) = measure_all(session, &given, &mut Vec::new(), progress)?;
     let limbs: Vec<CorrectedSequence> = measured.iter().map(correct::correct).collect();
     let found = seeing(session, &measured, &limbs);
     let first = measured[0].frames[0].utc;

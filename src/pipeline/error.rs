@@ -3,10 +3,12 @@
 use crate::air::AirError;
 use crate::calibrate::CalibrateError;
 use crate::disk::DiskError;
+use crate::drift::DriftError;
 use crate::frames::FitsError;
 use crate::limb::LimbError;
 use crate::optics::OpticsError;
 use crate::report::ReportError;
+use crate::scan::ScanError;
 use crate::session::SessionError;
 use crate::session::weather::WeatherError;
 use crate::shape::ShapeError;
@@ -57,6 +59,22 @@ pub enum Error {
         sequence: usize,
         /// What was wrong with the first frame.
         reason: String,
+    },
+    /// A drift says nothing of scale and angle.
+    #[error("sequence {}, a drift: {source}", sequence + 1)]
+    Drift {
+        /// Index in the session file.
+        sequence: usize,
+        /// Why.
+        source: DriftError,
+    },
+    /// A scan gives no limb.
+    #[error("sequence {}, a scan: {source}", sequence + 1)]
+    Scan {
+        /// Index in the session file.
+        sequence: usize,
+        /// Why.
+        source: ScanError,
     },
     /// The session has no sequence of whole disks.
     #[error(

@@ -15,6 +15,7 @@ mod masking;
 pub mod measure;
 mod frame_table;
 pub mod products;
+mod ruler;
 pub mod single;
 mod solve;
 mod stacking;
@@ -142,6 +143,10 @@ pub fn refit(
         given.push(it);
     }
     for it in &mut session.sequences {
+        // Drifts and scans have no limbs of frames in the table: they are read again.
+        if !is_followed(it.kind) {
+            continue;
+        }
         it.files.clear();
         it.calibration = crate::session::Calibration::default();
         it.camera.bad_pixels = None;
@@ -180,12 +185,18 @@ fn with_tables(session: &Session) -> Result<(Cow<'_, Session>, Vec<Option<Given>
 }
 
 fn stages(
-    session: &Session,
-    given: &[Option<Given>],
+    given: &Session,
+    tables: &[Option<Given>],
     options: &Options,
     progress: &dyn Progress,
 ) -> Result<Outcome, Error> {
-    let (mut measured, set_aside) = measure_all(session, given, progress)?;
+    let mut shared = Vec::new();
+    let (mut ruler, session) = ruler::drifts(given, &mut shared, progress)?;
+    let session = &session;
+    let (mut measured, mut set_aside) = measure_all(session, tables, &mut shared, progress)?;
+    let refractivity_sigma_rel = solve::refractivity_sigma_rel(session, &measured[0]);
+    ruler::scans(&mut ruler, session, refractivity_sigma_rel, progress)?;
+    set_aside.extend(ruler.set_aside.iter().cloned());
     let image = session.mask.as_ref().map(mask_image::bins).transpose()?;
     let blemishes = blemishes::judge(&mut measured, image.as_deref());
     axis_blur::work_out(&mut measured)?;
@@ -228,6 +239,8 @@ fn stages(
     let parts = assemble::Parts {
         masking: &masking,
         session,
+        given,
+        ruler: &ruler,
         options,
         measured: &measured,
         limbs: &limbs,
@@ -260,15 +273,18 @@ type SetAside = (usize, String);
 /// left.
 fn measure_all(
     session: &Session,
-    given: &[Option<Given>],
+    tables: &[Option<Given>],
+    shared: &mut Vec<Arc<measure::Setup>>,
     progress: &dyn Progress,
 ) -> Result<(Vec<MeasuredSequence>, Vec<SetAside>), Error> {
-    let mut shared: Vec<Arc<measure::Setup>> = Vec::new();
     let mut measured = Vec::new();
     let mut set_aside = Vec::new();
     let mut first_error = None;
     for (index, sequence) in session.sequences.iter().enumerate() {
-        if !is_followed(sequence.kind) && given[index].is_none() {
+        if matches!(sequence.kind, Kind::Drift | Kind::Scan) {
+            continue;
+        }
+        if !is_followed(sequence.kind) && tables[index].is_none() {
             let reason = format!(
                 "kind \"{}\" does not go to the shape of followed disks",
                 measure::kind_word(sequence.kind)
@@ -276,7 +292,7 @@ fn measure_all(
             set_aside.push((index, reason));
             continue;
         }
-        match measure::measure(index, session, &mut shared, given[index].as_ref(), progress) {
+        match measure::measure(index, session, shared, tables[index].as_ref(), progress) {
             Ok(it) => measured.push(it),
             Err(it @ Error::NoFrames { .. }) => {
                 set_aside.push((index, it.to_string()));

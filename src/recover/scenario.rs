@@ -143,6 +143,8 @@ pub fn scenario(
             step_s: if step_s > exposure { step_s } else { exposure },
             at_min: began.minus(origin) / 60.0,
             roll_deg: sequence.roll_deg,
+            lines: 0,
+            line_s: 0.0,
         });
     }
     let (Some(start), Some(end), Some(light)) = (start, end, light) else {

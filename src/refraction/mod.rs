@@ -38,6 +38,32 @@ pub struct Plate {
     pub scale_of: ScaleOf,
 }
 
+impl Plate {
+    /// Angle on the sky, as it arrives in air of a refractivity, of a distance on the plate.
+    pub fn angle_rad(self, plate_arcsec: f64, refractivity: f64) -> f64 {
+        let apparent = match self.scale_of {
+            ScaleOf::Apparent => plate_arcsec * ARCSEC_RAD,
+            ScaleOf::Sky => plate_arcsec * ARCSEC_RAD / (1.0 + refractivity),
+        };
+        match self.projection {
+            Projection::Arc => apparent,
+            Projection::Tan => apparent.atan(),
+        }
+    }
+
+    /// Distance on the plate, arcsec, of an angle on the sky.
+    pub fn of_angle_arcsec(self, angle_rad: f64, refractivity: f64) -> f64 {
+        let flat = match self.projection {
+            Projection::Arc => angle_rad,
+            Projection::Tan => angle_rad.tan(),
+        };
+        match self.scale_of {
+            ScaleOf::Apparent => flat / ARCSEC_RAD,
+            ScaleOf::Sky => flat / ARCSEC_RAD * (1.0 + refractivity),
+        }
+    }
+}
+
 /// The air over the station at one moment.
 #[derive(Clone, Debug)]
 pub struct Air {
@@ -153,26 +179,12 @@ pub struct TrueLimb {
 impl Moment {
     /// Angle on the sky of a distance on the plate.
     fn angle_of_plate_rad(&self, plate: Plate, plate_arcsec: f64) -> f64 {
-        let apparent = match plate.scale_of {
-            ScaleOf::Apparent => plate_arcsec * ARCSEC_RAD,
-            ScaleOf::Sky => plate_arcsec * ARCSEC_RAD / (1.0 + self.refractivity),
-        };
-        match plate.projection {
-            Projection::Arc => apparent,
-            Projection::Tan => apparent.atan(),
-        }
+        plate.angle_rad(plate_arcsec, self.refractivity)
     }
 
     /// Distance on the plate of an angle on the sky, arcsec.
     fn plate_of_angle_arcsec(&self, plate: Plate, angle_rad: f64) -> f64 {
-        let flat = match plate.projection {
-            Projection::Arc => angle_rad,
-            Projection::Tan => angle_rad.tan(),
-        };
-        match plate.scale_of {
-            ScaleOf::Apparent => flat / ARCSEC_RAD,
-            ScaleOf::Sky => flat / ARCSEC_RAD * (1.0 + self.refractivity),
-        }
+        plate.of_angle_arcsec(angle_rad, self.refractivity)
     }
 
     /// Apparent radius on the plate of a round Sun of the reference radius at a detector angle, arcsec.

@@ -10,7 +10,7 @@ use super::{keys, sections, theme};
 use crate::result::record::{Record, Traces};
 
 /// Sections of the page: anchor, heading, stems of its figures.
-const SECTIONS: [(&str, &str, &[&str]); 9] = [
+const SECTIONS: [(&str, &str, &[&str]); 10] = [
     ("air-in-time", "Seeing in time", &["seeing", "power"]),
     (
         "shape-in-time",
@@ -26,6 +26,7 @@ const SECTIONS: [(&str, &str, &[&str]); 9] = [
         "Instrument, air and Sun",
         &["separation", "correlation"],
     ),
+    ("motion", "Drifts and scans", &["drift", "scan"]),
     ("definitions", "Definitions and consequences", &[]),
     ("left-out", "What was left out, and why", &[]),
 ];
@@ -70,8 +71,11 @@ pub(crate) fn document(
     );
     first_screen(&mut out, record, plates);
     warnings(&mut out, record);
-    contents(&mut out);
+    contents(&mut out, record);
     for (anchor, heading, stems) in SECTIONS {
+        if !shown(anchor, record) {
+            continue;
+        }
         let _ = write!(
             out,
             "<section aria-labelledby=\"{anchor}-h\" id=\"{anchor}\">\n<h2 id=\"{anchor}-h\">{}</h2>\n",
@@ -197,10 +201,19 @@ fn warnings(out: &mut String, record: &Record) {
     out.push_str("</ul>\n</aside>\n");
 }
 
+/// Whether a section belongs to this session.
+fn shown(anchor: &str, record: &Record) -> bool {
+    anchor != "motion" || !(record.drifts.is_empty() && record.scans.is_empty())
+}
+
 /// Links to the sections.
-fn contents(out: &mut String) {
+fn contents(out: &mut String, record: &Record) {
     out.push_str("<nav aria-label=\"Sections\"><ul>\n");
-    let all = SECTIONS.iter().map(|it| (it.0, it.1)).chain(CLOSING);
+    let all = SECTIONS
+        .iter()
+        .map(|it| (it.0, it.1))
+        .filter(|it| shown(it.0, record))
+        .chain(CLOSING);
     for (anchor, heading) in all {
         let _ = writeln!(
             out,

@@ -1,5 +1,6 @@
 //! Invented sessions at the station Corrie Head, for the tests of the report.
 
+mod motion;
 mod parts;
 
 use parts::{
@@ -110,6 +111,8 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
     let units = [
         "arcsec", "mas", "mas", "mas", "mas", "mas", "mas", "mas", "1", "mas",
     ];
+    // The long session has a drift and a scan, too.
+    let moves = which == Session::Season;
     let record = Record {
         schema_version: SCHEMA_VERSION,
         program_version: "0.1.0".to_owned(),
@@ -230,6 +233,10 @@ pub(super) fn session(which: Session) -> (Record, Traces) {
             .enumerate()
             .map(|(k, it)| sequence(k, *it, &mut noise, scale))
             .collect(),
+        camera: moves.then(motion::camera),
+        drifts: moves.then(|| motion::drift(&mut noise)).into_iter().collect(),
+        scans: moves.then(|| motion::scan(&mut noise)).into_iter().collect(),
+        by_scan: moves.then(motion::by_scan),
         masked: vec![
             MaskedArc { sequence: 0, from_deg: 41.0, to_deg: 49.5, frames: 1.0, reason: "bright structure at the limb".to_owned() },
             MaskedArc { sequence: 0, from_deg: 212.0, to_deg: 214.0, frames: 0.0375, reason: "dust on the window".to_owned() },

@@ -830,10 +830,173 @@ pub struct Record {
     pub budget: Vec<BudgetLine>,
     /// The sequences.
     pub sequences: Vec<SequenceRecord>,
+    /// The camera by the Sun's own motion, where the session has a drift.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub camera: Option<CameraRecord>,
+    /// The drifts.
+    #[serde(skip_serializing_if = "Vec::is_empty", default)]
+    pub drifts: Vec<DriftRecord>,
+    /// The scans.
+    #[serde(skip_serializing_if = "Vec::is_empty", default)]
+    pub scans: Vec<ScanRecord>,
+    /// The shape from the scans, where the session has one.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub by_scan: Option<ByScan>,
     /// Parts of the limb left out.
     pub masked: Vec<MaskedArc>,
     /// What a reader must know.
     pub warnings: Vec<WarningRecord>,
+}
+
+/// A number of the camera, as the session file and as the drifts have it.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct CameraNumber {
+    /// As the session file has it.
+    pub nominal: Quantity,
+    /// As the drifts measured it.
+    pub drift: Quantity,
+    /// Drift minus nominal in units of its standard uncertainty.
+    pub pull: f64,
+    /// `drift` or `nominal`: which was used, the one with the smaller standard uncertainty.
+    pub used: String,
+}
+
+/// The camera as the Sun's own motion measured it.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct CameraRecord {
+    /// Plate scale.
+    pub scale: CameraNumber,
+    /// Camera angle, as `camera.angle_deg`.
+    pub angle: CameraNumber,
+}
+
+/// Where a drifting disk stood against an even scale, over a part of its way.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct DistortionPoint {
+    /// Distance along the way from the detector's middle, px.
+    pub along_px: f64,
+    /// Centres in it.
+    pub frames: usize,
+    /// Mean residual along the way, mas.
+    pub along_mas: f64,
+    /// Its standard uncertainty, mas.
+    pub along_sigma_mas: f64,
+    /// Mean residual across the way, mas.
+    pub across_mas: f64,
+    /// Its standard uncertainty, mas.
+    pub across_sigma_mas: f64,
+}
+
+/// One whole disk of a drift.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct DriftPoint {
+    /// Distance along the way from the detector's middle, px.
+    pub along_px: f64,
+    /// Residual along the way, mas.
+    pub along_mas: f64,
+    /// Residual across the way, mas.
+    pub across_mas: f64,
+}
+
+/// One drift: scale and angle from the centres in time.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct DriftRecord {
+    /// Index of the sequence.
+    pub sequence: usize,
+    /// Frames with a whole disk clear of the edge.
+    pub frames_used: usize,
+    /// Frames in which the disk touched the edge of the field.
+    pub frames_at_edge: usize,
+    /// Plate scale.
+    pub scale: Quantity,
+    /// Camera angle, as `camera.angle_deg`.
+    pub angle: Quantity,
+    /// The way, arcsec.
+    pub travel_arcsec: f64,
+    /// Velocity on the detector, px/s.
+    pub velocity_px_s: [f64; 2],
+    /// Scatter of one centre along and across the way, arcsec.
+    pub noise_arcsec: [f64; 2],
+    /// Share of its variance that is correlated in time, 0 to 1.
+    pub correlated_share: f64,
+    /// Its correlation time, s.
+    pub correlation_time_s: f64,
+    /// Independent centres that would give the same error of the scale.
+    pub independent_frames: f64,
+    /// Readout that the row times were worked out with, s; null where the session gives none.
+    pub readout_s: Option<f64>,
+    /// Relative change of the scale by one millisecond of readout.
+    pub scale_by_readout_per_ms: f64,
+    /// Means of the residuals by part of the way, where there are enough centres.
+    pub distortion: Vec<DistortionPoint>,
+    /// Every centre.
+    pub centres: Vec<DriftPoint>,
+}
+
+/// One transit of a scan.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct TransitRecord {
+    /// Plane of the scan.
+    pub transit: usize,
+    /// When the Sun's centre crossed the slit, UTC.
+    pub time_utc: String,
+    /// Seconds between the contacts that the radius across the slit stands for.
+    pub duration_s: f64,
+    /// Radius across the slit at 1 AU, from time alone, arcsec.
+    pub across_slit_arcsec: f64,
+    /// Radius along the slit at 1 AU, arcsec.
+    pub along_slit_arcsec: f64,
+}
+
+/// One scan.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct ScanRecord {
+    /// Index of the sequence.
+    pub sequence: usize,
+    /// Lines of a transit.
+    pub lines: usize,
+    /// Pixels of the slit.
+    pub slit_px: usize,
+    /// Motion of the Sun across the slit, arcsec/s.
+    pub across_arcsec_s: f64,
+    /// Angle of the motion from the slit's normal, degrees.
+    pub oblique_deg: f64,
+    /// Slit's angle, as `camera.angle_deg`, from the transits.
+    pub slit_angle: Quantity,
+    /// The transits with a limb.
+    pub transits: Vec<TransitRecord>,
+    /// Transits without, and why.
+    pub lost: Vec<String>,
+    /// Mean limb about the reference radius: detector angle, degrees.
+    pub limb_angle_deg: Vec<f64>,
+    /// Its radius at 1 AU minus the mean, mas.
+    pub limb_mas: Vec<f64>,
+    /// Standard uncertainty by the transits' scatter, mas.
+    pub limb_sigma_mas: Vec<f64>,
+}
+
+/// The shape from the transits of all scans.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+pub struct ByScan {
+    /// Radius at 1 AU.
+    pub radius: ShapeQuantity,
+    /// Equatorial minus polar radius.
+    pub oblateness: ShapeQuantity,
+    /// Relative error of the slit's scale as the transits leave it.
+    pub slit_scale_error: Quantity,
+    /// Transits.
+    pub transits: usize,
+    /// Scatter of one transit's mean radius, mas.
+    pub scatter_mas: f64,
+    /// Radius minus that of the frames, in units of its standard uncertainty (what both share left out).
+    pub radius_difference_sigma: Option<f64>,
+    /// The same of the oblateness.
+    pub oblateness_difference_sigma: Option<f64>,
+    /// Where the error comes from.
+    pub budget: Vec<BudgetLine>,
+    /// Why there is no value.
+    #[serde(skip_serializing_if = "Option::is_none", default)]
+    pub reason: Option<String>,
 }
 
 /// One frame of the session, for the tables and the figures.

@@ -280,11 +280,13 @@ pub(super) fn time(reader: &mut Reader<'_>, root: &View) -> Option<Time> {
     let date_obs = reader.choice(&view, "date_obs", tables::MOMENTS, &moments);
     let clock_offset_s = reader.number(&view, "clock_offset_s");
     let clock_sigma_s = reader.number(&view, "clock_sigma_s");
+    let clock_rate_sigma_ppm = reader.number(&view, "clock_rate_sigma_ppm");
     let ut1_minus_utc_s = reader.number(&view, "ut1_minus_utc_s");
     Some(Time {
         date_obs: date_obs?,
         clock_offset_s: clock_offset_s?,
         clock_sigma_s: clock_sigma_s?,
+        clock_rate_sigma_ppm: clock_rate_sigma_ppm?,
         ut1_minus_utc_s: ut1_minus_utc_s?,
     })
 }

@@ -273,6 +273,8 @@ pub struct Time {
     pub clock_offset_s: f64,
     /// Standard uncertainty of that offset.
     pub clock_sigma_s: f64,
+    /// Standard uncertainty of the clock's rate, parts in a million.
+    pub clock_rate_sigma_ppm: f64,
     /// UT1 minus UTC.
     pub ut1_minus_utc_s: f64,
 }

@@ -60,6 +60,7 @@ pub fn resolved(session: &Session) -> Value {
             },
             "clock_offset_s": session.time.clock_offset_s,
             "clock_sigma_s": session.time.clock_sigma_s,
+            "clock_rate_sigma_ppm": session.time.clock_rate_sigma_ppm,
             "ut1_minus_utc_s": session.time.ut1_minus_utc_s,
         },
         "limb": {

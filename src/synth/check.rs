@@ -1,7 +1,7 @@
 //! The ranges of a scenario's numbers.
 
 use super::screens::longest_outer_scale_m;
-use super::{Scenario, SynthError};
+use super::{Scenario, SequenceKind, SynthError};
 
 /// Most frames of a session.
 const MOST_FRAMES: usize = 100_000;
@@ -221,6 +221,12 @@ pub(super) fn check(s: &Scenario) -> Result<(), SynthError> {
             360.0,
             "deg",
         )?;
+        if it.kind == SequenceKind::Scan {
+            let key = |name: &str| format!("sequence[{i}].{name}");
+            n(&key("lines"), it.lines as f64, 16.0, 100_000.0, "lines")?;
+            n(&key("line_s"), it.line_s, 1e-3, 60.0, "s")?;
+            n(&key("step_s"), it.step_s, it.span_s(), 3600.0, "s")?;
+        }
         if it.at_min < before_min {
             return Err(SynthError::Overlap {
                 sequence: i + 1,

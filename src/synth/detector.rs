@@ -103,6 +103,21 @@ impl Detector {
         })
     }
 
+    /// The counts of lines of the middle column, as a line detector has them.
+    pub(super) fn exposed_lines(
+        &self,
+        lines: usize,
+        light_e: impl Fn(usize, usize) -> f64,
+        draw: &mut Draw,
+    ) -> Array2<u16> {
+        let column = self.side / 2;
+        Array2::from_shape_fn((lines, self.side), |(line, y)| {
+            let place = y * self.side + column;
+            let e = light_e(line, y) * f64::from(self.response[place]);
+            self.count(e, f64::from(self.dark_adu[place]), draw)
+        })
+    }
+
     #[inline]
     fn count(&self, e: f64, dark_adu: f64, draw: &mut Draw) -> u16 {
         let read2 = self.read_noise_e * self.read_noise_e;

@@ -83,8 +83,9 @@ impl Folder {
             return Ok(Vec::new());
         }
         let is_cube = |it: &str| {
-            let number = it
-                .strip_prefix("burst_")
+            let number = ["burst_", "drift_", "scan_"]
+                .iter()
+                .find_map(|kind| it.strip_prefix(kind))
                 .and_then(|it| it.strip_suffix(".fits"));
             number.is_some_and(|it| it.len() >= 3 && it.bytes().all(|it| it.is_ascii_digit()))
         };

@@ -13,7 +13,7 @@ use super::render::{self, Studio};
 use super::seeing::{self, Turbulence};
 use super::sky_above::{self, Moment};
 use super::truth::{FrameTruth, KnowledgeErrors, SequenceTruth, Truth};
-use super::{Scenario, SynthError, check, text};
+use super::{Scenario, SequenceKind, SynthError, check, text, transit};
 use crate::constants::ASTRONOMICAL_UNIT;
 use crate::disk::{Darkening, DarkeningLaw, SolarEdge};
 use crate::frames::{Card, CubeShape, FitsWriter};
@@ -58,20 +58,64 @@ pub fn make(
     let studio = studio(s, seed, &moments)?;
     let errors = knowledge_errors(s, seed);
     let weather = text::weather_csv(s, &errors)?;
-    let files: Vec<String> = (0..s.sequences.len())
-        .map(|it| format!("burst_{it:03}.fits"))
+    let files: Vec<String> = s
+        .sequences
+        .iter()
+        .enumerate()
+        .map(|(index, it)| match it.kind {
+            SequenceKind::Burst | SequenceKind::Roll => format!("burst_{index:03}.fits"),
+            SequenceKind::Drift | SequenceKind::Scan => {
+                format!("{}_{index:03}.fits", it.kind.word())
+            }
+        })
         .collect();
 
     let folder = Folder::open(folder)?;
     calibration(s, seed, &studio.detector, &folder)?;
+    if s.sequences.iter().any(|it| it.kind == SequenceKind::Scan) {
+        line_calibration(s, seed, &studio.detector, &folder)?;
+    }
     let mut sequences = Vec::new();
     let mut stretches = 0;
     for (index, file) in files.iter().enumerate() {
         let first = moments.partition_point(|it| it.sequence < index);
         let end = moments.partition_point(|it| it.sequence <= index);
         let mut writer = FitsWriter::create(&folder.staged(file))?;
-        writer.begin_u16(None, shape(s, end - first), &cards(s, &moments[first]))?;
+        let plan = &s.sequences[index];
+        let cube = CubeShape {
+            height: if plan.kind == SequenceKind::Scan {
+                plan.lines
+            } else {
+                s.size_px
+            },
+            ..shape(s, end - first)
+        };
+        writer.begin_u16(None, cube, &cards(s, &moments[first]))?;
         let mut frames = Vec::new();
+        if plan.kind == SequenceKind::Scan {
+            let cast = transit::Cast::new(s, &studio, plan)?;
+            for at in &moments[first..end] {
+                let turbulence: Vec<Turbulence> = transit::stretches(s, plan, at)
+                    .into_iter()
+                    .map(|from| {
+                        stretches += 1;
+                        let exposed = transit::exposed_as_lines(s, plan);
+                        Turbulence::new(&exposed, seed, &from, stretches - 1)
+                    })
+                    .collect();
+                let number = (first + frames.len()) as u32;
+                let (counts, truth) = cast.transit(&studio, &turbulence, at, number)?;
+                writer.plane_u16(&counts)?;
+                frames.push(truth);
+                tick();
+            }
+            writer.finish()?;
+            sequences.push(SequenceTruth {
+                file: file.clone(),
+                frames,
+            });
+            continue;
+        }
         for stretch in by_stretch(s, &moments[first..end]) {
             let turbulence = Turbulence::new(s, seed, &stretch[0], stretches);
             stretches += 1;
@@ -186,6 +230,7 @@ fn studio(s: &Scenario, seed: u64, moments: &[Moment]) -> Result<Studio, SynthEr
         detector: Detector::new(s, seed),
         table: ProfileTable::new(&optics, span_arcsec, s.scale_arcsec_px, range_m)?,
         darkening,
+        optics,
         angles_rad: (0..samples)
             .map(|k| TAU * k as f64 / samples as f64)
             .collect(),
@@ -256,9 +301,16 @@ fn cards(s: &Scenario, first: &Moment) -> Vec<Card> {
         Card::text("TIMESYS", "UTC", "time scale"),
         Card::text("DATEREF", start.clone(), "start of the first exposure"),
         Card::text("DATE-BEG", start, "start of the first exposure"),
-        Card::real("XPOSURE", s.exposure_s, "[s] exposure of a frame"),
         Card::text("BUNIT", "adu", ""),
     ];
+    // The lines of a scan are exposed from one to the next.
+    if plan.kind != SequenceKind::Scan {
+        cards.push(Card::real(
+            "XPOSURE",
+            s.exposure_s,
+            "[s] exposure of a frame",
+        ));
+    }
     if plan.frames > 1 {
         cards.extend([
             Card::text("CTYPE3", "UTC", "starts of the exposures"),
@@ -269,6 +321,35 @@ fn cards(s: &Scenario, first: &Moment) -> Vec<Card> {
         ]);
     }
     cards
+}
+
+/// Lines of the calibration of a line detector.
+const CALIBRATION_LINES: usize = 256;
+
+/// Darks and flats of the line detector: images whose rows are lines.
+fn line_calibration(
+    s: &Scenario,
+    seed: u64,
+    detector: &Detector,
+    folder: &Folder,
+) -> Result<(), SynthError> {
+    let flat_e = (FLAT_LEVEL * f64::from(s.saturation_adu) - s.dark_adu) * s.gain_e_adu;
+    for (name, light_e, stream) in [
+        ("line_dark.fits", 0.0, Stream::Dark(CALIBRATION_FRAMES)),
+        ("line_flat.fits", flat_e, Stream::Flat(CALIBRATION_FRAMES)),
+    ] {
+        let mut draw = Draw::new(seed, stream);
+        let lines = detector.exposed_lines(CALIBRATION_LINES, |_, _| light_e, &mut draw);
+        let mut writer = FitsWriter::create(&folder.staged(name))?;
+        let cube = CubeShape {
+            height: CALIBRATION_LINES,
+            ..shape(s, 1)
+        };
+        writer.begin_u16(None, cube, &[Card::text("BUNIT", "adu", "")])?;
+        writer.plane_u16(&lines)?;
+        writer.finish()?;
+    }
+    Ok(())
 }
 
 /// Darks and flats.

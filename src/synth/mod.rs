@@ -8,6 +8,7 @@
 //! | `figure` | the limb as it is seen and distorted |
 //! | `screens`, `seeing` | frozen turbulence, and what it does to the limb |
 //! | `profile_table`, `render` | light on the pixels |
+//! | `transit` | transits over a line detector |
 //! | `detector`, `draw` | counts |
 //! | `text`, `truth`, `folder`, `make` | the files |
 //!
@@ -33,6 +34,7 @@ mod sky_above;
 #[cfg(test)]
 mod tests;
 mod text;
+mod transit;
 mod truth;
 
 pub use error::SynthError;

@@ -27,7 +27,6 @@
 
 use ndarray::Array2;
 
-use super::Scenario;
 use super::detector::Detector;
 use super::draw::{Draw, Stream};
 use super::figure::{self, Figure};
@@ -35,7 +34,9 @@ use super::profile_table::ProfileTable;
 use super::seeing::{self, Turbulence};
 use super::sky_above::Moment;
 use super::truth::FrameTruth;
+use super::{Scenario, SequenceKind};
 use crate::disk::Darkening;
+use crate::optics::LimbOptics;
 use crate::units::ARCSEC_RAD;
 use std::f64::consts::TAU;
 
@@ -46,6 +47,8 @@ pub(super) struct Studio {
     pub(super) detector: Detector,
     pub(super) table: ProfileTable,
     pub(super) darkening: Darkening,
+    /// The limb and the optics that images it.
+    pub(super) optics: LimbOptics,
     /// Detector angles at which the limb is worked out.
     pub(super) angles_rad: Vec<f64>,
     pub(super) seed: u64,
@@ -77,10 +80,15 @@ pub(super) fn frame(
         *limb += moved + figure::distortion_arcsec(&s.distortion, *angle);
     }
     let middle_px = 0.5 * (s.size_px as f64 - 1.0);
-    let jump_px = s.pointing_sigma_arcsec / s.scale_arcsec_px;
+    // A telescope that stands still is not pointed from frame to frame.
+    let jump_px = if s.sequences[at.sequence].kind == SequenceKind::Drift {
+        0.0
+    } else {
+        s.pointing_sigma_arcsec / s.scale_arcsec_px
+    };
     let centre_px = (
-        middle_px + jump_px * draw.normal(),
-        middle_px + jump_px * draw.normal(),
+        middle_px + at.drift_px.0 + jump_px * draw.normal(),
+        middle_px + at.drift_px.1 + jump_px * draw.normal(),
     );
     let r0_m = seeing::frame_r0_m(s, at);
     let profile = studio.table.at(r0_m);

@@ -191,6 +191,22 @@ pub enum SequenceKind {
     Burst,
     /// The same with the instrument turned.
     Roll,
+    /// Short exposures, tracking off: the telescope stands still where the Sun is in mid drift.
+    Drift,
+    /// Transits over a line detector that stands still: the middle column of the camera along +y.
+    Scan,
+}
+
+impl SequenceKind {
+    /// The word of scenario and session files.
+    pub(super) fn word(self) -> &'static str {
+        match self {
+            Self::Burst => "burst",
+            Self::Roll => "roll",
+            Self::Drift => "drift",
+            Self::Scan => "scan",
+        }
+    }
 }
 
 /// A sequence of frames.
@@ -199,20 +215,31 @@ pub enum SequenceKind {
 pub struct SequencePlan {
     /// How it came about.
     pub kind: SequenceKind,
-    /// Number of frames.
+    /// Number of frames, of a scan: of transits.
     pub frames: usize,
-    /// From start to start of an exposure.
+    /// From start to start of an exposure, of a scan: from the first line of a transit to the next one's.
     pub step_s: f64,
     /// First exposure, after the session's start.
     pub at_min: f64,
     /// Added to the camera's angle.
     pub roll_deg: f64,
+    /// Lines of a transit.
+    #[serde(default)]
+    pub lines: usize,
+    /// From line to line, each exposed for the whole of it.
+    #[serde(default)]
+    pub line_s: f64,
 }
 
 impl SequencePlan {
     /// Start of a frame's exposure, after the session's start.
     pub(super) fn start_s(&self, frame: usize) -> f64 {
         60.0 * self.at_min + self.step_s * frame as f64
+    }
+
+    /// Seconds that one frame takes beyond its exposure: the lines of a transit.
+    pub(super) fn span_s(&self) -> f64 {
+        self.line_s * self.lines as f64
     }
 }
 

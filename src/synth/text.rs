@@ -54,16 +54,20 @@ pub(super) fn session_toml(s: &Scenario, errors: &KnowledgeErrors, files: &[Stri
         s.layer_tilt_tau_min,
     );
     for (plan, file) in s.sequences.iter().zip(files) {
-        let kind = match plan.kind {
-            SequenceKind::Burst => "burst",
-            SequenceKind::Roll => "roll",
-        };
+        let kind = plan.kind.word();
         // Writing into a String cannot fail.
         let _ = write!(
             out,
             "\n[[sequence]]\nkind = \"{kind}\"\nfiles = [\"{file}\"]\nroll_deg = {:?}\n",
             plan.roll_deg
         );
+        if plan.kind == SequenceKind::Scan {
+            let _ = write!(
+                out,
+                "line_s = {:?}\ndark = [\"line_dark.fits\"]\nflat = [\"line_flat.fits\"]\n",
+                plan.line_s
+            );
+        }
     }
     out
 }

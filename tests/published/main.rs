@@ -9,6 +9,7 @@ mod consensus_guides;
 mod consensus_means;
 mod consensus_trend;
 mod disk_transform;
+mod drift_transits;
 mod finite_fourier_edge_1975;
 mod fits_readers;
 mod footing_limb;

@@ -6,12 +6,14 @@ pub(super) mod seeing;
 mod turbulence;
 mod sequences;
 mod selection;
+mod ruler;
 mod warnings;
 mod traces;
 
 use super::correct::CorrectedSequence;
 use super::limb_model::LimbModel;
 use super::measure::MeasuredSequence;
+use super::ruler::Ruler;
 use super::solve::{SeeingResult, Selected, Shape};
 use super::stacking::Stacks;
 use super::{Options, SetAside};
@@ -25,7 +27,11 @@ use crate::shape::{Block, Contribution, Fit, Known};
 /// Everything the record is made from.
 pub(super) struct Parts<'a> {
     pub(super) masking: &'a MaskingRecord,
+    /// The session with the camera that the drifts gave.
     pub(super) session: &'a Session,
+    /// The session as it was given.
+    pub(super) given: &'a Session,
+    pub(super) ruler: &'a Ruler,
     pub(super) options: &'a Options,
     pub(super) measured: &'a [MeasuredSequence],
     pub(super) limbs: &'a [CorrectedSequence],
@@ -52,7 +58,7 @@ pub(super) fn record(p: &Parts<'_>) -> (Record, Traces) {
         time_utc: [first.frames[0].utc.to_iso(), end.to_iso()],
         summary: String::new(),
         created_from: p.sources.clone(),
-        settings: crate::session::resolved(p.session),
+        settings: crate::session::resolved(p.given),
         seed: p.options.seed,
         shape: shape::record(p),
         seeing: seeing::record(p.seeing),
@@ -65,6 +71,10 @@ pub(super) fn record(p: &Parts<'_>) -> (Record, Traces) {
         selection: selection::record(p),
         budget: selection::budget_lines(p),
         sequences: sequences::records(p),
+        camera: ruler::camera(p),
+        drifts: ruler::drifts(p),
+        scans: ruler::scans(p),
+        by_scan: ruler::by_scan(p),
         masked: p.measured.iter().flat_map(sequences::masked).collect(),
         warnings: warnings::records(p),
     };

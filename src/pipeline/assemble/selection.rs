@@ -65,7 +65,25 @@ pub(super) fn budget_lines(p: &Parts<'_>) -> Vec<BudgetLine> {
             sigma_radius_mas: it.radius_mas2.sqrt(),
             kind: if it.random { "random" } else { "systematic" }.to_owned(),
             scope: it.scope.to_owned(),
-            how: it.how.clone(),
+            how: ruler_how(p, &it.term).unwrap_or_else(|| it.how.clone()),
         })
         .collect()
+}
+
+/// How scale and angle were obtained where a drift gave them.
+fn ruler_how(p: &Parts<'_>, term: &str) -> Option<String> {
+    let camera = p.ruler.camera.as_ref()?;
+    let drifts = match p.ruler.drifts.len() {
+        1 => "1 drift".to_owned(),
+        n => format!("{n} drifts"),
+    };
+    match term {
+        "plate scale" if camera.scale.by_drift => {
+            Some(format!("the Sun's own motion through the field, {drifts}"))
+        }
+        "camera angle" if camera.angle.by_drift => Some(format!(
+            "the Sun's own motion through the field, {drifts}, through the correction for refraction"
+        )),
+        _ => None,
+    }
 }

@@ -75,6 +75,7 @@ pub(super) fn records(p: &Parts<'_>) -> Vec<SequenceRecord> {
             set_aside: Some(reason.clone()),
         });
     }
+    out.extend(super::ruler::sequences(p));
     out.sort_by_key(|it| it.sequence);
     out
 }

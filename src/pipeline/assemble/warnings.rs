@@ -125,6 +125,9 @@ pub(super) fn records(p: &Parts<'_>) -> Vec<WarningRecord> {
             format!("sequence {} was not reduced: {reason}", index + 1),
         );
     }
+    for (code, text) in super::ruler::cautions(p) {
+        say(code, text);
+    }
     if let crate::session::WeatherSource::Log(log) = &p.session.weather.source {
         for note in log.notes() {
             say("weather", note.to_string());

@@ -3,6 +3,9 @@
 mod sky;
 mod setup;
 mod reading;
+mod drift;
+mod scan;
+mod slit;
 
 use super::axis_blur::{self, AxisBlur};
 use super::limb_table::Given;
@@ -22,6 +25,8 @@ use setup::setup;
 use sky::{Sky, interpolated};
 use std::sync::{Arc, Mutex, PoisonError};
 
+pub use drift::{MeasuredDrift, measure_drift};
+pub use scan::{MeasuredScan, MeasuredTransit, measure_scan};
 pub use setup::Setup;
 pub(super) use setup::{limb_optics, predicted};
 pub use sky::place;

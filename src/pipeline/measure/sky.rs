@@ -5,7 +5,7 @@ use crate::pipeline::{Error, band};
 use crate::refraction::{self, Air, Moment};
 use crate::session::{Sequence, Session, WeatherNote};
 use crate::shape::AirResponse;
-use crate::sky::{self, Place, SunTrack, Utc};
+use crate::sky::{self, Place, SunPlace, SunTrack, Utc};
 use crate::units::{ARCMIN_RAD, ARCSEC_RAD, DEG_RAD};
 
 /// The place of the session's telescope.
@@ -98,6 +98,11 @@ impl<'a> Sky<'a> {
     pub(super) fn wavelength_nm(&self) -> f64 {
         self.band
             .map_or(self.sequence.filter.centre_nm, |it| it.effective_nm)
+    }
+
+    /// The Sun at a time.
+    pub(super) fn sun(&self, at: Utc) -> Result<SunPlace, Error> {
+        Ok(self.track.at(at)?)
     }
 
     /// Sun, camera and air at a time.

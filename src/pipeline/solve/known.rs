@@ -66,6 +66,21 @@ fn plumb_sigma_arcmin(session: &Session) -> f64 {
     }
 }
 
+/// Relative standard uncertainty of one sequence's refractivity; zero above the air.
+pub(in crate::pipeline) fn refractivity_sigma_rel(
+    session: &Session,
+    measured: &MeasuredSequence,
+) -> f64 {
+    if above_the_air(session) {
+        return 0.0;
+    }
+    refractivity_inputs(session, std::slice::from_ref(measured))
+        .iter()
+        .map(|it| it.sigma_rel.powi(2))
+        .sum::<f64>()
+        .sqrt()
+}
+
 /// What makes the air's refractivity uncertain, each with its relative standard uncertainty.
 fn refractivity_inputs(session: &Session, measured: &[MeasuredSequence]) -> Vec<RefractivityInput> {
     let n = measured.len() as f64;

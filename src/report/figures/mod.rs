@@ -4,6 +4,7 @@ mod answer;
 mod budget;
 mod correlation;
 pub(crate) mod forest;
+mod drift;
 mod frames;
 mod harmonics;
 mod kept;
@@ -12,6 +13,7 @@ mod power;
 mod refraction;
 mod ring;
 mod ring_marks;
+mod scan;
 mod seeing;
 mod separation;
 pub(crate) mod season;
@@ -112,6 +114,8 @@ pub(crate) fn all(record: &Record, traces: &Traces, preview: Option<&Preview>) -
         nulls::plate(record),
         separation::plate(record),
         correlation::plate(record),
+        drift::plate(record),
+        scan::plate(record),
     ]
     .into_iter()
     .flatten()

@@ -195,6 +195,12 @@ pub(super) static TIME: Table = Table::plain(
             "Standard uncertainty of that offset.",
         ),
         Key::number(
+            "clock_rate_sigma_ppm",
+            ("ppm", 0.0, 1000.0),
+            Number(1.0),
+            "Standard uncertainty of the clock's rate over a drift or a transit.",
+        ),
+        Key::number(
             "ut1_minus_utc_s",
             ("s", -0.9, 0.9),
             Number(0.0),
