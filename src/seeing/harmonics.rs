@@ -94,7 +94,10 @@ pub fn harmonic_power(
         let members = first..=last.min(orders - 1);
         let pooled: Vec<&[f64]> = members
             .clone()
-            .flat_map(|m| [cosines[m].as_slice(), sines[m].as_slice()])
+            .flat_map(|m| {
+                let sine = (m > 0).then(|| sines[m].as_slice());
+                std::iter::once(cosines[m].as_slice()).chain(sine)
+            })
             .filter(|it| it.iter().any(|value| *value != 0.0))
             .collect();
         if let Some(share) = effective_count_of_power(series.time_s, &pooled) {

@@ -23,9 +23,9 @@
 //! Simulated sessions of 480 frames at 0.10 to 0.30 m, five kinds of site, 200 of each: mean of r0
 //! over truth 0.95 to 1.07, scatter 3 to 6 percent about it, pulls of rms 0.6 to 1.05. The ends are
 //! sites with next to no, or with 40 percent, of their turbulence at 8 m; apertures of 0.3 m do
-//! worst (0.93 to 1.11). Twenty sessions are in `tests/published/motion_sessions.rs`. Ten sessions of
-//! an independent forward model, 160 frames each, 3 to 20 cm: mean 1.024 +- 0.015 of the truth, scatter
-//! 5 percent, no trend with r0, pulls of rms 0.6 (`tests/campaigns/seeing_reach.py`).
+//! worst (0.93 to 1.11). Twenty sessions are in `tests/published/motion_sessions.rs`. Twenty-one
+//! sessions of an independent forward model, 160 or 500 frames each, 3 to 20 cm: mean 1.026 +- 0.014 of
+//! the truth, scatter 6 percent, no trend with r0 (`tests/campaigns/seeing_reach.py`).
 //!
 //! # Source
 //!
