@@ -75,7 +75,7 @@ pub fn find(image: ArrayView2<'_, f32>) -> Result<Disk, LimbError> {
 }
 
 /// Sky and disk-centre levels from percentiles of a coarse sample.
-fn levels(image: ArrayView2<'_, f32>) -> Result<(f64, f64), LimbError> {
+pub(crate) fn levels(image: ArrayView2<'_, f32>) -> Result<(f64, f64), LimbError> {
     let (height, width) = image.dim();
     let step = ((height * width) as f64 / 20_000.0).sqrt().ceil().max(1.0) as usize;
     let mut sample: Vec<f64> = image

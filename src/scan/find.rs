@@ -4,6 +4,7 @@
 //! of the slit with only a few such pixels are particle hits. Good to a pixel or two.
 
 use super::ScanError;
+use crate::limb::{LimbError, locate};
 use ndarray::ArrayView2;
 
 /// The disk on the lines.
@@ -36,27 +37,20 @@ const LEAST_PIXELS: usize = 4;
 /// No disk, or one that is cut by the scan's ends or the slit's.
 pub fn find(lines: ArrayView2<'_, f32>) -> Result<Passage, ScanError> {
     let (height, width) = lines.dim();
-    let mut sample: Vec<f32> = lines
-        .iter()
-        .step_by((height * width / 40_000).max(1))
-        .copied()
-        .filter(|it| it.is_finite())
-        .collect();
-    sample.sort_by(f32::total_cmp);
-    let at = |share: f64| {
-        sample
-            .get((share * (sample.len() as f64 - 1.0)) as usize)
-            .map_or(f64::NAN, |it| f64::from(*it))
-    };
-    let (sky, level) = (at(0.03), at(0.97));
-    // The scatter of the sky, by its lower quarter.
-    let scatter = at(0.03) - at(0.005);
-    if !(level - sky > 10.0 * scatter.abs().max(1e-6)) {
-        return Err(ScanError::NoDisk {
-            bright_adu: level,
-            dark_adu: sky,
-        });
-    }
+    let (sky, level) = locate::levels(lines).map_err(|it| match it {
+        LimbError::NoDisk {
+            bright_adu,
+            dark_adu,
+            ..
+        } => ScanError::NoDisk {
+            bright_adu,
+            dark_adu,
+        },
+        _ => ScanError::NoDisk {
+            bright_adu: f64::NAN,
+            dark_adu: f64::NAN,
+        },
+    })?;
     let threshold = (sky + EDGE_SHARE * (level - sky)) as f32;
     let (mut rows, mut columns) = (vec![0_usize; height], vec![0_usize; width]);
     for ((y, x), value) in lines.indexed_iter() {
