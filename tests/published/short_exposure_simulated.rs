@@ -69,7 +69,7 @@ fn what_the_formula_costs_an_r0_from_the_width() {
             for highest in [0.3, 0.6] {
                 let used: Vec<&[f64; 5]> = rows
                     .iter()
-                    .filter(|it| it[0] == ratio && it[1] > 0.0 && it[1] <= highest)
+                    .filter(|it| (it[0] - ratio).abs() < 1e-9 && it[1] > 0.0 && it[1] <= highest)
                     .collect();
                 let misfit = |assumed: f64| -> f64 {
                     used.iter()
