@@ -174,6 +174,48 @@ fn a_clock_put_right_moves_the_times() {
     }
 }
 
+/// The radius goes with the scale: by hand, a thousandth of 959 arcsec.
+#[test]
+fn a_scale_put_right_is_that_of_the_session_as_it_stands() {
+    let (first, out) = from_frames();
+    let (_folder, session) = without_frames(|it| {
+        it.replace("scale_arcsec_px = 5.3986012", "scale_arcsec_px = 5.4039998")
+    });
+    let again = pipeline::refit(&session, &out.join("limbs.fits"), &NO_STACK, &Silent).unwrap();
+    let radius = |it: &Outcome| it.record.shape.radius.value.unwrap();
+    let over = radius(&again) / radius(first);
+    assert!((over - 5.4039998 / 5.3986012).abs() < 2e-6, "{over}");
+}
+
+#[test]
+fn sectors_that_were_left_out_stay_out() {
+    let (first, _) = from_frames();
+    let session = session::read(&folder().join("session.toml")).unwrap();
+    let mut marked = first.clone();
+    for it in &mut marked.limbs[1].frames {
+        it.usable[10..14].fill(false);
+    }
+    let out = tempfile::tempdir().unwrap();
+    products::write(&marked, &session, out.path()).unwrap();
+    let (_folder, session) = without_frames(|it| it);
+    let limbs = out.path().join("limbs.fits");
+    let again = pipeline::refit(&session, &limbs, &NO_STACK, &Silent).unwrap();
+    for (sequence, it) in again.limbs.iter().enumerate() {
+        for frame in &it.frames {
+            let out = frame.usable[10..14].iter().all(|it| !it);
+            assert_eq!(out, sequence == 1);
+            assert!(frame.usable[20]);
+        }
+    }
+    let warned = |it: &Outcome| {
+        it.record
+            .warnings
+            .iter()
+            .any(|it| it.code == "limbs-masked")
+    };
+    assert!(warned(&again) && !warned(first));
+}
+
 #[test]
 fn what_only_frames_can_give_is_refused() {
     let (_, out) = from_frames();

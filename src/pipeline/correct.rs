@@ -75,6 +75,9 @@ pub(super) fn correct(sequence: &MeasuredSequence) -> CorrectedSequence {
 
 fn usable(frame: &MeasuredFrame, sequence: &MeasuredSequence) -> Vec<bool> {
     let facing = facing(&frame.moment);
+    // What a run before left out for what it saw in the pixels stays out.
+    let saved = sequence.saved_mask.get(frame.frame);
+    let left_out = |s: usize| saved.and_then(|it| it.get(s)).is_some_and(|it| *it);
     frame
         .limb
         .sectors
@@ -85,6 +88,7 @@ fn usable(frame: &MeasuredFrame, sequence: &MeasuredSequence) -> Vec<bool> {
             it.flag == Flag::Good
                 && blemish.is_none_or(Blemish::on_the_sun)
                 && !on_marked_sun(sequence, facing, s)
+                && !left_out(s)
         })
         .collect()
 }

@@ -2,7 +2,7 @@
 //! by the extraction as it stands.
 
 use super::Error;
-use super::measure::{MeasuredSequence, Setup, limb_optics, predicted};
+use super::measure::{MeasuredSequence, limb_optics, predicted};
 use crate::budget::{self, Displacement};
 use crate::disk::{Darkening, DarkeningLaw};
 use crate::limb::Extraction;
@@ -129,7 +129,7 @@ pub(super) fn lines(session: &Session, measured: &[MeasuredSequence]) -> Result<
             "rms difference of the two published laws at 2 arcsec of blur; no tabulated wavelength is near",
         ),
     });
-    lines.push(flat_field(session, setup, &extraction, blur, au)?);
+    lines.push(flat_field(session, measured, &extraction, blur, au)?);
     Ok(LimbModel {
         lines,
         radius_bias_mas: own.radius_mas * au,
@@ -145,15 +145,13 @@ const FLAT_GRADIENT: (f64, f64) = (0.005, 0.03);
 /// figure is moved only where they are not free.
 fn flat_field(
     session: &Session,
-    setup: &Setup,
+    measured: &[MeasuredSequence],
     extraction: &Extraction<'_>,
     blur: f64,
     au: f64,
 ) -> Result<Contribution, Error> {
-    let with_flat = session
-        .sequences
-        .iter()
-        .all(|it| !it.calibration.flat.is_empty());
+    let setup = &measured[0].setup;
+    let with_flat = measured.iter().all(|it| it.has_flat);
     let gradient = if with_flat {
         FLAT_GRADIENT.0
     } else {

@@ -143,7 +143,13 @@ fn year(text: &str) -> Option<f64> {
     if let Ok(it) = text.parse::<f64>() {
         return (1900.0..2200.0).contains(&it).then_some(it);
     }
-    let (day, fraction) = crate::sky::Utc::parse(text).ok()?.tt_jd();
+    // A day stands for its noon.
+    let whole = if text.contains(['T', ' ']) {
+        text.to_owned()
+    } else {
+        format!("{text}T12:00:00")
+    };
+    let (day, fraction) = crate::sky::Utc::parse(&whole).ok()?.tt_jd();
     Some(2000.0 + ((day - 2_451_545.0) + fraction) / 365.25)
 }
 

@@ -112,6 +112,16 @@ pub(super) fn records(p: &Parts<'_>) -> Vec<WarningRecord> {
             }
         }
     }
+    if p.measured
+        .iter()
+        .any(|it| it.saved_mask.iter().flatten().any(|it| *it))
+    {
+        say(
+            "limbs-masked",
+            "sectors that the run which measured the limbs left out stay out; its result says why"
+                .to_owned(),
+        );
+    }
     if p.measured.iter().any(|it| it.elsewhere) {
         say(
             "limbs-elsewhere",

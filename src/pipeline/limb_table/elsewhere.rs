@@ -222,6 +222,7 @@ fn given(path: &Path, sheet: &LimbSheet) -> Result<Given, Error> {
             utc,
             content: Content::Points(points),
             orientation: Some(orientation),
+            left_out: Vec::new(),
         });
     }
     let (Some(first), Some(last)) = (frames.first(), frames.last()) else {
@@ -235,8 +236,9 @@ fn given(path: &Path, sheet: &LimbSheet) -> Result<Given, Error> {
         lost: Vec::new(),
         unreadable: Vec::new(),
         exposure_s: 0.0,
-        rescaled: 1.0,
+        scale_arcsec_px: None,
         noise: None,
+        has_flat: true,
         elsewhere: true,
     })
 }

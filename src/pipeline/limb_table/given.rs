@@ -38,6 +38,8 @@ pub(super) struct GivenFrame {
     pub(super) content: Content,
     /// How the camera hung, where the table says so itself.
     pub(super) orientation: Option<Orientation>,
+    /// Sectors that were left out for what the whole sequence shows.
+    pub(super) left_out: Vec<bool>,
 }
 
 /// The limbs of one sequence.
@@ -57,10 +59,12 @@ pub(in crate::pipeline) struct Given {
     pub(super) span: (Utc, Utc),
     /// Exposure, s; 0 where it is not known.
     pub(super) exposure_s: f64,
-    /// Scale of the radii over that of the table.
-    pub(super) rescaled: f64,
+    /// Plate scale of the radii, arcsec a pixel; none where they are angles.
+    pub(super) scale_arcsec_px: Option<f64>,
     /// Variance of their noise over its expectation, with its uncertainty.
     pub(in crate::pipeline) noise: Option<(f64, f64)>,
+    /// Whether a flat field was divided out.
+    pub(in crate::pipeline) has_flat: bool,
     /// Whether another program measured them.
     pub(in crate::pipeline) elsewhere: bool,
 }
@@ -98,6 +102,15 @@ impl Given {
         (list, times)
     }
 
+    /// Sectors that were left out, by frame.
+    pub(in crate::pipeline) fn mask(&self) -> Vec<Vec<bool>> {
+        let mut out = vec![Vec::new(); self.total];
+        for it in &self.frames {
+            out[it.frame].clone_from(&it.left_out);
+        }
+        out
+    }
+
     /// Files that could not be opened when the frames were read.
     pub(in crate::pipeline) fn unreadable(&self) -> &[LostFrame] {
         &self.unreadable
@@ -123,7 +136,9 @@ impl Given {
         }
         for it in &self.frames {
             let sectors = match &it.content {
-                Content::Sectors(sectors) => sectors.iter().map(|it| self.scaled(it)).collect(),
+                Content::Sectors(sectors) => {
+                    sectors.iter().map(|it| self.scaled(it, setup)).collect()
+                }
                 Content::Points(points) => in_sectors(points, setup, model_arcsec),
             };
             let good = sectors.iter().filter(|it| it.flag == Flag::Good).count();
@@ -145,10 +160,14 @@ impl Given {
         out
     }
 
-    fn scaled(&self, it: &SectorLimb) -> SectorLimb {
+    /// A sector by the scale that is now believed.
+    fn scaled(&self, it: &SectorLimb, setup: &Setup) -> SectorLimb {
+        let over = self
+            .scale_arcsec_px
+            .map_or(1.0, |it| setup.scale_arcsec_px / it);
         SectorLimb {
-            radius_arcsec: it.radius_arcsec * self.rescaled,
-            sigma_arcsec: it.sigma_arcsec * self.rescaled,
+            radius_arcsec: it.radius_arcsec * over,
+            sigma_arcsec: it.sigma_arcsec * over,
             ..*it
         }
     }

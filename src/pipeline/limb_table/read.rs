@@ -92,7 +92,6 @@ impl Saved {
         let Some(saved) = self.sequences.get(&index) else {
             return Ok(None);
         };
-        let camera = &session.sequences[index].camera;
         let centre_nm = session.sequences[index].filter.centre_nm;
         let telescope = &session.telescope;
         let wanted = [
@@ -143,7 +142,6 @@ impl Saved {
             }
             given.span = (given.span.0.plus_s(shift_s), given.span.1.plus_s(shift_s));
         }
-        given.rescaled = camera.scale_arcsec_px / saved.scale_arcsec_px;
         // The camera hangs as the session says.
         for it in &mut given.frames {
             it.orientation = None;
@@ -176,6 +174,7 @@ fn sequences(
     let table = TableFile::open(path, Some("SEQUENCES"))?;
     let [index, frames, start, stop, exposure] =
         ["SEQUENCE", "FRAMES", "START", "STOP", "XPOSURE"].map(|it| table.needed(it));
+    let flat = table.needed("FLAT")?;
     let [scale, wavelength, tan, sky] =
         ["SCALE", "WAVELEN", "TAN", "SKYSCALE"].map(|it| table.needed(it));
     let (index, frames, start, stop, exposure) = (index?, frames?, start?, stop?, exposure?);
@@ -191,8 +190,9 @@ fn sequences(
                     total: frames[k] as usize,
                     span: (reference.plus_s(start[k]), reference.plus_s(stop[k])),
                     exposure_s: exposure[k],
-                    rescaled: 1.0,
+                    scale_arcsec_px: Some(scale[k]),
                     noise,
+                    has_flat: flat[k] > 0.5,
                     elsewhere: false,
                 },
                 scale_arcsec_px: scale[k],
@@ -248,7 +248,7 @@ fn fill(
 ) -> Result<(), Error> {
     let columns = [
         "SEQUENCE", "FRAME", "TIME", "THETA", "POSANG", "SEEN", "SEENSIG", "BLURJ", "BLURJSIG",
-        "GAIN", "MISFIT", "OWNFLAG",
+        "GAIN", "MISFIT", "OWNFLAG", "FLAG",
     ];
     let mut read = Vec::new();
     for it in columns {
@@ -288,6 +288,10 @@ fn fill(
             utc: reference.plus_s(read[2][at]),
             content: Content::Sectors(sectors),
             orientation: Some(hung(run, &read[3], &read[4])),
+            left_out: run
+                .iter()
+                .map(|&row| read[11][row] < 0.5 && read[12][row] > 0.5)
+                .collect(),
         });
     }
     Ok(())

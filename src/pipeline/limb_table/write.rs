@@ -244,6 +244,8 @@ fn sequences(outcome: &Outcome, reference: Utc) -> Vec<Column> {
             whole(&|it| usize::from(it.setup.plate.scale_of == ScaleOf::Sky)),
         )
         .describe("1: scale found on stars through the air, 0: of the direction as it arrives"),
+        Column::new("FLAT", whole(&|it| usize::from(it.has_flat)))
+            .describe("1: a flat field was divided out"),
     ]
 }
 

@@ -72,6 +72,10 @@ pub struct MeasuredSequence {
     pub elsewhere: bool,
     /// Of limbs from a table: variance of their noise over its expectation, with its uncertainty.
     pub saved_noise: Option<(f64, f64)>,
+    /// Whether a flat field was divided out.
+    pub has_flat: bool,
+    /// Of limbs from a table, by frame: sectors that the run which measured them left out.
+    pub saved_mask: Vec<Vec<bool>>,
     /// Its files and frames.
     pub list: frames::Sequence,
     /// Frames with a limb, in order of time.
@@ -277,6 +281,8 @@ pub(in crate::pipeline) fn measure(
         from_table: given.is_some(),
         elsewhere: given.is_some_and(|it| it.elsewhere),
         saved_noise: given.and_then(|it| it.noise),
+        has_flat: given.map_or(!sequence.calibration.flat.is_empty(), |it| it.has_flat),
+        saved_mask: given.map_or_else(Vec::new, Given::mask),
         list,
         frames: measured,
         lost,
