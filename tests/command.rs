@@ -554,40 +554,47 @@ fn occulted_session(left_of: usize) -> Copied {
 
 #[test]
 fn a_disk_occulted_in_part_is_reduced_with_honest_errors_or_refused() {
-    // A fifth of the limb behind the dome.
-    let copy = occulted_session(60);
-    let (session, output) = (copy.path("session.toml"), copy.path("out"));
-    let found = json(&[
-        "reduce",
-        shown(&session),
-        "-o",
-        shown(&output),
-        "--json",
-        "-q",
-    ]);
-    let truth: Value =
-        serde_json::from_str(&fs::read_to_string(copy.path("truth.json")).unwrap()).unwrap();
-    let radius = number(&truth["shape"], "R_au_as") + number(&truth, "limb_inflection_offset_as");
-    for (key, truth) in [
-        ("radius", radius),
-        ("oblateness", number(&truth["shape"], "dr_mas")),
-    ] {
-        let it = &found["shape"][key];
-        let off = (number(it, "value") - truth) / number(it, "sigma");
-        println!("{key}: {off:.2} sigma off, sigma {}", number(it, "sigma"));
-        assert!(off.abs() < 4.0, "{key} is {off} sigma off: {it}");
+    // Columns behind the dome: 14, 23 and 37 percent of the limb.
+    let mut answered = Vec::new();
+    for left_of in [30, 60, 120] {
+        let copy = occulted_session(left_of);
+        let (session, output) = (copy.path("session.toml"), copy.path("out"));
+        let arguments = ["reduce", shown(&session), "-o", shown(&output), "-q"];
+        let ran = run(&arguments);
+        if ran.status.code() == Some(2) {
+            println!("{left_of} columns: {}", text(&ran.stderr));
+            assert_refused(&arguments, &["sequence"]);
+            assert_no_product(&output);
+            continue;
+        }
+        assert!(matches!(ran.status.code(), Some(0 | 3)), "{ran:?}");
+        answered.push(left_of);
+        let found: Value =
+            serde_json::from_slice(&fs::read(output.join("result.json")).unwrap()).unwrap();
+        let truth: Value =
+            serde_json::from_str(&fs::read_to_string(copy.path("truth.json")).unwrap()).unwrap();
+        let of = |key: &str| number(&truth["shape"], key);
+        let radius = of("R_au_as") + number(&truth, "limb_inflection_offset_as");
+        for (key, truth) in [("radius", radius), ("oblateness", of("dr_mas"))] {
+            let it = &found["shape"][key];
+            if it["value"].is_null() {
+                continue;
+            }
+            let off = (number(it, "value") - truth) / number(it, "sigma");
+            println!("{left_of} columns: {key} {off:.2} sigma off: {it}");
+            assert!(off.abs() < 4.0, "{key} is {off} sigma off: {it}");
+        }
+        let left_out: f64 = found["masked"]
+            .as_array()
+            .unwrap()
+            .iter()
+            .filter(|it| it["sequence"] == 0)
+            .map(|it| number(it, "to_deg") - number(it, "from_deg"))
+            .sum();
+        println!("{left_of} columns: {left_out} degrees left out");
+        assert!(left_out > 40.0, "{left_out} degrees left out");
     }
-    let left_out: f64 = found["masked"]
-        .as_array()
-        .unwrap()
-        .iter()
-        .filter(|it| it["sequence"] == 0)
-        .map(|it| number(it, "to_deg") - number(it, "from_deg"))
-        .sum();
-    assert!(
-        (75.0..140.0).contains(&left_out),
-        "{left_out} degrees left out"
-    );
+    assert!(answered.contains(&30), "answered: {answered:?}");
 
     // More than half of it.
     occulted_session(250).assert_refused(&["sequence"]);

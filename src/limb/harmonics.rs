@@ -22,20 +22,27 @@
 //! Least squares.
 
 use super::Flag;
+use super::blemish::median;
 use super::geometry::Annulus;
 use super::sector::Fit;
 use nalgebra::{DMatrix, DVector, Matrix5, Vector5};
+
+/// Misfit over the usual one above which a sector says nothing of the centre: it is crossed by the edge
+/// of a dome, a tree, a large spot, and wanders from step to step.
+const WANDERING: f64 = 6.0;
 
 /// Offset of the limb's centre from the one assumed, arcsec, `(x, y)`, with the second harmonic
 /// fitted beside it so that missing sectors do not turn flattening into motion.
 pub(super) fn centre_offset(annulus: &Annulus, fits: &[Fit]) -> (f64, f64) {
     let mut normal = Matrix5::<f64>::zeros();
     let mut right = Vector5::<f64>::zeros();
-    for (s, fit) in fits
-        .iter()
-        .enumerate()
-        .filter(|(_, it)| it.flag == Flag::Good)
-    {
+    let good = || {
+        fits.iter()
+            .enumerate()
+            .filter(|(_, it)| it.flag == Flag::Good)
+    };
+    let usual = median(good().map(|(_, it)| it.misfit));
+    for (s, fit) in good().filter(|(_, it)| it.misfit <= WANDERING * usual) {
         let (c, n) = annulus.direction(s);
         let row = Vector5::new(1.0, c, n, c * c - n * n, 2.0 * c * n);
         normal += row * row.transpose();
