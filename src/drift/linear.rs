@@ -41,8 +41,8 @@ impl Turned {
         let (c, s) = (velocity_px_s.0 / speed, velocity_px_s.1 / speed);
         let scale = it.scale_arcsec_px;
         let mut columns = [
-            vec![Vec::with_capacity(centres.len()); 1 + UNKNOWNS],
-            vec![Vec::with_capacity(centres.len()); 1 + UNKNOWNS],
+            vec![Vec::new(); 1 + UNKNOWNS],
+            vec![Vec::new(); 1 + UNKNOWNS],
         ];
         let mut along_px = Vec::with_capacity(centres.len());
         for centre in centres {

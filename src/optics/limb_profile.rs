@@ -121,7 +121,7 @@ impl PixelBox {
 
     /// Whether it is a point.
     fn is_point(&self) -> bool {
-        self.sides_arcsec == [0.0; 2]
+        self.sides_arcsec.iter().all(|it| *it == 0.0)
     }
 }
 

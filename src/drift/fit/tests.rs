@@ -121,11 +121,6 @@ fn pulls_have_unit_width_whatever_the_correlation() {
         let allowed = 4.0 * (2.0 / n).sqrt();
         let stated = sigmas.iter().sum::<f64>() / n;
         let scatter = (estimates.iter().map(|it| it * it).sum::<f64>() / n).sqrt();
-        eprintln!(
-            "{share} {tau_s}: {} {} {stated:e} {scatter:e}",
-            scale / n,
-            angle / n
-        );
         assert!((scale / n - 1.0).abs() < allowed, "scale {}", scale / n);
         assert!((angle / n - 1.0).abs() < allowed, "angle {}", angle / n);
         assert!((stated / scatter).ln().abs() < 1.2_f64.ln());

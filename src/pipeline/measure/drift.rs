@@ -73,10 +73,10 @@ pub fn measure_drift(
             y_px: y,
             seen: Seen {
                 azimuth_rad: moment.sun.azimuth_rad,
-                zenith_rad: moment
-                    .map
-                    .as_ref()
-                    .map_or(moment.sun.zenith_true_rad, |it| it.zenith_apparent_rad()),
+                zenith_rad: moment.map.as_ref().map_or(
+                    moment.sun.zenith_true_rad,
+                    crate::air::DiskMap::zenith_apparent_rad,
+                ),
             },
         });
     }

@@ -175,10 +175,10 @@ impl Studio<'_> {
     pub(super) fn pointed(&self, passage: &Passage, moment: &Moment) -> Mounting {
         let seen = Seen {
             azimuth_rad: moment.sun.azimuth_rad,
-            zenith_rad: moment
-                .map
-                .as_ref()
-                .map_or(moment.sun.zenith_true_rad, |it| it.zenith_apparent_rad()),
+            zenith_rad: moment.map.as_ref().map_or(
+                moment.sun.zenith_true_rad,
+                crate::air::DiskMap::zenith_apparent_rad,
+            ),
         };
         let mounted = (self.sequence.camera.angle_deg + self.sequence.roll_deg) * DEG_RAD;
         let up_at = |parallactic: f64| match self.session.telescope.mount {
