@@ -1,3 +1,5 @@
+//! Tests of the fit to a drift.
+
 use super::super::distortion::DISTORTION_BINS;
 use super::*;
 use crate::refraction::Plate;

@@ -1,3 +1,5 @@
+//! Tests of the fit to transits.
+
 use super::*;
 use rand::SeedableRng;
 use rand_chacha::ChaCha12Rng;
