@@ -24,6 +24,7 @@ impl ImageFile {
     pub(super) fn bad_key(&self, name: &str, found: &str, needed: &'static str) -> FitsError {
         FitsError::Keyword {
             path: self.path().to_owned(),
+            hdu: self.hdu(),
             name: name.to_owned(),
             found: found.to_owned(),
             needed,

@@ -94,6 +94,7 @@ fn no_time(file: &ImageFile, looked_for: String) -> FitsError {
 fn keyword(file: &ImageFile, name: &str, found: String, needed: &'static str) -> FitsError {
     FitsError::Keyword {
         path: file.path().to_owned(),
+        hdu: file.hdu(),
         name: name.to_owned(),
         found,
         needed,

@@ -1,14 +1,19 @@
 //! The files of a result: each whole under its name, or not there.
 
+mod provenance;
+mod rebuild;
+
 use super::{Error, Outcome};
 use crate::frames::{self, Card, Column, FitsWriter, Value, Values, write_ecsv, write_whole};
 use crate::report;
-use crate::result::record::SourceFile;
+use crate::result::record::{Record, SourceFile, Traces};
 use crate::session::Session;
 use crate::shape::REFERENCE_RADIUS_MAS;
 use crate::sky::observer_itrs_m;
 use rayon::prelude::*;
 use std::path::{Path, PathBuf};
+
+pub use rebuild::{Rebuilt, rebuild};
 
 /// Checksums of every file that goes into a result: the session's own and the frames.
 ///
@@ -49,6 +54,19 @@ pub fn sources(session: &Session) -> Result<Vec<SourceFile>, Error> {
         .collect()
 }
 
+/// The files of a result, in the order in which they are written.
+pub const NAMES: [&str; 9] = [
+    "limbs.fits",
+    "stack.fits",
+    "seeing.ecsv",
+    "budget.ecsv",
+    "traces.json",
+    "figures/",
+    "report.html",
+    "provenance.json",
+    "result.json",
+];
+
 /// Writes every product of a run into a folder, which is made when it is not there.
 ///
 /// # Errors
@@ -65,18 +83,46 @@ pub fn write(outcome: &Outcome, session: &Session, folder: &Path) -> Result<(), 
     stack(outcome, session, &folder.join("stack.fits"))?;
     seeing_table(outcome, &folder.join("seeing.ecsv"))?;
     budget_table(outcome, &folder.join("budget.ecsv"))?;
-    let rendered = report::render(&outcome.record, &outcome.traces)?;
+    let traces = json("traces.json", &outcome.traces)?;
+    write_whole(&folder.join("traces.json"), traces.as_bytes())?;
+    let mut names: Vec<String> = ["limbs.fits", "stack.fits", "seeing.ecsv", "budget.ecsv"]
+        .iter()
+        .map(|it| (*it).to_owned())
+        .filter(|it| it != "stack.fits" || outcome.stack.is_some())
+        .collect();
+    names.push("traces.json".to_owned());
+    names.extend(page(&outcome.record, &outcome.traces, folder)?);
+    let result = json("result.json", &outcome.record)?;
+    let products = provenance::products(folder, &names, &result)?;
+    let origin = json(
+        "provenance.json",
+        &provenance::document(&outcome.record, &products),
+    )?;
+    write_whole(&folder.join("provenance.json"), origin.as_bytes())?;
+    // Last, so that a result is there only when everything it stands on is.
+    write_whole(&folder.join("result.json"), result.as_bytes())?;
+    Ok(())
+}
+
+/// Writes report and figures; gives the names of the files.
+fn page(record: &Record, traces: &Traces, folder: &Path) -> Result<Vec<String>, Error> {
+    let rendered = report::render(record, traces)?;
+    let mut names = Vec::new();
     for (stem, svg) in &rendered.figures {
-        write_whole(&figures.join(format!("{stem}.svg")), svg.as_bytes())?;
+        let name = format!("figures/{stem}.svg");
+        write_whole(&folder.join(&name), svg.as_bytes())?;
+        names.push(name);
     }
     write_whole(&folder.join("report.html"), rendered.html.as_bytes())?;
-    // Last, so that a result is there only when everything it stands on is.
-    let text = serde_json::to_string_pretty(&outcome.record).map_err(|source| Error::Record {
-        what: "result.json",
-        source,
-    })?;
-    write_whole(&folder.join("result.json"), format!("{text}\n").as_bytes())?;
-    Ok(())
+    names.push("report.html".to_owned());
+    Ok(names)
+}
+
+/// A record as the text of a file.
+fn json<T: serde::Serialize>(what: &'static str, value: &T) -> Result<String, Error> {
+    serde_json::to_string_pretty(value)
+        .map(|it| it + "\n")
+        .map_err(|source| Error::Record { what, source })
 }
 
 /// Cards that every FITS product carries.

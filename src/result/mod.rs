@@ -1,3 +1,6 @@
 //! The records of a result.
 
 pub mod record;
+mod schema;
+
+pub use schema::schema;

@@ -4,13 +4,14 @@
 //! program never changes a format. Angles are degrees, on the sky from celestial north through east
 //! unless the name says otherwise; `sigma` is half the width of the 68 percent interval.
 
-use serde::{Deserialize, Serialize};
+use schemars::JsonSchema;
+use serde::{Deserialize, Deserializer, Serialize};
 
 /// Version of the layout of `result.json`.
 pub const SCHEMA_VERSION: u32 = 1;
 
 /// A value with its standard uncertainty, or the reason why there is none.
-#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Quantity {
     /// Best estimate; null where it was not measured.
     pub value: Option<f64>,
@@ -60,7 +61,7 @@ impl Quantity {
 }
 
 /// Whether a quantity could be told apart from what it is mixed with.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
 #[serde(rename_all = "snake_case")]
 pub enum Status {
     /// It was measured.
@@ -70,7 +71,7 @@ pub enum Status {
 }
 
 /// A quantity of the shape, with its error in parts and its intervals.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct ShapeQuantity {
     /// Best estimate; null where it was not separated.
     pub value: Option<f64>,
@@ -111,7 +112,7 @@ impl ShapeQuantity {
 }
 
 /// A distortion fixed to the detector: `amplitude cos m (theta - angle)`, apparent minus true.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct DistortionRecord {
     /// Harmonic number.
     pub m: usize,
@@ -127,7 +128,7 @@ pub struct DistortionRecord {
 }
 
 /// A null test: a number that the Sun does not have.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct NullTest {
     /// What was tested, in words.
     pub test: String,
@@ -143,7 +144,7 @@ pub struct NullTest {
 }
 
 /// What the air's terms of the fit came out as.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct AirRecord {
     /// Fitted scale of refractivity: 1 as computed from the weather.
     pub scale: Quantity,
@@ -152,7 +153,7 @@ pub struct AirRecord {
 }
 
 /// How well the parts were told apart.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Separation {
     /// Rank of the scaled design without prior knowledge.
     pub rank: usize,
@@ -169,7 +170,7 @@ pub struct Separation {
 }
 
 /// The shape from the limb of the stacked frames.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct ByStack {
     /// Equatorial minus polar radius.
     pub oblateness: ShapeQuantity,
@@ -187,7 +188,7 @@ pub struct ByStack {
 }
 
 /// Radius and oblateness by one definition of the limb.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct DefinitionRecord {
     /// Which definition.
     pub definition: String,
@@ -202,7 +203,7 @@ pub struct DefinitionRecord {
 }
 
 /// One point of the curve of the shape against the kept fraction.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct KeptPoint {
     /// Share of the usable frames kept, 0 to 1.
     pub fraction: f64,
@@ -219,7 +220,7 @@ pub struct KeptPoint {
 }
 
 /// The covariance of the fitted terms.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Covariance {
     /// Names of the terms.
     pub terms: Vec<String>,
@@ -230,7 +231,7 @@ pub struct Covariance {
 }
 
 /// What the oblateness says of the gravitational quadrupole.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Quadrupole {
     /// J2, dimensionless.
     pub j2: Quantity,
@@ -241,7 +242,7 @@ pub struct Quadrupole {
 }
 
 /// The shape of the limb.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct ShapeRecord {
     /// Equatorial minus polar radius, mas at 1 AU, B0 taken out.
     pub oblateness: ShapeQuantity,
@@ -270,7 +271,7 @@ pub struct ShapeRecord {
 }
 
 /// One turbulent layer of the fit.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct LayerRecord {
     /// Height above the telescope, m.
     pub height_m: f64,
@@ -279,7 +280,7 @@ pub struct LayerRecord {
 }
 
 /// Power of one harmonic of the limb, observed and modelled.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct PowerRecord {
     /// Harmonic number.
     pub m: usize,
@@ -294,7 +295,7 @@ pub struct PowerRecord {
 }
 
 /// What the air did.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct SeeingRecord {
     /// Fried's parameter at 500 nm towards the zenith.
     pub r0: Quantity,
@@ -319,7 +320,7 @@ pub struct SeeingRecord {
 }
 
 /// The air's share of the error.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct TurbulenceRecord {
     /// Error of the oblateness from turbulence alone, predicted from the seeing.
     pub floor: Quantity,
@@ -332,7 +333,7 @@ pub struct TurbulenceRecord {
 }
 
 /// Hours of observation to a goal.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct HoursTo {
     /// To 1 mas.
     #[serde(rename = "1_mas")]
@@ -343,7 +344,7 @@ pub struct HoursTo {
 }
 
 /// What the air's bending did to one sequence.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct RefractionRecord {
     /// Index of the sequence in the session file, from 0.
     pub sequence: usize,
@@ -374,7 +375,7 @@ pub struct RefractionRecord {
 }
 
 /// Why frames were set aside, and how many.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Rejection {
     /// The reason, in words.
     pub reason: String,
@@ -383,7 +384,7 @@ pub struct Rejection {
 }
 
 /// What selection did.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct SelectionRecord {
     /// Frames read.
     pub read: usize,
@@ -404,7 +405,7 @@ pub struct SelectionRecord {
 }
 
 /// One line of the error budget.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct BudgetLine {
     /// What it is.
     pub term: String,
@@ -421,7 +422,7 @@ pub struct BudgetLine {
 }
 
 /// One harmonic of a sequence, air taken out, on the detector.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct HarmonicRecord {
     /// Harmonic number.
     pub m: usize,
@@ -434,7 +435,7 @@ pub struct HarmonicRecord {
 }
 
 /// One sequence of the session.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct SequenceRecord {
     /// Index in the session file, from 0.
     pub sequence: usize,
@@ -470,7 +471,7 @@ pub struct SequenceRecord {
 }
 
 /// A part of the limb that was left out, and why.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct MaskedArc {
     /// Index of the sequence.
     pub sequence: usize,
@@ -485,7 +486,7 @@ pub struct MaskedArc {
 }
 
 /// Something a reader must know.
-#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
 pub struct WarningRecord {
     /// A short code that programs can match.
     pub code: String,
@@ -494,7 +495,7 @@ pub struct WarningRecord {
 }
 
 /// A file that went into the result.
-#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
 pub struct SourceFile {
     /// Path as written in the session file.
     pub path: String,
@@ -505,7 +506,7 @@ pub struct SourceFile {
 }
 
 /// Everything in `result.json`.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Record {
     /// Layout of this file.
     pub schema_version: u32,
@@ -544,7 +545,7 @@ pub struct Record {
 }
 
 /// One frame of the session, for the tables and the figures.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct FrameTrace {
     /// Index of the sequence.
     pub sequence: usize,
@@ -556,7 +557,9 @@ pub struct FrameTrace {
     pub kept: bool,
     /// Weight in the fit relative to the mean.
     pub weight: f64,
-    /// Fried's parameter at 500 nm towards the Sun, from the width of this frame's limb, m.
+    /// Fried's parameter at 500 nm towards the Sun, from the width of this frame's limb, m; not a
+    /// number, in a file null, where the width cannot tell.
+    #[serde(deserialize_with = "number_or_gap")]
     pub r0_blur_m: f64,
     /// Radius minus the session's mean, mas at 1 AU.
     pub radius_mas: f64,
@@ -567,7 +570,7 @@ pub struct FrameTrace {
 }
 
 /// The mean limb about the fitted circle, for the figure.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct LimbTrace {
     /// Position angle from celestial north through east, degrees.
     pub position_angle_deg: Vec<f64>,
@@ -583,8 +586,13 @@ pub struct LimbTrace {
     pub zenith_deg: f64,
 }
 
-/// What the figures show beyond the record.
-#[derive(Clone, Debug, PartialEq)]
+/// A number; not a number where the file has null.
+fn number_or_gap<'de, D: Deserializer<'de>>(from: D) -> Result<f64, D::Error> {
+    Ok(Option::<f64>::deserialize(from)?.unwrap_or(f64::NAN))
+}
+
+/// What the figures show beyond the record; all but the preview stands in `traces.json`.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
 pub struct Traces {
     /// Every measured frame.
     pub frames: Vec<FrameTrace>,
@@ -592,6 +600,7 @@ pub struct Traces {
     pub limb: LimbTrace,
     /// The stack reduced to at most 512 pixels a side, `[y, x]` with row 0 the southern edge and
     /// solar west to the right, in units of disk centre.
+    #[serde(skip)]
     pub preview: Option<ndarray::Array2<f32>>,
     /// Radius of the disk in the preview, pixels.
     pub preview_radius_px: f64,

@@ -2,6 +2,7 @@
 
 use crate::Ending;
 use crate::arguments::{Demo, Limb, Reduce, Simulate};
+use crate::dry_run;
 use crate::progress::{Bar, say};
 use std::io::Write;
 use std::path::Path;
@@ -31,6 +32,19 @@ impl<E: Into<Error>> From<E> for Failure {
     }
 }
 
+impl Failure {
+    /// What to do, where the sentence does not say it.
+    pub(crate) fn cure(&self) -> Option<&'static str> {
+        match self {
+            Self::Run(it) => match it.as_ref() {
+                Error::Fits(it) => it.cure(),
+                _ => None,
+            },
+            _ => None,
+        }
+    }
+}
+
 /// Prints on stdout; a closed pipe is no failure.
 pub(crate) fn print(text: &str) {
     let _ = writeln!(std::io::stdout().lock(), "{text}");
@@ -47,12 +61,21 @@ pub(crate) fn demo(it: &Demo, quiet: bool) -> Result<Ending, Failure> {
         seed: it.seed,
         stack: true,
     };
-    let outcome = run(&folder.join("session.toml"), &result, &options, quiet)?;
-    print(&summary(&outcome.record));
-    print(&format!(
-        "\nreport: {}",
-        result.join("report.html").display()
-    ));
+    let outcome = run(
+        &folder.join("session.toml"),
+        &result,
+        &options,
+        &Bar::new(quiet),
+    )?;
+    if it.json {
+        print(&json(&outcome.record)?);
+    } else {
+        print(&summary(&outcome.record));
+        print(&format!(
+            "\nreport: {}",
+            result.join("report.html").display()
+        ));
+    }
     if !quiet {
         say(CAUTION);
     }
@@ -60,12 +83,16 @@ pub(crate) fn demo(it: &Demo, quiet: bool) -> Result<Ending, Failure> {
 }
 
 /// `truelimb reduce`.
-pub(crate) fn reduce(it: &Reduce, quiet: bool) -> Result<Ending, Failure> {
+pub(crate) fn reduce(it: &Reduce, quiet: bool, verbose: bool) -> Result<Ending, Failure> {
     let options = Options {
         seed: it.seed,
         stack: !it.no_stack,
     };
-    let outcome = run(&it.session, &it.output, &options, quiet)?;
+    if it.dry_run {
+        return dry_run::dry_run(it, &options, quiet);
+    }
+    let bar = Bar::new(quiet).verbose(verbose);
+    let outcome = run(&it.session, &it.output, &options, &bar)?;
     if it.json {
         print(&json(&outcome.record)?);
     } else if !quiet {
@@ -85,10 +112,17 @@ fn ending(record: &Record) -> Ending {
     }
 }
 
-fn run(path: &Path, output: &Path, options: &Options, quiet: bool) -> Result<Outcome, Failure> {
+fn run(path: &Path, output: &Path, options: &Options, bar: &Bar) -> Result<Outcome, Failure> {
     let session = session::read_with_headers(path, &header_number)?;
-    let bar = Bar::new(quiet);
-    let outcome = pipeline::reduce(&session, options, &bar);
+    for (what, keys) in [
+        ("default taken", &session.assumed),
+        ("from the headers", &session.from_headers),
+    ] {
+        if !keys.is_empty() {
+            bar.detail(&format!("{what}: {}", keys.join(", ")));
+        }
+    }
+    let outcome = pipeline::reduce(&session, options, bar);
     bar.finish();
     let outcome = outcome?;
     pipeline::products::write(&outcome, &session, output)?;
@@ -96,7 +130,7 @@ fn run(path: &Path, output: &Path, options: &Options, quiet: bool) -> Result<Out
 }
 
 /// A number from a frame's header, for a fact that the session leaves out.
-fn header_number(frame: &Path, keyword: &str) -> Option<f64> {
+pub(crate) fn header_number(frame: &Path, keyword: &str) -> Option<f64> {
     truelimb::frames::ImageFile::open(frame)
         .ok()?
         .key_f64(keyword)
@@ -140,10 +174,18 @@ fn summary(record: &Record) -> String {
             ),
         ),
     ];
+    if !record.warnings.is_empty() {
+        out.push(format!("{}:", counted(record.warnings.len(), "warning")));
+    }
     for it in &record.warnings {
         out.push(format!("warning: {}", it.text));
     }
     out.join("\n")
+}
+
+/// A number of things in words.
+pub(crate) fn counted(count: usize, thing: &str) -> String {
+    format!("{count} {thing}{}", if count == 1 { "" } else { "s" })
 }
 
 fn shape_line(name: &str, it: &ShapeQuantity, digits: usize) -> String {
@@ -179,7 +221,16 @@ pub(crate) fn simulate(it: &Simulate, quiet: bool) -> Result<Ending, Failure> {
         }
     };
     make(&scenario, it.seed, &it.output, quiet)?;
-    print(&it.output.join("session.toml").display().to_string());
+    let path = it.output.join("session.toml");
+    if it.json {
+        print(&json(&serde_json::json!({
+            "session": path,
+            "truth": it.output.join("truth.json"),
+            "seed": it.seed,
+        }))?);
+    } else {
+        print(&path.display().to_string());
+    }
     Ok(Ending::Done)
 }
 
@@ -255,10 +306,4 @@ fn definition(text: &str) -> Result<Definition, Failure> {
             .ok_or_else(refused),
         _ => Err(refused()),
     }
-}
-
-/// `truelimb schema`.
-pub(crate) fn schema() -> Result<Ending, Failure> {
-    print(&json(&session::schema())?);
-    Ok(Ending::Done)
 }

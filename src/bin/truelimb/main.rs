@@ -2,8 +2,13 @@
 
 mod arguments;
 mod commands;
+mod dry_run;
+mod inspect;
 mod progress;
 mod refraction;
+mod report;
+mod schema;
+mod shell;
 
 use arguments::{Arguments, Command};
 use clap::Parser;
@@ -23,23 +28,28 @@ fn main() -> ExitCode {
     if let Some(threads) = arguments.threads {
         // Set once, before any work; a second pool is never made.
         let _ = rayon::ThreadPoolBuilder::new()
-            .num_threads(threads)
+            .num_threads(threads.get())
             .build_global();
     }
     let quiet = arguments.quiet;
+    let verbose = arguments.verbose;
     let ended = match arguments.command {
         Command::Demo(it) => commands::demo(&it, quiet),
-        Command::Reduce(it) => commands::reduce(&it, quiet),
+        Command::Reduce(it) => commands::reduce(&it, quiet, verbose),
         Command::Simulate(it) => commands::simulate(&it, quiet),
         Command::Limb(it) => commands::limb(&it),
         Command::Refraction(it) => refraction::refraction(&it, quiet),
-        Command::Schema => commands::schema(),
+        Command::Inspect(it) => inspect::inspect(&it, quiet),
+        Command::Report(it) => report::report(&it),
+        Command::Schema(it) => schema::schema(&it),
+        Command::Completions(it) => shell::completions(&it),
+        Command::Man(it) => shell::man(&it),
     };
     match ended {
         Ok(Ending::Done) => ExitCode::SUCCESS,
         Ok(Ending::Refused) => ExitCode::from(3),
         Err(it) => {
-            progress::say(&format!("error: {it}"));
+            progress::fail(&it.to_string(), it.cure());
             ExitCode::from(status(&it))
         }
     }

@@ -6,7 +6,7 @@ mod turbulence;
 mod sequences;
 mod selection;
 mod warnings;
-mod traces;
+pub(super) mod traces;
 
 use super::correct::CorrectedSequence;
 use super::limb_model::LimbModel;

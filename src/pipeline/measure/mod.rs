@@ -3,6 +3,7 @@
 mod sky;
 mod setup;
 mod reading;
+mod rehearsal;
 
 use super::{Error, Progress};
 use crate::air::{BandInAir, Conditions};
@@ -19,6 +20,7 @@ use setup::setup;
 use sky::{Sky, interpolated};
 use std::sync::Arc;
 
+pub use rehearsal::{Rehearsal, rehearse};
 pub use setup::Setup;
 pub(super) use setup::{limb_optics, predicted};
 pub use sky::place;
