@@ -128,6 +128,8 @@ fn json<T: serde::Serialize>(what: &'static str, value: &T) -> Result<String, Er
 /// Cards that every FITS product carries.
 fn common(outcome: &Outcome, session: &Session) -> Vec<Card> {
     let [x, y, z] = observer_itrs_m(&super::measure::place(session));
+    let version = outcome.record.program_version.as_str();
+    let settings = frames::sha256_of(outcome.record.settings.to_string().as_bytes());
     vec![
         Card::text(
             "CREATOR",
@@ -150,7 +152,36 @@ fn common(outcome: &Outcome, session: &Session) -> Vec<Card> {
         Card::real("OBSGEO-X", x, "[m] ITRS"),
         Card::real("OBSGEO-Y", y, "[m] ITRS"),
         Card::real("OBSGEO-Z", z, "[m] ITRS"),
+        Card::text("OBSRVTRY", ascii(&outcome.record.site_name), "station"),
+        Card::text("VERS_SW", version, "version of the program"),
+        Card::text(
+            "PRSTEP1",
+            "LIMB-EXTRACTION",
+            "limb of each frame by a template",
+        ),
+        Card::text("PRPROC1", "limb::extract", "procedure"),
+        Card::text("PRPVER1", version, ""),
+        Card::text(
+            "PRSTEP2",
+            "REFRACTION-REMOVAL",
+            "the air's bending taken out",
+        ),
+        Card::text("PRPROC2", "refraction::remove", "procedure"),
+        Card::text("PRPVER2", version, ""),
+        Card::text(
+            "TL_SETT",
+            settings,
+            "SHA-256 of the settings in result.json",
+        ),
+        Card::text("TL_PROV", "provenance.json", "inputs and products"),
     ]
+}
+
+/// A text for a header: what is not ASCII becomes a question mark.
+fn ascii(text: &str) -> String {
+    text.chars()
+        .map(|it| if (' '..='~').contains(&it) { it } else { '?' })
+        .collect()
 }
 
 /// `limbs.fits`: a row for every frame and sector.
@@ -199,15 +230,19 @@ fn limbs(outcome: &Outcome, session: &Session, path: &Path) -> Result<(), Error>
     }
     let columns = [
         Column::new("SEQUENCE", Values::I32(sequence))
-            .describe("index in the session file, from 0"),
-        Column::new("FRAME", Values::I32(frame)).describe("index in the sequence, from 0"),
+            .describe("index in the session file, from 0")
+            .ucd("meta.id"),
+        Column::new("FRAME", Values::I32(frame))
+            .describe("index in the sequence, from 0")
+            .ucd("meta.id"),
         Column::new("TIME", Values::F64(time))
             .unit("s")
             .describe("mid-exposure after DATEREF")
             .ucd("time.epoch"),
         Column::new("THETA", Values::F32(theta))
             .unit("deg")
-            .describe("detector angle from +x towards +y"),
+            .describe("detector angle from +x towards +y")
+            .ucd("pos.posAng;instr.det"),
         Column::new("POSANG", Values::F32(position_angle))
             .unit("deg")
             .describe("position angle from celestial north through east")
@@ -222,13 +257,16 @@ fn limbs(outcome: &Outcome, session: &Session, path: &Path) -> Result<(), Error>
             .ucd("stat.error;phys.angSize"),
         Column::new("SEEN", Values::F64(apparent))
             .unit("arcsec")
-            .describe("apparent radius on the plate scale"),
+            .describe("apparent radius on the plate scale")
+            .ucd("phys.angSize;instr.det"),
         Column::new("BLUR", Values::F32(blur))
             .unit("arcsec")
-            .describe("lambda / r0 from the width of the limb"),
+            .describe("lambda / r0 from the width of the limb")
+            .ucd("instr.obsty.seeing"),
         Column::new("GAIN", Values::F32(gain))
             .unit("adu")
-            .describe("brightness of disk centre by this sector"),
+            .describe("brightness of disk centre by this sector")
+            .ucd("phot.count"),
         Column::new("FLAG", Values::U8(flag))
             .describe("0 good, 1 incomplete or masked, 2 misfit")
             .ucd("meta.code.qual"),
@@ -329,11 +367,15 @@ fn seeing_table(outcome: &Outcome, path: &Path) -> Result<(), Error> {
         Column::new(
             "sequence",
             Values::I32(frames.iter().map(|it| it.sequence as i32).collect()),
-        ),
+        )
+        .describe("index in the session file, from 0")
+        .ucd("meta.id"),
         Column::new(
             "frame",
             Values::I32(frames.iter().map(|it| it.frame as i32).collect()),
-        ),
+        )
+        .describe("index in the sequence, from 0")
+        .ucd("meta.id"),
         Column::new("time", of(&|it| it.time_s))
             .unit("s")
             .describe("mid-exposure after the session's first")
@@ -342,20 +384,27 @@ fn seeing_table(outcome: &Outcome, path: &Path) -> Result<(), Error> {
             "kept",
             Values::U8(frames.iter().map(|it| u8::from(it.kept)).collect()),
         )
-        .describe("1 where it went to the fit"),
-        Column::new("weight", of(&|it| it.weight)).describe("weight from the seeing"),
+        .describe("1 where it went to the fit")
+        .ucd("meta.code.qual"),
+        Column::new("weight", of(&|it| it.weight))
+            .describe("weight from the seeing")
+            .ucd("stat.weight"),
         Column::new("r0_blur", gaps)
             .unit("m")
-            .describe("Fried's parameter, 500 nm, towards the Sun, from the limb's width"),
+            .describe("Fried's parameter, 500 nm, towards the Sun, from the limb's width")
+            .ucd("instr.obsty.seeing"),
         Column::new("radius", of(&|it| it.radius_mas))
             .unit("mas")
-            .describe("minus the session's mean, at 1 AU"),
+            .describe("minus the session's mean, at 1 AU")
+            .ucd("phys.angSize"),
         Column::new("cos2", of(&|it| it.cos2_mas))
             .unit("mas")
-            .describe("on the detector, air taken out"),
+            .describe("on the detector, air taken out")
+            .ucd("stat.Fourier"),
         Column::new("sin2", of(&|it| it.sin2_mas))
             .unit("mas")
-            .describe("on the detector, air taken out"),
+            .describe("on the detector, air taken out")
+            .ucd("stat.Fourier"),
     ];
     let facts = [(
         "reference".to_owned(),
@@ -372,22 +421,32 @@ fn budget_table(outcome: &Outcome, path: &Path) -> Result<(), Error> {
         Values::Text(lines.iter().map(|it| f(it).clone()).collect())
     };
     let columns = [
-        Column::new("term", text(&|it| &it.term)),
+        Column::new("term", text(&|it| &it.term))
+            .describe("what it is")
+            .ucd("meta.id"),
         Column::new(
             "sigma",
             Values::Gaps(lines.iter().map(|it| it.sigma_mas).collect()),
         )
         .unit("mas")
-        .describe("standard uncertainty of the oblateness"),
+        .describe("standard uncertainty of the oblateness")
+        .ucd("stat.error;src.ellipticity"),
         Column::new(
             "sigma_radius",
             Values::F64(lines.iter().map(|it| it.sigma_radius_mas).collect()),
         )
         .unit("mas")
-        .describe("standard uncertainty of the radius"),
-        Column::new("kind", text(&|it| &it.kind)),
-        Column::new("scope", text(&|it| &it.scope)),
-        Column::new("how", text(&|it| &it.how)),
+        .describe("standard uncertainty of the radius")
+        .ucd("stat.error;phys.angSize"),
+        Column::new("kind", text(&|it| &it.kind))
+            .describe("random or systematic")
+            .ucd("meta.code.class"),
+        Column::new("scope", text(&|it| &it.scope))
+            .describe("common to a frame, burst, session, instrument or model")
+            .ucd("meta.code.class"),
+        Column::new("how", text(&|it| &it.how))
+            .describe("how it was obtained")
+            .ucd("meta.note"),
     ];
     write_ecsv(path, &columns, &[])?;
     Ok(())

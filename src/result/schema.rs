@@ -15,16 +15,18 @@ pub fn schema() -> Value {
     let generator = SchemaSettings::draft2020_12()
         .for_serialize()
         .into_generator();
-    let mut schema = generator.into_root_schema_for::<Record>().to_value();
-    if let Value::Object(members) = &mut schema {
-        members.insert("title".to_owned(), json!("truelimb result"));
-        if let Some(version) = members
-            .get_mut("properties")
-            .and_then(|it| it.get_mut("schema_version"))
-            .and_then(Value::as_object_mut)
-        {
-            version.insert("const".to_owned(), json!(SCHEMA_VERSION));
+    let mut schema = json!({
+        "$schema": "https://json-schema.org/draft/2020-12/schema",
+        "title": "truelimb result",
+    });
+    let made = generator.into_root_schema_for::<Record>().to_value();
+    if let (Value::Object(into), Value::Object(made)) = (&mut schema, made) {
+        for (name, member) in made {
+            into.entry(name).or_insert(member);
         }
+    }
+    if let Some(version) = schema.pointer_mut("/properties/schema_version") {
+        version["const"] = json!(SCHEMA_VERSION);
     }
     schema
 }

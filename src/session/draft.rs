@@ -132,7 +132,8 @@ pub fn draft(draft: &Draft) -> String {
             text(&it.kind),
             files.join(", "),
             match it.kind.as_str() {
-                "roll" => "# roll_deg =                    # NEEDED: degrees, added to camera.angle_deg.",
+                "roll" =>
+                    "# roll_deg =                    # NEEDED: degrees, added to camera.angle_deg.",
                 "scan" => "# line_s =                      # NEEDED: seconds from line to line.",
                 _ => "# roll_deg = 0.0                # added to camera.angle_deg",
             }
