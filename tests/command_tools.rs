@@ -126,7 +126,7 @@ fn a_session_that_inspect_started_and_a_person_filled_in_can_be_reduced() {
         assert!(found.contains(&format!(".{key} ")), "{key}: {found}");
     }
     let said = refused(&["reduce", shown(&folder.path("session.toml")), "--dry-run"]);
-    assert!(said.contains("is missing") && said.contains("^"), "{said}");
+    assert!(said.contains("is missing") && said.contains('^'), "{said}");
 
     // A person fills the marked lines in, one by one, from what is known of the station.
     let mut rolls = [45.0, 90.0, 135.0].iter();
@@ -264,7 +264,7 @@ fn inspect_survives_hostile_files() {
     assert_eq!(accounted, fits);
 }
 
-/// Status and words of `inspect` on one file, with a gigabyte of address space and a minute.
+/// Status and words of `inspect` on one file, with two gigabytes of address space and a minute.
 fn bounded(path: &Path) -> (Option<i32>, String) {
     const LIMIT_KB: &str = "2000000";
     let mut child = Command::new("sh")
@@ -284,7 +284,7 @@ fn bounded(path: &Path) -> (Option<i32>, String) {
         if child.try_wait().unwrap().is_some() {
             break;
         }
-        if began.elapsed() > Duration::from_secs(60) {
+        if began.elapsed() > Duration::from_mins(1) {
             child.kill().unwrap();
             panic!("{}: still at it after a minute", path.display());
         }
@@ -581,5 +581,57 @@ fn what_is_piped_has_no_colour_and_progress_is_in_lines() {
     );
     for wrong in [&["--threads", "0", "schema"][..], &["-q", "-v", "schema"]] {
         refused(wrong);
+    }
+}
+
+#[test]
+fn what_is_wrong_is_shown_at_its_place() {
+    let folder = Folder::new();
+    // A line of a scenario, with a caret.
+    let scenario = folder.path("scenario.toml");
+    fs::write(&scenario, "mount = \"equatorial\"\nsize = 12\n").unwrap();
+    let out = folder.path("made");
+    let said = refused(&["simulate", shown(&scenario), "-o", shown(&out)]);
+    assert!(
+        said.contains("scenario.toml") && said.contains("size"),
+        "{said}"
+    );
+    assert!(!out.exists());
+    // A line of a table, with a caret.
+    let log = fs::read_to_string(folder.path("weather.csv")).unwrap();
+    let broken: Vec<String> = log
+        .lines()
+        .enumerate()
+        .map(|(index, it)| {
+            if index == 4 {
+                it.replacen(',', ",x", 1)
+            } else {
+                it.to_owned()
+            }
+        })
+        .collect();
+    fs::write(folder.path("weather.csv"), broken.join("\n")).unwrap();
+    let said = refused(&["reduce", shown(&folder.path("session.toml")), "--dry-run"]);
+    for word in ["weather.csv:5:", "  5 | ", "^", "found", "allowed", "cure"] {
+        assert!(said.contains(word), "\"{word}\" is not in: {said}");
+    }
+    fs::write(folder.path("weather.csv"), log).unwrap();
+    // A keyword of a header, with file, HDU, what was found, what is right, and a cure.
+    let cards = [truelimb::frames::Card::text("DATE-OBS", "14/06/26", "")];
+    let path = folder.path("burst_000.fits");
+    let mut file = truelimb::frames::FitsWriter::create(&path).unwrap();
+    file.image_f32(None, &ndarray::Array2::<f32>::zeros((384, 384)), &cards)
+        .unwrap();
+    file.finish().unwrap();
+    let said = refused(&["reduce", shown(&folder.path("session.toml")), "--dry-run"]);
+    for word in [
+        "burst_000.fits",
+        "HDU 0",
+        "DATE-OBS",
+        "'14/06/26'",
+        "YYYY-MM-DDThh:mm:ss",
+        "[headers]",
+    ] {
+        assert!(said.contains(word), "\"{word}\" is not in: {said}");
     }
 }

@@ -92,7 +92,7 @@ pub enum FitsError {
         /// The HDU that was asked, the primary one being 0.
         hdu: usize,
         /// Name of the keyword.
-        name: String,
+        name: Box<str>,
         /// Its value as written.
         found: String,
         /// What would have been right.

@@ -143,7 +143,7 @@ fn seconds_column(
     let keyword = |name: String, found: String, needed| FitsError::Keyword {
         path: handle.path().to_owned(),
         hdu: hdu - 1,
-        name,
+        name: name.into(),
         found,
         needed,
     };

@@ -25,7 +25,7 @@ impl ImageFile {
         FitsError::Keyword {
             path: self.path().to_owned(),
             hdu: self.hdu(),
-            name: name.to_owned(),
+            name: name.into(),
             found: found.to_owned(),
             needed,
         }

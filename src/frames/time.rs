@@ -95,7 +95,7 @@ fn keyword(file: &ImageFile, name: &str, found: String, needed: &'static str) ->
     FitsError::Keyword {
         path: file.path().to_owned(),
         hdu: file.hdu(),
-        name: name.to_owned(),
+        name: name.into(),
         found,
         needed,
     }

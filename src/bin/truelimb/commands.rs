@@ -217,7 +217,8 @@ pub(crate) fn simulate(it: &Simulate, quiet: bool) -> Result<Ending, Failure> {
             let text = std::fs::read_to_string(path).map_err(|it| {
                 Failure::Usage(format!("{}: could not be read: {it}", path.display()))
             })?;
-            synth::read_scenario(&text).map_err(Failure::Synth)?
+            synth::read_scenario(&text)
+                .map_err(|it| Failure::Usage(format!("{}: {it}", path.display())))?
         }
     };
     make(&scenario, it.seed, &it.output, quiet)?;

@@ -42,7 +42,7 @@ fn main() -> ExitCode {
         Command::Inspect(it) => inspect::inspect(&it, quiet),
         Command::Report(it) => report::report(&it),
         Command::Schema(it) => schema::schema(&it),
-        Command::Completions(it) => shell::completions(&it),
+        Command::Completions(it) => Ok(shell::completions(&it)),
         Command::Man(it) => shell::man(&it),
     };
     match ended {

@@ -9,11 +9,11 @@ use std::path::Path;
 use truelimb::Error;
 
 /// `truelimb completions`.
-pub(crate) fn completions(it: &Completions) -> Result<Ending, Failure> {
+pub(crate) fn completions(it: &Completions) -> Ending {
     let mut text = Vec::new();
     clap_complete::generate(it.shell, &mut Arguments::command(), "truelimb", &mut text);
     send(&text);
-    Ok(Ending::Done)
+    Ending::Done
 }
 
 /// `truelimb man`.

@@ -8,20 +8,30 @@ use std::path::{Path, PathBuf};
 use truelimb::Error;
 use truelimb::session::{self, Draft, DraftSequence};
 
-/// Writes the file; gives its path.
-pub(super) fn write(folder: &Path, path: &Path, found: &Found) -> Result<PathBuf, Failure> {
-    let folder = if folder.is_file() {
-        folder.parent().unwrap_or(Path::new(""))
-    } else {
-        folder
-    };
-    let target = folder.join(path);
+/// Where the file would be; refused where there is one.
+pub(super) fn target(place: &Path, path: &Path) -> Result<PathBuf, Failure> {
+    let target = folder_of(place).join(path);
     if target.exists() {
         return Err(Failure::Usage(format!(
             "{}: is there already and is not written over; give --write another name",
             target.display()
         )));
     }
+    Ok(target)
+}
+
+/// The folder that names are relative to.
+fn folder_of(place: &Path) -> &Path {
+    if place.is_file() {
+        place.parent().unwrap_or(Path::new(""))
+    } else {
+        place
+    }
+}
+
+/// Writes the file.
+pub(super) fn write(place: &Path, target: &Path, found: &Found) -> Result<(), Failure> {
+    let folder = folder_of(place);
     let beside = target.parent() == Some(folder);
     let text = session::draft(&draft(found, |name| {
         if beside {
@@ -32,7 +42,7 @@ pub(super) fn write(folder: &Path, path: &Path, found: &Found) -> Result<PathBuf
     })?);
     let failed = |it: std::io::Error| {
         Failure::from(Error::File {
-            path: target.clone(),
+            path: target.to_owned(),
             what: "could not be written",
             reason: it.to_string(),
         })
@@ -40,10 +50,9 @@ pub(super) fn write(folder: &Path, path: &Path, found: &Found) -> Result<PathBuf
     let mut file = OpenOptions::new()
         .write(true)
         .create_new(true)
-        .open(&target)
+        .open(target)
         .map_err(failed)?;
-    file.write_all(text.as_bytes()).map_err(failed)?;
-    Ok(target)
+    file.write_all(text.as_bytes()).map_err(failed)
 }
 
 fn absolute(folder: &Path, name: &str) -> Result<String, Failure> {

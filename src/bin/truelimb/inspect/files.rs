@@ -102,15 +102,11 @@ enum Promise {
 fn kind_of(name: &str) -> Option<Promise> {
     let name = name.to_lowercase();
     let plain = name.strip_suffix(".gz").unwrap_or(&name);
-    let ends = |all: &[&str]| all.iter().any(|it| plain.ends_with(it));
-    if ends(&[".fits", ".fit", ".fts", ".fz"]) {
-        Some(Promise::Image)
-    } else if name.ends_with(".csv") {
-        Some(Promise::Table)
-    } else if name.ends_with(".toml") {
-        Some(Promise::Session)
-    } else {
-        None
+    match Path::new(plain).extension()?.to_str()? {
+        "fits" | "fit" | "fts" | "fz" => Some(Promise::Image),
+        "csv" if plain == name => Some(Promise::Table),
+        "toml" if plain == name => Some(Promise::Session),
+        _ => None,
     }
 }
 

@@ -63,18 +63,23 @@ struct Missing {
 
 /// `truelimb inspect`.
 pub(crate) fn inspect(it: &Inspect, quiet: bool) -> Result<Ending, Failure> {
+    let target = it
+        .write
+        .as_ref()
+        .map(|path| draft::target(&it.folder, path))
+        .transpose()?;
     let found = look(&it.folder)?;
     if it.json {
         print(&json(&found)?);
     } else {
         print(&text::of(&found));
     }
-    if let Some(path) = &it.write {
-        let written = draft::write(&it.folder, path, &found)?;
+    if let Some(target) = &target {
+        draft::write(&it.folder, target, &found)?;
         if !quiet {
             say(&format!(
                 "written: {}; fill in the lines marked NEEDED",
-                written.display()
+                target.display()
             ));
         }
     }

@@ -5,6 +5,7 @@ use super::files::FrameFile;
 use super::groups::Group;
 use crate::commands::counted;
 use crate::dry_run::size;
+use std::fmt::Write as _;
 use truelimb::sky::Utc;
 
 /// Files that cannot be used, and keys, of which more are only counted.
@@ -165,10 +166,7 @@ fn of_pixels(it: &FrameFile) -> String {
 fn weather(it: &super::files::TableFile, sequences: &[Group]) -> String {
     let mut text = format!("weather: {}", it.path);
     if let (Some(rows), Some([first, last])) = (it.rows, &it.time_utc) {
-        text.push_str(&format!(
-            ": {}, {first} to {last}",
-            counted(rows, "reading")
-        ));
+        let _ = write!(text, ": {}, {first} to {last}", counted(rows, "reading"));
         let parsed = |text: &str| Utc::parse(text).ok();
         let outside = sequences
             .iter()
@@ -181,10 +179,12 @@ fn weather(it: &super::files::TableFile, sequences: &[Group]) -> String {
             .map(|(index, _)| (index + 1).to_string())
             .collect::<Vec<_>>();
         if sequences.is_empty() {
-        } else if outside.is_empty() {
+            return text;
+        }
+        if outside.is_empty() {
             text.push_str("; covers every sequence");
         } else {
-            text.push_str(&format!("; does not cover sequence {}", outside.join(", ")));
+            let _ = write!(text, "; does not cover sequence {}", outside.join(", "));
         }
     }
     text
