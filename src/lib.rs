@@ -24,6 +24,22 @@
 //! | recovery | [`recover::recover`] | a session, known shapes | [`result::recovery::Recovery`] |
 //! | the whole | [`pipeline::reduce`] | [`session::Session`] | [`pipeline::Outcome`] |
 //!
+//! Each frame is read once for its limb, and the kept ones once more for the stack; memory does not
+//! grow with their number. Refraction is removed from every frame's limb at its own time. The limbs
+//! of all kept frames go to one fit of Sun, instrument and air, whose covariance holds what is known
+//! of the inputs; the limb of the stack goes to the same fit as a check.
+//!
+//! ```no_run
+//! use std::path::Path;
+//! use truelimb::{pipeline, session};
+//!
+//! let session = session::read(Path::new("session.toml")).map_err(truelimb::Error::from)?;
+//! let outcome = pipeline::reduce(&session, &pipeline::Options::default(), &pipeline::Silent)?;
+//! println!("{}", outcome.record.summary);
+//! pipeline::products::write(&outcome, &session, Path::new("result"))?;
+//! # Ok::<(), truelimb::Error>(())
+//! ```
+//!
 //! # Conventions
 //!
 //! * Pixels are 0-based at their centres, `(x, y)`, x the fastest axis, y up.

@@ -178,7 +178,7 @@ const TOUCH_FILES: [&str; 6] = [
     "frames/",
     "session/",
     "report/",
-    "pipeline/products.rs",
+    "pipeline/products",
     "synth/",
     "bin/",
 ];

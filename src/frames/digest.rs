@@ -26,17 +26,17 @@ pub fn sha256(path: &Path) -> Result<String, FitsError> {
             count => hash.update(&buffer[..count]),
         }
     }
-    Ok(hexadecimal(hash))
+    Ok(hexadecimal(&hash.finalize()))
 }
 
-/// The SHA-256 of a text, in lower-case hexadecimal.
-pub fn sha256_of_text(text: &str) -> String {
-    hexadecimal(Sha256::new_with_prefix(text))
+/// The SHA-256 of bytes in memory, in lower-case hexadecimal.
+pub fn sha256_of(bytes: &[u8]) -> String {
+    hexadecimal(&Sha256::digest(bytes))
 }
 
-fn hexadecimal(hash: Sha256) -> String {
-    let mut text = String::with_capacity(64);
-    for byte in hash.finalize() {
+fn hexadecimal(digest: &[u8]) -> String {
+    let mut text = String::with_capacity(2 * digest.len());
+    for byte in digest {
         text.push(char::from(DIGITS[usize::from(byte >> 4)]));
         text.push(char::from(DIGITS[usize::from(byte & 15)]));
     }
@@ -52,6 +52,10 @@ mod tests {
         std::fs::write(file.path(), "abc").unwrap();
         assert_eq!(
             super::sha256(file.path()).unwrap(),
+            super::sha256_of(b"abc")
+        );
+        assert_eq!(
+            super::sha256_of(b"abc"),
             "ba7816bf8f01cfea414140de5dae2223b00361a396177a9cb410ff61f20015ad"
         );
     }

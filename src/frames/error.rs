@@ -85,12 +85,14 @@ pub enum FitsError {
         count: usize,
     },
     /// A header keyword whose value cannot be used.
-    #[error("{}: keyword {name} is {found}, {needed} is needed", path.display())]
+    #[error("{}: HDU {hdu}: keyword {name} is {found}, {needed} is needed", path.display())]
     Keyword {
         /// The file.
         path: PathBuf,
+        /// The HDU that was asked, the primary one being 0.
+        hdu: usize,
         /// Name of the keyword.
-        name: String,
+        name: Box<str>,
         /// Its value as written.
         found: String,
         /// What would have been right.
@@ -167,6 +169,33 @@ impl FitsError {
             | Self::SizeMismatch { path, .. }
             | Self::Unwritable { path, .. } => path,
         }
+    }
+
+    /// What to do about it, where something can be done.
+    pub fn cure(&self) -> Option<&'static str> {
+        Some(match self {
+            Self::Io { action, .. } if *action == "open" || *action == "read" => {
+                "see that the path is right and the file may be read"
+            }
+            Self::Io { .. } | Self::Unwritable { .. } => return None,
+            Self::NotFits { .. } => "name FITS files only, and convert others to FITS first",
+            Self::Damaged { .. } | Self::Library { .. } | Self::TooLarge { .. } => {
+                "copy the file again from where it was made, or leave it out"
+            }
+            Self::NoImage { .. } => {
+                "give a file that holds an image of the disk, or a cube of them"
+            }
+            Self::OutOfRange { .. } => "planes and rows are counted from 0",
+            Self::Keyword { .. } => {
+                "correct the keyword, or name the right one under [headers] in the session file"
+            }
+            Self::NoTime { .. } => {
+                "name the keyword that holds the time under [headers] in the session file, or write DATE-BEG and XPOSURE into the header"
+            }
+            Self::SizeMismatch { .. } => {
+                "put frames of another size into a [[sequence]] of their own"
+            }
+        })
     }
 
     /// The sentence without the file, for a place that names it already.

@@ -106,13 +106,13 @@ pub(super) fn frames_table(
                 unit: "rows",
             });
         }
-        let Some(time_s) = seconds_column(handle, "TIME", rows)? else {
+        let Some(time_s) = seconds_column(handle, hdu, "TIME", rows)? else {
             return Err(FitsError::NoTime {
                 path: handle.path().to_owned(),
                 looked_for: "the table FRAMES has no column TIME".to_owned(),
             });
         };
-        let exposure_s = seconds_column(handle, "XPOSURE", rows)?;
+        let exposure_s = seconds_column(handle, hdu, "XPOSURE", rows)?;
         let reference = match read(handle, "DATEREF")? {
             Some(Key::Text(it)) => Some(it),
             _ => None,
@@ -126,7 +126,12 @@ pub(super) fn frames_table(
     Ok(None)
 }
 
-fn seconds_column(handle: &Handle, name: &str, rows: usize) -> Result<Option<Vec<f64>>, FitsError> {
+fn seconds_column(
+    handle: &Handle,
+    hdu: usize,
+    name: &str,
+    rows: usize,
+) -> Result<Option<Vec<f64>>, FitsError> {
     let Some(column) = handle.column(name)? else {
         return Ok(None);
     };
@@ -137,7 +142,8 @@ fn seconds_column(handle: &Handle, name: &str, rows: usize) -> Result<Option<Vec
     };
     let keyword = |name: String, found: String, needed| FitsError::Keyword {
         path: handle.path().to_owned(),
-        name,
+        hdu: hdu - 1,
+        name: name.into(),
         found,
         needed,
     };

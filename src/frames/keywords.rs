@@ -24,7 +24,8 @@ impl ImageFile {
     pub(super) fn bad_key(&self, name: &str, found: &str, needed: &'static str) -> FitsError {
         FitsError::Keyword {
             path: self.path().to_owned(),
-            name: name.to_owned(),
+            hdu: self.hdu(),
+            name: name.into(),
             found: found.to_owned(),
             needed,
         }

@@ -40,7 +40,7 @@ mod write;
 
 pub use card::{Card, Value};
 pub use column::{Column, Values};
-pub use digest::{sha256, sha256_of_text};
+pub use digest::{sha256, sha256_of};
 pub use ecsv::{ecsv_text, write_ecsv};
 pub use error::FitsError;
 pub use image::ImageFile;

@@ -11,6 +11,8 @@ use super::source::{self, Source};
 #[derive(Debug)]
 pub struct TableFile {
     source: Source,
+    /// The HDU, the primary one being 0.
+    hdu: usize,
     rows: usize,
 }
 
@@ -43,7 +45,11 @@ impl TableFile {
                     unit: "rows",
                 });
             }
-            return Ok(Self { source, rows });
+            return Ok(Self {
+                source,
+                hdu: hdu as usize - 1,
+                rows,
+            });
         }
         Err(FitsError::Damaged {
             path: path.to_owned(),
@@ -121,7 +127,8 @@ impl TableFile {
             Some(value) => Ok(Some(value)),
             None => Err(FitsError::Keyword {
                 path: self.source.handle.path().to_owned(),
-                name: name.to_owned(),
+                hdu: self.hdu,
+                name: name.into(),
                 found: written,
                 needed: "a number",
             }),

@@ -94,7 +94,8 @@ fn no_time(file: &ImageFile, looked_for: String) -> FitsError {
 fn keyword(file: &ImageFile, name: &str, found: String, needed: &'static str) -> FitsError {
     FitsError::Keyword {
         path: file.path().to_owned(),
-        name: name.to_owned(),
+        hdu: file.hdu(),
+        name: name.into(),
         found,
         needed,
     }

@@ -101,6 +101,16 @@ pub enum Error {
         /// What the system said.
         reason: String,
     },
+    /// A folder or file that should hold a result does not.
+    #[error("{}: no result that can be used: {found}\n  cure     {cure}", path.display())]
+    NotAResult {
+        /// The file.
+        path: PathBuf,
+        /// What was found.
+        found: String,
+        /// What to do.
+        cure: String,
+    },
     /// A record could not be put into text.
     #[error("{what}: {source}")]
     Record {

@@ -1,13 +1,18 @@
 //! The files of a result: each whole under its name, or not there.
 
+mod provenance;
+mod rebuild;
+
 use super::{Error, Outcome, limb_table};
 use crate::frames::{self, Card, Column, FitsWriter, Value, Values, write_ecsv, write_whole};
 use crate::report;
-use crate::result::record::SourceFile;
+use crate::result::record::{Record, SourceFile, Traces};
 use crate::session::Session;
 use crate::sky::observer_itrs_m;
 use rayon::prelude::*;
 use std::path::{Path, PathBuf};
+
+pub use rebuild::{Rebuilt, rebuild};
 
 /// Checksums of every file that goes into a result: the session's own and the frames.
 ///
@@ -48,6 +53,19 @@ pub fn sources(session: &Session) -> Result<Vec<SourceFile>, Error> {
         .collect()
 }
 
+/// The files of a result, in the order in which they are written.
+pub const NAMES: [&str; 9] = [
+    "limbs.fits",
+    "stack.fits",
+    "seeing.ecsv",
+    "budget.ecsv",
+    "traces.json",
+    "figures/",
+    "report.html",
+    "provenance.json",
+    "result.json",
+];
+
 /// Writes every product of a run into a folder, which is made when it is not there.
 ///
 /// # Errors
@@ -65,23 +83,60 @@ pub fn write(outcome: &Outcome, session: &Session, folder: &Path) -> Result<(), 
     stack(outcome, session, &folder.join("stack.fits"))?;
     seeing_table(outcome, &folder.join("seeing.ecsv"))?;
     budget_table(outcome, &folder.join("budget.ecsv"))?;
-    let rendered = report::render(&outcome.record, &outcome.traces)?;
+    let traces = json("traces.json", &outcome.traces)?;
+    write_whole(&folder.join("traces.json"), traces.as_bytes())?;
+    let mut names: Vec<String> = ["limbs.fits", "stack.fits", "seeing.ecsv", "budget.ecsv"]
+        .iter()
+        .map(|it| (*it).to_owned())
+        .filter(|it| it != "stack.fits" || outcome.stack.is_some())
+        .collect();
+    names.push("traces.json".to_owned());
+    names.extend(page(&outcome.record, &outcome.traces, folder)?);
+    let result = json("result.json", &outcome.record)?;
+    let products = provenance::products(folder, &names, &result)?;
+    let origin = json(
+        "provenance.json",
+        &provenance::document(&outcome.record, &products),
+    )?;
+    write_whole(&folder.join("provenance.json"), origin.as_bytes())?;
+    // Last, so that a result is there only when everything it stands on is.
+    write_whole(&folder.join("result.json"), result.as_bytes())?;
+    Ok(())
+}
+
+/// Writes report and figures; gives the names of the files.
+fn page(record: &Record, traces: &Traces, folder: &Path) -> Result<Vec<String>, Error> {
+    let rendered = report::render(record, traces)?;
+    let mut names = Vec::new();
     for (stem, svg) in &rendered.figures {
-        write_whole(&figures.join(format!("{stem}.svg")), svg.as_bytes())?;
+        let name = format!("figures/{stem}.svg");
+        write_whole(&folder.join(&name), svg.as_bytes())?;
+        names.push(name);
     }
     write_whole(&folder.join("report.html"), rendered.html.as_bytes())?;
-    // Last, so that a result is there only when everything it stands on is.
-    let text = serde_json::to_string_pretty(&outcome.record).map_err(|source| Error::Record {
-        what: "result.json",
-        source,
-    })?;
-    write_whole(&folder.join("result.json"), format!("{text}\n").as_bytes())?;
-    Ok(())
+    names.push("report.html".to_owned());
+    Ok(names)
+}
+
+/// A record as the text of a file.
+fn json<T: serde::Serialize>(what: &'static str, value: &T) -> Result<String, Error> {
+    serde_json::to_string_pretty(value)
+        .map(|it| it + "\n")
+        .map_err(|source| Error::Record { what, source })
+}
+
+/// A text for a header: what is not ASCII becomes a question mark.
+fn ascii(text: &str) -> String {
+    text.chars()
+        .map(|it| if (' '..='~').contains(&it) { it } else { '?' })
+        .collect()
 }
 
 /// Cards that every FITS product carries.
 fn common(outcome: &Outcome, session: &Session) -> Vec<Card> {
     let [x, y, z] = observer_itrs_m(&super::measure::place(session));
+    let version = outcome.record.program_version.as_str();
+    let settings = frames::sha256_of(outcome.record.settings.to_string().as_bytes());
     vec![
         Card::text(
             "CREATOR",
@@ -104,6 +159,28 @@ fn common(outcome: &Outcome, session: &Session) -> Vec<Card> {
         Card::real("OBSGEO-X", x, "[m] ITRS"),
         Card::real("OBSGEO-Y", y, "[m] ITRS"),
         Card::real("OBSGEO-Z", z, "[m] ITRS"),
+        Card::text("OBSRVTRY", ascii(&outcome.record.site_name), "station"),
+        Card::text("VERS_SW", version, "version of the program"),
+        Card::text(
+            "PRSTEP1",
+            "LIMB-EXTRACTION",
+            "limb of each frame by a template",
+        ),
+        Card::text("PRPROC1", "limb::extract", "procedure"),
+        Card::text("PRPVER1", version, ""),
+        Card::text(
+            "PRSTEP2",
+            "REFRACTION-REMOVAL",
+            "the air's bending taken out",
+        ),
+        Card::text("PRPROC2", "refraction::remove", "procedure"),
+        Card::text("PRPVER2", version, ""),
+        Card::text(
+            "TL_SETT",
+            settings,
+            "SHA-256 of the settings in result.json",
+        ),
+        Card::text("TL_PROV", "provenance.json", "inputs and products"),
     ]
 }
 
@@ -196,11 +273,15 @@ fn seeing_table(outcome: &Outcome, path: &Path) -> Result<(), Error> {
         Column::new(
             "sequence",
             Values::I32(frames.iter().map(|it| it.sequence as i32).collect()),
-        ),
+        )
+        .describe("index in the session file, from 0")
+        .ucd("meta.id"),
         Column::new(
             "frame",
             Values::I32(frames.iter().map(|it| it.frame as i32).collect()),
-        ),
+        )
+        .describe("index in the sequence, from 0")
+        .ucd("meta.id"),
         Column::new("time", of(&|it| it.time_s))
             .unit("s")
             .describe("mid-exposure after the session's first")
@@ -209,20 +290,27 @@ fn seeing_table(outcome: &Outcome, path: &Path) -> Result<(), Error> {
             "kept",
             Values::U8(frames.iter().map(|it| u8::from(it.kept)).collect()),
         )
-        .describe("1 where it went to the fit"),
-        Column::new("weight", of(&|it| it.weight)).describe("weight from the seeing"),
+        .describe("1 where it went to the fit")
+        .ucd("meta.code.qual"),
+        Column::new("weight", of(&|it| it.weight))
+            .describe("weight from the seeing")
+            .ucd("stat.weight"),
         Column::new("r0_blur", gaps)
             .unit("m")
-            .describe("Fried's parameter, 500 nm, towards the Sun, from the limb's width"),
+            .describe("Fried's parameter, 500 nm, towards the Sun, from the limb's width")
+            .ucd("instr.obsty.seeing"),
         Column::new("radius", of(&|it| it.radius_mas))
             .unit("mas")
-            .describe("minus the session's mean, at 1 AU"),
+            .describe("minus the session's mean, at 1 AU")
+            .ucd("phys.angSize"),
         Column::new("cos2", of(&|it| it.cos2_mas))
             .unit("mas")
-            .describe("on the detector, air taken out"),
+            .describe("on the detector, air taken out")
+            .ucd("stat.Fourier"),
         Column::new("sin2", of(&|it| it.sin2_mas))
             .unit("mas")
-            .describe("on the detector, air taken out"),
+            .describe("on the detector, air taken out")
+            .ucd("stat.Fourier"),
     ];
     let facts = [(
         "reference".to_owned(),
@@ -239,22 +327,32 @@ fn budget_table(outcome: &Outcome, path: &Path) -> Result<(), Error> {
         Values::Text(lines.iter().map(|it| f(it).clone()).collect())
     };
     let columns = [
-        Column::new("term", text(&|it| &it.term)),
+        Column::new("term", text(&|it| &it.term))
+            .describe("what it is")
+            .ucd("meta.id"),
         Column::new(
             "sigma",
             Values::Gaps(lines.iter().map(|it| it.sigma_mas).collect()),
         )
         .unit("mas")
-        .describe("standard uncertainty of the oblateness"),
+        .describe("standard uncertainty of the oblateness")
+        .ucd("stat.error;src.ellipticity"),
         Column::new(
             "sigma_radius",
             Values::F64(lines.iter().map(|it| it.sigma_radius_mas).collect()),
         )
         .unit("mas")
-        .describe("standard uncertainty of the radius"),
-        Column::new("kind", text(&|it| &it.kind)),
-        Column::new("scope", text(&|it| &it.scope)),
-        Column::new("how", text(&|it| &it.how)),
+        .describe("standard uncertainty of the radius")
+        .ucd("stat.error;phys.angSize"),
+        Column::new("kind", text(&|it| &it.kind))
+            .describe("random or systematic")
+            .ucd("meta.code.class"),
+        Column::new("scope", text(&|it| &it.scope))
+            .describe("common to a frame, burst, session, instrument or model")
+            .ucd("meta.code.class"),
+        Column::new("how", text(&|it| &it.how))
+            .describe("how it was obtained")
+            .ucd("meta.note"),
     ];
     write_ecsv(path, &columns, &[])?;
     Ok(())

@@ -68,7 +68,15 @@ pub(crate) enum Column {
     Text(&'static str),
     /// Numbers, to the right.
     Number(&'static str),
+    /// Numbers, to the right, headed by the number of the row that they belong to.
+    OfRow(usize),
 }
+
+/// Columns up to which a table is set like the text; with more, paper needs smaller type.
+const NARROW_COLUMNS: usize = 9;
+
+/// Columns up to which a table fits on paper.
+const PRINTED_COLUMNS: usize = 14;
 
 /// A table with a caption; the first cell of each row heads it.
 #[derive(Clone, Debug)]
@@ -104,25 +112,31 @@ impl Table {
         let caption = escape(&self.caption);
         let _ = writeln!(
             out,
-            "<div class=\"scroll\" role=\"region\" tabindex=\"0\" aria-label=\"{caption}\"><table>\
-             <caption>{caption}</caption>\n<thead><tr>"
+            "<div class=\"{}\" role=\"region\" tabindex=\"0\" aria-label=\"{caption}\"><table>\
+             <caption>{caption}</caption>\n<thead><tr>",
+            if self.columns.len() > NARROW_COLUMNS {
+                "scroll wide-table"
+            } else {
+                "scroll"
+            }
         );
         let shown: Vec<usize> = (0..self.columns.len())
             .filter(|&at| self.is_shown(at))
             .collect();
         for &at in &shown {
             let (class, name) = match self.columns[at] {
-                Column::Text(name) => ("", name),
-                Column::Number(name) => (" class=\"n\"", name),
+                Column::Text(name) => ("", escape(name)),
+                Column::Number(name) => (" class=\"n\"", escape(name)),
+                Column::OfRow(row) => (" class=\"n\"", row.to_string()),
             };
-            let _ = write!(out, "<th scope=\"col\"{class}>{}</th>", escape(name));
+            let _ = write!(out, "<th scope=\"col\"{class}>{name}</th>");
         }
         out.push_str("</tr></thead>\n<tbody>\n");
         for row in &self.rows {
             out.push_str("<tr>");
             for &place in &shown {
                 let cell = row.get(place).map_or("", String::as_str);
-                let numeric = matches!(self.columns[place], Column::Number(_));
+                let numeric = !matches!(self.columns[place], Column::Text(_));
                 let class = if numeric { " class=\"n\"" } else { "" };
                 let text = number(cell);
                 let _ = if place == 0 {
@@ -149,7 +163,7 @@ impl Table {
         if self.is_empty() {
             return String::new();
         }
-        let class = if self.rows.len() <= 40 {
+        let class = if self.rows.len() <= 40 && self.columns.len() <= PRINTED_COLUMNS {
             "data small"
         } else {
             "data"

@@ -200,14 +200,16 @@ nav,.skip{display:none}
 .folds details:not(:first-child){display:none}
 .folds summary{display:none}
 .key{grid-template-columns:repeat(3,minmax(0,1fr))}
-svg.wide{max-width:165mm}.ring svg.wide{max-width:82mm}
+svg.wide{max-width:min(165mm,100%)}
 .sentence{font-size:12.5pt}
 section{margin-top:18pt;padding-top:10pt}
 figure,.key>div,tr,.notes,.care{break-inside:avoid}
 h2,h3,caption{break-after:avoid}
 thead{display:table-header-group}
-.scroll{overflow:visible;max-height:none}
-table{font-size:8.5pt}th,td{padding:3px 9px 3px 0;min-width:0}
+.scroll,.data .scroll{overflow:visible;max-height:none}
+table{font-size:8.5pt}th,td,tbody th,tbody th.n,td:not(.n){padding:3px 9px 3px 0;min-width:0}
+.wide-table table{font-size:6pt}
+.wide-table th,.wide-table td,.wide-table tbody th,.wide-table td:not(.n){padding:2px 5px 2px 0}
 details.small::details-content{content-visibility:visible;display:block;height:auto}
 details.data:not(.small){display:none}
 a{color:inherit;text-decoration:none}}

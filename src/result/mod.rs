@@ -5,3 +5,6 @@ pub mod comparison;
 pub mod combined;
 pub mod record;
 pub mod recovery;
+mod schema;
+
+pub use schema::schema;

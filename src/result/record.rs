@@ -4,13 +4,14 @@
 //! program never changes a format. Angles are degrees, on the sky from celestial north through east
 //! unless the name says otherwise; `sigma` is half the width of the 68 percent interval.
 
-use serde::{Deserialize, Serialize};
+use schemars::JsonSchema;
+use serde::{Deserialize, Deserializer, Serialize};
 
 /// Version of the layout of `result.json`.
 pub const SCHEMA_VERSION: u32 = 1;
 
 /// A value with its standard uncertainty, or the reason why there is none.
-#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Quantity {
     /// Best estimate; null where it was not measured.
     pub value: Option<f64>,
@@ -60,7 +61,7 @@ impl Quantity {
 }
 
 /// Whether a quantity could be told apart from what it is mixed with.
-#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Clone, Copy, Debug, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
 #[serde(rename_all = "snake_case")]
 pub enum Status {
     /// It was measured.
@@ -70,7 +71,7 @@ pub enum Status {
 }
 
 /// A quantity of the shape, with its error in parts and its intervals.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct ShapeQuantity {
     /// Best estimate; null where it was not separated.
     pub value: Option<f64>,
@@ -111,7 +112,7 @@ impl ShapeQuantity {
 }
 
 /// A distortion fixed to the detector: `amplitude cos m (theta - angle)`, apparent minus true.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct DistortionRecord {
     /// Harmonic number.
     pub m: usize,
@@ -127,7 +128,7 @@ pub struct DistortionRecord {
 }
 
 /// A null test: a number that the Sun does not have.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct NullTest {
     /// What was tested, in words.
     pub test: String,
@@ -143,7 +144,7 @@ pub struct NullTest {
 }
 
 /// What the air's terms of the fit came out as.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct AirRecord {
     /// Fitted scale of refractivity: 1 as computed from the weather.
     pub scale: Quantity,
@@ -152,7 +153,7 @@ pub struct AirRecord {
 }
 
 /// How the distortion goes with a reading: mas for one unit of it, on the detector.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct DriverRecord {
     /// Name of the reading.
     pub reading: String,
@@ -165,7 +166,7 @@ pub struct DriverRecord {
 }
 
 /// How well the parts were told apart.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Separation {
     /// Rank of the scaled design without prior knowledge.
     pub rank: usize,
@@ -182,7 +183,7 @@ pub struct Separation {
 }
 
 /// The shape from the limb of the stacked frames.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct ByStack {
     /// Equatorial minus polar radius.
     pub oblateness: ShapeQuantity,
@@ -207,7 +208,7 @@ pub struct ByStack {
 }
 
 /// How much sharper the stacks are than the plain mean of the frames.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct StackSharpness {
     /// Energy of the edge in the stacks, 1/arcsec.
     pub stack_per_arcsec: f64,
@@ -222,7 +223,7 @@ pub struct StackSharpness {
 }
 
 /// Radius and oblateness by one definition of the limb.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct DefinitionRecord {
     /// Which definition.
     pub definition: String,
@@ -237,7 +238,7 @@ pub struct DefinitionRecord {
 }
 
 /// One point of the curve of the shape against the kept fraction.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct KeptPoint {
     /// Share of the usable frames kept, 0 to 1.
     pub fraction: f64,
@@ -254,7 +255,7 @@ pub struct KeptPoint {
 }
 
 /// Inflation of the variance of a mean by correlation in time, one harmonic.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct FactorRecord {
     /// Harmonic number.
     pub m: usize,
@@ -263,7 +264,7 @@ pub struct FactorRecord {
 }
 
 /// The same by batches of one length, m = 2.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct BatchRecord {
     /// Length of a batch, seconds.
     pub length_s: f64,
@@ -274,7 +275,7 @@ pub struct BatchRecord {
 }
 
 /// The random error once more, by resampling runs of frames.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct BootstrapRecord {
     /// Standard error of the radius, mas.
     pub sigma_radius_mas: f64,
@@ -293,7 +294,7 @@ pub struct BootstrapRecord {
 }
 
 /// How the random error was judged.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct RandomErrorRecord {
     /// Inflation by correlation in time: the larger of initial positive sequence and batch means.
     pub correlation_factor: Vec<FactorRecord>,
@@ -310,7 +311,7 @@ pub struct RandomErrorRecord {
 }
 
 /// How a quantity runs with the kept fraction, tested against zero.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct SlopeTest {
     /// Change from none to all of the frames kept, mas.
     pub slope_mas: f64,
@@ -325,7 +326,7 @@ pub struct SlopeTest {
 }
 
 /// The slopes of the curve of the shape against the kept fraction.
-#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, Default, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct KeptSlope {
     /// Of the oblateness; null where it is not separated or there are too few frames.
     pub oblateness: Option<SlopeTest>,
@@ -339,7 +340,7 @@ pub struct KeptSlope {
 }
 
 /// The covariance of the fitted terms.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Covariance {
     /// Names of the terms.
     pub terms: Vec<String>,
@@ -350,7 +351,7 @@ pub struct Covariance {
 }
 
 /// What the oblateness says of the gravitational quadrupole.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Quadrupole {
     /// J2, dimensionless.
     pub j2: Quantity,
@@ -383,7 +384,7 @@ pub struct Quadrupole {
 }
 
 /// The figure against one rotation law.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct ByLaw {
     /// Name of the law.
     pub law: String,
@@ -398,7 +399,7 @@ pub struct ByLaw {
 }
 
 /// The shape of the limb.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct ShapeRecord {
     /// Equatorial minus polar radius, mas at 1 AU, B0 taken out.
     pub oblateness: ShapeQuantity,
@@ -441,7 +442,7 @@ pub struct ShapeRecord {
 }
 
 /// An arc of the limb left out for what was seen in it, margin included.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct MaskArc {
     /// `spot`, `facula`, `dust` or `image`.
     pub kind: String,
@@ -460,7 +461,7 @@ pub struct MaskArc {
 }
 
 /// A straight line of radius against brightness over sectors.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct RegressionLine {
     /// Slope, mas of radius a percent of brightness.
     pub slope_mas_percent: f64,
@@ -472,7 +473,7 @@ pub struct RegressionLine {
 
 /// Radius residual against limb brightness: the brightness of each place on the Sun is that in the other
 /// sequences, so that the noise of one does not enter both sides.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct BrightnessRegression {
     /// Over all sectors.
     pub whole_limb: Option<RegressionLine>,
@@ -481,7 +482,7 @@ pub struct BrightnessRegression {
 }
 
 /// The shape with and without the mask.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct MaskingRecord {
     /// Mean share of the limb left out for structure, 0 to 1.
     pub share_of_limb: f64,
@@ -506,7 +507,7 @@ pub struct MaskingRecord {
 }
 
 /// Blur along one axis in one sequence.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct AxisBlurRecord {
     /// Index of the sequence.
     pub sequence: usize,
@@ -521,7 +522,7 @@ pub struct AxisBlurRecord {
 }
 
 /// One turbulent layer of the fit.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct LayerRecord {
     /// Height above the telescope, m.
     pub height_m: f64,
@@ -530,7 +531,7 @@ pub struct LayerRecord {
 }
 
 /// Power of one harmonic of the limb, observed and modelled.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct PowerRecord {
     /// Harmonic number.
     pub m: usize,
@@ -545,7 +546,7 @@ pub struct PowerRecord {
 }
 
 /// What the air did.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct SeeingRecord {
     /// Fried's parameter at 500 nm towards the zenith.
     pub r0: Quantity,
@@ -579,7 +580,7 @@ pub struct SeeingRecord {
 
 /// The floor that turbulence sets to one harmonic: standard deviations of one coefficient, mas at 1
 /// AU.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct FloorRecord {
     /// Harmonic number.
     pub m: usize,
@@ -602,7 +603,7 @@ pub struct FloorRecord {
 }
 
 /// The air's share of the error.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct TurbulenceRecord {
     /// Error of the oblateness from turbulence alone, predicted from the seeing.
     pub floor: Quantity,
@@ -618,7 +619,7 @@ pub struct TurbulenceRecord {
 }
 
 /// Hours of observation to a goal.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct HoursTo {
     /// To 1 mas.
     #[serde(rename = "1_mas")]
@@ -629,7 +630,7 @@ pub struct HoursTo {
 }
 
 /// What the air's bending did to one sequence.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct RefractionRecord {
     /// Index of the sequence in the session file, from 0.
     pub sequence: usize,
@@ -660,7 +661,7 @@ pub struct RefractionRecord {
 }
 
 /// Why frames were set aside, and how many.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Rejection {
     /// The reason, in words.
     pub reason: String,
@@ -669,7 +670,7 @@ pub struct Rejection {
 }
 
 /// What selection did.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct SelectionRecord {
     /// Frames read.
     pub read: usize,
@@ -697,7 +698,7 @@ pub struct SelectionRecord {
 }
 
 /// One line of the error budget.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct BudgetLine {
     /// What it is.
     pub term: String,
@@ -714,7 +715,7 @@ pub struct BudgetLine {
 }
 
 /// One harmonic of a sequence, air taken out, on the detector.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct HarmonicRecord {
     /// Harmonic number.
     pub m: usize,
@@ -727,7 +728,7 @@ pub struct HarmonicRecord {
 }
 
 /// One sequence of the session.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct SequenceRecord {
     /// Index in the session file, from 0.
     pub sequence: usize,
@@ -763,7 +764,7 @@ pub struct SequenceRecord {
 }
 
 /// A part of the limb that was left out, and why.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct MaskedArc {
     /// Index of the sequence.
     pub sequence: usize,
@@ -778,7 +779,7 @@ pub struct MaskedArc {
 }
 
 /// Something a reader must know.
-#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
 pub struct WarningRecord {
     /// A short code that programs can match.
     pub code: String,
@@ -787,7 +788,7 @@ pub struct WarningRecord {
 }
 
 /// A file that went into the result.
-#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Eq, Serialize, Deserialize, JsonSchema)]
 pub struct SourceFile {
     /// Path as written in the session file.
     pub path: String,
@@ -798,7 +799,7 @@ pub struct SourceFile {
 }
 
 /// Everything in `result.json`.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Record {
     /// Layout of this file.
     pub schema_version: u32,
@@ -849,7 +850,7 @@ pub struct Record {
 }
 
 /// A number of the camera, as the session file and as the drifts have it.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct CameraNumber {
     /// As the session file has it.
     pub nominal: Quantity,
@@ -862,7 +863,7 @@ pub struct CameraNumber {
 }
 
 /// The camera as the Sun's own motion measured it.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct CameraRecord {
     /// Plate scale.
     pub scale: CameraNumber,
@@ -871,7 +872,7 @@ pub struct CameraRecord {
 }
 
 /// Where a drifting disk stood against an even scale, over a part of its way.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct DistortionPoint {
     /// Distance along the way from the detector's middle, px.
     pub along_px: f64,
@@ -888,7 +889,7 @@ pub struct DistortionPoint {
 }
 
 /// One whole disk of a drift.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct DriftPoint {
     /// Distance along the way from the detector's middle, px.
     pub along_px: f64,
@@ -899,7 +900,7 @@ pub struct DriftPoint {
 }
 
 /// One drift: scale and angle from the centres in time.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct DriftRecord {
     /// Index of the sequence.
     pub sequence: usize,
@@ -934,7 +935,7 @@ pub struct DriftRecord {
 }
 
 /// One transit of a scan.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct TransitRecord {
     /// Plane of the scan.
     pub transit: usize,
@@ -949,7 +950,7 @@ pub struct TransitRecord {
 }
 
 /// One scan.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct ScanRecord {
     /// Index of the sequence.
     pub sequence: usize,
@@ -976,7 +977,7 @@ pub struct ScanRecord {
 }
 
 /// The shape from the transits of all scans.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct ByScan {
     /// Radius at 1 AU.
     pub radius: ShapeQuantity,
@@ -1000,7 +1001,7 @@ pub struct ByScan {
 }
 
 /// One frame of the session, for the tables and the figures.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct FrameTrace {
     /// Index of the sequence.
     pub sequence: usize,
@@ -1012,7 +1013,9 @@ pub struct FrameTrace {
     pub kept: bool,
     /// Weight in the fit relative to the mean.
     pub weight: f64,
-    /// Fried's parameter at 500 nm towards the Sun, from the width of this frame's limb, m.
+    /// Fried's parameter at 500 nm towards the Sun, from the width of this frame's limb, m; not a
+    /// number, in a file null, where the width cannot tell.
+    #[serde(deserialize_with = "number_or_gap")]
     pub r0_blur_m: f64,
     /// Radius minus the session's mean, mas at 1 AU.
     pub radius_mas: f64,
@@ -1030,7 +1033,7 @@ pub struct FrameTrace {
 }
 
 /// The mean limb about the fitted circle, for the figure.
-#[derive(Clone, Debug, PartialEq, Serialize, Deserialize)]
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct LimbTrace {
     /// Position angle from celestial north through east, degrees.
     pub position_angle_deg: Vec<f64>,
@@ -1046,8 +1049,13 @@ pub struct LimbTrace {
     pub zenith_deg: f64,
 }
 
-/// What the figures show beyond the record.
-#[derive(Clone, Debug, PartialEq)]
+/// A number; not a number where the file has null.
+fn number_or_gap<'de, D: Deserializer<'de>>(from: D) -> Result<f64, D::Error> {
+    Ok(Option::<f64>::deserialize(from)?.unwrap_or(f64::NAN))
+}
+
+/// What the figures show beyond the record; all but the preview stands in `traces.json`.
+#[derive(Clone, Debug, PartialEq, Serialize, Deserialize, JsonSchema)]
 pub struct Traces {
     /// Every measured frame.
     pub frames: Vec<FrameTrace>,
@@ -1055,6 +1063,7 @@ pub struct Traces {
     pub limb: LimbTrace,
     /// The stack reduced to at most 512 pixels a side, `[y, x]` with row 0 the southern edge and
     /// solar west to the right, in units of disk centre.
+    #[serde(skip)]
     pub preview: Option<ndarray::Array2<f32>>,
     /// Radius of the disk in the preview, pixels.
     pub preview_radius_px: f64,

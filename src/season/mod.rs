@@ -199,7 +199,7 @@ fn entry(record: &Record, settings: &Settings) -> Result<SessionEntry, SeasonErr
         time_utc: record.time_utc.clone(),
         epoch_year,
         program_version: record.program_version.clone(),
-        input_sha256: crate::frames::sha256_of_text(&files.join("\n")),
+        input_sha256: crate::frames::sha256_of(files.join("\n").as_bytes()),
         covariate: match &settings.covariate {
             Some(it) => Some(it.at(epoch_year)?),
             None => None,

@@ -19,6 +19,7 @@ use std::path::Path;
 
 mod build;
 mod document;
+mod draft;
 mod environment;
 mod facts;
 mod fault;
@@ -42,6 +43,7 @@ pub mod weather;
 #[cfg(test)]
 mod tests;
 
+pub use draft::{Draft, DraftSequence, Sought, draft, sought};
 pub use environment::Environment;
 pub use facts::{
     Calibration, Camera, Filter, Instrument, Kind, LimbSettings, MaskImage, Moment, Projection,

@@ -131,6 +131,10 @@ pub fn blocks(observations: &[Observation]) -> (Vec<Block>, Correlation) {
 /// The variance over the scatter about the mean of `n` frames when that mean itself scatters by
 /// `inflation` times what independent frames would give; 2 at most.
 fn about_mean(n: usize, inflation: f64) -> f64 {
+    if n < 2 {
+        // Its variance is its noise: there is no mean that was taken out.
+        return 1.0;
+    }
     let n = n as f64;
     let left = (n - inflation) / (n - 1.0);
     if left > 0.5 { 1.0 / left } else { 2.0 }

@@ -1,6 +1,7 @@
 //! What can be typed.
 
-use clap::{Args, Parser, Subcommand};
+use clap::{Args, Parser, Subcommand, ValueEnum};
+use std::num::NonZeroUsize;
 use std::path::PathBuf;
 
 /// From solar-disk frames taken through the air to the true shape of the limb.
@@ -11,11 +12,14 @@ pub(crate) struct Arguments {
     #[command(subcommand)]
     pub(crate) command: Command,
     /// Say nothing but results and errors.
-    #[arg(short, long, global = true)]
+    #[arg(short, long, global = true, conflicts_with = "verbose")]
     pub(crate) quiet: bool,
+    /// Say more: what was assumed, what came from the headers, how long each stage took.
+    #[arg(short, long, global = true)]
+    pub(crate) verbose: bool,
     /// Worker threads; all cores by default. The result is the same for any number.
     #[arg(long, global = true, value_name = "N")]
-    pub(crate) threads: Option<usize>,
+    pub(crate) threads: Option<NonZeroUsize>,
 }
 
 /// The commands.
@@ -60,8 +64,85 @@ pub(crate) enum Command {
         after_help = "Example: truelimb compare result values.csv -o comparison\n\nStart a table of values with: truelimb compare --template > values.csv"
     )]
     Compare(Compare),
-    /// Print the JSON Schema of the session file.
-    Schema,
+    /// Say what is in a folder: sequences, times, headers, and what a session file still needs.
+    #[command(
+        after_help = "Example: truelimb inspect tonight --write session.toml\n\nOnly headers and tables are read. The session file that it starts has every key with its meaning; those that must be filled in are marked NEEDED."
+    )]
+    Inspect(Inspect),
+    /// Draw the report of a result again.
+    #[command(
+        after_help = "Example: truelimb report result\n\nThe same version writes the same bytes as the reduction did."
+    )]
+    Report(Report),
+    /// Print the JSON Schema of the session file or of the result.
+    #[command(after_help = "Example: truelimb schema result > result.schema.json")]
+    Schema(Schema),
+    /// Print completions for a shell.
+    #[command(
+        after_help = "Example: truelimb completions bash > ~/.local/share/bash-completion/completions/truelimb"
+    )]
+    Completions(Completions),
+    /// Print the manual page, or write one for each command.
+    #[command(after_help = "Example: truelimb man | man -l -")]
+    Man(Man),
+}
+
+/// `truelimb inspect`.
+#[derive(Args, Debug)]
+pub(crate) struct Inspect {
+    /// The folder with the frames, or one file.
+    #[arg(value_name = "DIR", default_value = ".")]
+    pub(crate) folder: PathBuf,
+    /// Start a session file; a relative path is taken from DIR, and no file is written over.
+    #[arg(long, value_name = "FILE")]
+    pub(crate) write: Option<PathBuf>,
+    /// Print JSON.
+    #[arg(long)]
+    pub(crate) json: bool,
+}
+
+/// `truelimb report`.
+#[derive(Args, Debug)]
+pub(crate) struct Report {
+    /// The folder of a result.
+    #[arg(value_name = "DIR")]
+    pub(crate) folder: PathBuf,
+    /// Print JSON: the names of the files written.
+    #[arg(long)]
+    pub(crate) json: bool,
+}
+
+/// `truelimb schema`.
+#[derive(Args, Debug)]
+pub(crate) struct Schema {
+    /// Of which file.
+    #[arg(value_name = "WHICH", default_value = "session")]
+    pub(crate) which: Described,
+}
+
+/// Files that have a schema.
+#[derive(Clone, Copy, Debug, ValueEnum)]
+pub(crate) enum Described {
+    /// The session file.
+    Session,
+    /// The file result.json.
+    Result,
+}
+
+/// `truelimb completions`.
+#[derive(Args, Debug)]
+pub(crate) struct Completions {
+    /// The shell.
+    #[arg(value_name = "SHELL")]
+    pub(crate) shell: clap_complete::Shell,
+}
+
+/// `truelimb man`.
+#[derive(Args, Debug)]
+pub(crate) struct Man {
+    /// Write a page for each command into this folder instead; it is made when it is not there.
+    #[arg(short, long, value_name = "DIR")]
+    pub(crate) output: Option<PathBuf>,
 }
 
 /// `truelimb demo`.
@@ -70,6 +151,9 @@ pub(crate) struct Demo {
     /// Folder for session and result; made when it is not there.
     #[arg(short, long, default_value = "demo", value_name = "DIR")]
     pub(crate) output: PathBuf,
+    /// Print result.json on stdout.
+    #[arg(long)]
+    pub(crate) json: bool,
     /// Seed of everything random.
     #[arg(long, default_value_t = 1)]
     pub(crate) seed: u64,
@@ -82,7 +166,14 @@ pub(crate) struct Reduce {
     #[arg(value_name = "SESSION")]
     pub(crate) session: PathBuf,
     /// Folder for the result; made when it is not there.
-    #[arg(short, long, value_name = "DIR")]
+    #[arg(
+        short,
+        long,
+        value_name = "DIR",
+        required = false,
+        required_unless_present = "dry_run",
+        default_value_if("dry_run", "true", "result")
+    )]
     pub(crate) output: PathBuf,
     /// Leave the stack out.
     #[arg(long)]
@@ -98,6 +189,10 @@ pub(crate) struct Reduce {
     /// Print result.json on stdout.
     #[arg(long)]
     pub(crate) json: bool,
+    /// Read and check everything, try one frame of each sequence, say what would be done; write
+    /// nothing.
+    #[arg(long)]
+    pub(crate) dry_run: bool,
     /// Seed of everything random.
     #[arg(long, default_value_t = 1)]
     pub(crate) seed: u64,
@@ -126,6 +221,9 @@ pub(crate) struct Simulate {
     /// Scenario, TOML; every key that it leaves out is the demo's.
     #[arg(value_name = "SCENARIO")]
     pub(crate) scenario: Option<PathBuf>,
+    /// Print JSON: the session file and the truth.
+    #[arg(long)]
+    pub(crate) json: bool,
     /// Seed of everything random.
     #[arg(long, default_value_t = 1)]
     pub(crate) seed: u64,

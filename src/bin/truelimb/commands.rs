@@ -2,6 +2,7 @@
 
 use crate::Ending;
 use crate::arguments::{Demo, Limb, Reduce, Simulate};
+use crate::dry_run;
 use crate::progress::{Bar, say};
 use std::io::Write;
 use std::path::Path;
@@ -35,6 +36,19 @@ impl<E: Into<Error>> From<E> for Failure {
     }
 }
 
+impl Failure {
+    /// What to do, where the sentence does not say it.
+    pub(crate) fn cure(&self) -> Option<&'static str> {
+        match self {
+            Self::Run(it) => match it.as_ref() {
+                Error::Fits(it) => it.cure(),
+                _ => None,
+            },
+            _ => None,
+        }
+    }
+}
+
 /// Prints on stdout; a closed pipe is no failure.
 pub(crate) fn print(text: &str) {
     let _ = writeln!(std::io::stdout().lock(), "{text}");
@@ -51,12 +65,21 @@ pub(crate) fn demo(it: &Demo, quiet: bool) -> Result<Ending, Failure> {
         seed: it.seed,
         stack: true,
     };
-    let outcome = run(&folder.join("session.toml"), &result, &options, quiet)?;
-    print(&summary(&outcome.record));
-    print(&format!(
-        "\nreport: {}",
-        result.join("report.html").display()
-    ));
+    let outcome = run(
+        &folder.join("session.toml"),
+        &result,
+        &options,
+        &Bar::new(quiet),
+    )?;
+    if it.json {
+        print(&json(&outcome.record)?);
+    } else {
+        print(&summary(&outcome.record));
+        print(&format!(
+            "\nreport: {}",
+            result.join("report.html").display()
+        ));
+    }
     if !quiet {
         say(CAUTION);
     }
@@ -64,11 +87,14 @@ pub(crate) fn demo(it: &Demo, quiet: bool) -> Result<Ending, Failure> {
 }
 
 /// `truelimb reduce`.
-pub(crate) fn reduce(it: &Reduce, quiet: bool) -> Result<Ending, Failure> {
+pub(crate) fn reduce(it: &Reduce, quiet: bool, verbose: bool) -> Result<Ending, Failure> {
     let options = Options {
         seed: it.seed,
         stack: !it.no_stack,
     };
+    if it.dry_run {
+        return dry_run::dry_run(it, &options, quiet);
+    }
     let mut session = match &it.limbs {
         None => session::read_with_headers(&it.session, &header_number)?,
         // The frames may be gone; what only their headers said must be in the session file.
@@ -78,7 +104,8 @@ pub(crate) fn reduce(it: &Reduce, quiet: bool) -> Result<Ending, Failure> {
         session.rotation = rotation(name)?;
         session.assumed.retain(|it| it != "gravity.rotation");
     }
-    let outcome = reduced(&session, it.limbs.as_deref(), &it.output, &options, quiet)?;
+    let bar = Bar::new(quiet).verbose(verbose);
+    let outcome = reduced(&session, it.limbs.as_deref(), &it.output, &options, &bar)?;
     if it.json {
         print(&json(&outcome.record)?);
     } else if !quiet {
@@ -98,9 +125,9 @@ fn ending(record: &Record) -> Ending {
     }
 }
 
-fn run(path: &Path, output: &Path, options: &Options, quiet: bool) -> Result<Outcome, Failure> {
+fn run(path: &Path, output: &Path, options: &Options, bar: &Bar) -> Result<Outcome, Failure> {
     let session = session::read_with_headers(path, &header_number)?;
-    reduced(&session, None, output, options, quiet)
+    reduced(&session, None, output, options, bar)
 }
 
 fn reduced(
@@ -108,12 +135,19 @@ fn reduced(
     limbs: Option<&Path>,
     output: &Path,
     options: &Options,
-    quiet: bool,
+    bar: &Bar,
 ) -> Result<Outcome, Failure> {
-    let bar = Bar::new(quiet);
+    for (what, keys) in [
+        ("default taken", &session.assumed),
+        ("from the headers", &session.from_headers),
+    ] {
+        if !keys.is_empty() {
+            bar.detail(&format!("{what}: {}", keys.join(", ")));
+        }
+    }
     let outcome = match limbs {
-        None => pipeline::reduce(session, options, &bar),
-        Some(limbs) => pipeline::refit(session, limbs, options, &bar),
+        None => pipeline::reduce(session, options, bar),
+        Some(limbs) => pipeline::refit(session, limbs, options, bar),
     };
     bar.finish();
     let outcome = outcome?;
@@ -180,10 +214,18 @@ fn summary(record: &Record) -> String {
             ),
         ),
     ];
+    if !record.warnings.is_empty() {
+        out.push(format!("{}:", counted(record.warnings.len(), "warning")));
+    }
     for it in &record.warnings {
         out.push(format!("warning: {}", it.text));
     }
     out.join("\n")
+}
+
+/// A number of things in words.
+pub(crate) fn counted(count: usize, thing: &str) -> String {
+    format!("{count} {thing}{}", if count == 1 { "" } else { "s" })
 }
 
 fn shape_line(name: &str, it: &ShapeQuantity, digits: usize) -> String {
@@ -215,11 +257,21 @@ pub(crate) fn simulate(it: &Simulate, quiet: bool) -> Result<Ending, Failure> {
             let text = std::fs::read_to_string(path).map_err(|it| {
                 Failure::Usage(format!("{}: could not be read: {it}", path.display()))
             })?;
-            synth::read_scenario(&text).map_err(Failure::Synth)?
+            synth::read_scenario(&text)
+                .map_err(|it| Failure::Usage(format!("{}: {it}", path.display())))?
         }
     };
     make(&scenario, it.seed, &it.output, quiet)?;
-    print(&it.output.join("session.toml").display().to_string());
+    let path = it.output.join("session.toml");
+    if it.json {
+        print(&json(&serde_json::json!({
+            "session": path,
+            "truth": it.output.join("truth.json"),
+            "seed": it.seed,
+        }))?);
+    } else {
+        print(&path.display().to_string());
+    }
     Ok(Ending::Done)
 }
 
@@ -296,10 +348,4 @@ fn definition(text: &str) -> Result<Definition, Failure> {
             .ok_or_else(refused),
         _ => Err(refused()),
     }
-}
-
-/// `truelimb schema`.
-pub(crate) fn schema() -> Result<Ending, Failure> {
-    print(&json(&session::schema())?);
-    Ok(Ending::Done)
 }

@@ -4,10 +4,15 @@ mod arguments;
 mod combine;
 mod commands;
 mod compare;
+mod dry_run;
+mod inspect;
 mod progress;
 mod recover;
 mod refraction;
+mod report;
+mod schema;
 mod seeing;
+mod shell;
 
 use arguments::{Arguments, Command};
 use clap::Parser;
@@ -27,13 +32,14 @@ fn main() -> ExitCode {
     if let Some(threads) = arguments.threads {
         // Set once, before any work; a second pool is never made.
         let _ = rayon::ThreadPoolBuilder::new()
-            .num_threads(threads)
+            .num_threads(threads.get())
             .build_global();
     }
     let quiet = arguments.quiet;
+    let verbose = arguments.verbose;
     let ended = match arguments.command {
         Command::Demo(it) => commands::demo(&it, quiet),
-        Command::Reduce(it) => commands::reduce(&it, quiet),
+        Command::Reduce(it) => commands::reduce(&it, quiet, verbose),
         Command::Seeing(it) => seeing::seeing(&it, quiet),
         Command::Combine(it) => combine::combine(&it, quiet),
         Command::Recover(it) => recover::recover(&it, quiet),
@@ -41,13 +47,17 @@ fn main() -> ExitCode {
         Command::Limb(it) => commands::limb(&it),
         Command::Refraction(it) => refraction::refraction(&it, quiet),
         Command::Compare(it) => compare::compare(&it),
-        Command::Schema => commands::schema(),
+        Command::Inspect(it) => inspect::inspect(&it, quiet),
+        Command::Report(it) => report::report(&it),
+        Command::Schema(it) => schema::schema(&it),
+        Command::Completions(it) => Ok(shell::completions(&it)),
+        Command::Man(it) => shell::man(&it),
     };
     match ended {
         Ok(Ending::Done) => ExitCode::SUCCESS,
         Ok(Ending::Refused) => ExitCode::from(3),
         Err(it) => {
-            progress::say(&format!("error: {it}"));
+            progress::fail(&it.to_string(), it.cure());
             ExitCode::from(status(&it))
         }
     }

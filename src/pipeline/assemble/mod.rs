@@ -8,7 +8,7 @@ mod sequences;
 mod selection;
 mod ruler;
 mod warnings;
-mod traces;
+pub(super) mod traces;
 
 use super::correct::CorrectedSequence;
 use super::limb_model::LimbModel;

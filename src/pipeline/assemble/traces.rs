@@ -125,22 +125,37 @@ fn limb_trace(p: &Parts<'_>) -> LimbTrace {
     out
 }
 
+/// The stack as the page shows it, and the radius of its disk, px.
+fn preview(stack: &Stack, first: &MeasuredSequence) -> (Option<Array2<f32>>, f64) {
+    let image = stack.image.mapv(|it| it as f32);
+    let radius_arcsec = REFERENCE_RADIUS_MAS / 1000.0 / first.middle.sun.distance_au;
+    let radius_px = radius_arcsec / stack.scale_arcsec_px / reduction(stack.size()) as f64;
+    (Some(reduced(&image)), radius_px)
+}
+
 /// Largest side of the preview, px.
 const PREVIEW_PX: usize = 512;
 
-/// The stack reduced by whole pixels, row 0 the southern edge, disk centre one.
-fn preview(stack: &Stack, first: &MeasuredSequence) -> (Option<Array2<f32>>, f64) {
-    let n = stack.size();
-    let by = n.div_ceil(PREVIEW_PX);
+/// By how many pixels each way a stack of that side is reduced.
+fn reduction(side_px: usize) -> usize {
+    side_px.div_ceil(PREVIEW_PX)
+}
+
+/// The image of `stack.fits` reduced by whole pixels, row 0 the southern edge, disk centre one.
+pub(in crate::pipeline) fn reduced(image: &Array2<f32>) -> Array2<f32> {
+    let n = image.nrows();
+    let by = reduction(n);
     let side = n / by;
-    let centre = stack.image[[n / 2, n / 2]];
-    let out = Array2::from_shape_fn((side, side), |(row, column)| {
+    let centre = f64::from(image[[n / 2, n / 2]]);
+    Array2::from_shape_fn((side, side), |(row, column)| {
         let y0 = row * by;
         let x0 = column * by;
-        let block = stack.image.slice(ndarray::s![y0..y0 + by, x0..x0 + by]);
-        let mean = block.iter().filter(|it| it.is_finite()).sum::<f64>() / (by * by) as f64;
-        (mean / centre) as f32
-    });
-    let radius_arcsec = REFERENCE_RADIUS_MAS / 1000.0 / first.middle.sun.distance_au;
-    (Some(out), radius_arcsec / stack.scale_arcsec_px / by as f64)
+        let block = image.slice(ndarray::s![y0..y0 + by, x0..x0 + by]);
+        let sum: f64 = block
+            .iter()
+            .filter(|it| it.is_finite())
+            .map(|&it| f64::from(it))
+            .sum();
+        (sum / (by * by) as f64 / centre) as f32
+    })
 }

@@ -6,6 +6,7 @@ mod reading;
 mod drift;
 mod scan;
 mod slit;
+mod rehearsal;
 
 use super::axis_blur::{self, AxisBlur};
 use super::limb_table::Given;
@@ -26,6 +27,7 @@ use sky::{Sky, interpolated};
 use std::sync::{Arc, Mutex, PoisonError};
 
 pub use drift::{MeasuredDrift, measure_drift};
+pub use rehearsal::{Rehearsal, rehearse};
 pub use scan::{MeasuredScan, MeasuredTransit, measure_scan};
 pub use setup::Setup;
 pub(super) use setup::{limb_optics, predicted};

@@ -52,14 +52,14 @@ fn strongest(covariance: &Covariance) -> Option<(usize, usize, f64)> {
 
 fn table(covariance: &Covariance) -> String {
     let mut columns = vec![Column::Text("Term"), Column::Text("Unit")];
-    columns.extend(covariance.terms.iter().map(|_| Column::Number("")));
+    columns.extend((1..=covariance.terms.len()).map(Column::OfRow));
     let mut table = Table::new(
-        "Covariance of the fitted terms, in products of their units; columns in the order of rows",
+        "Covariance of the fitted terms, in products of their units; columns by the number of the term",
         &columns,
     );
     for (place, term) in covariance.terms.iter().enumerate() {
         let mut row = vec![
-            term.clone(),
+            format!("{}  {term}", place + 1),
             covariance.units.get(place).cloned().unwrap_or_default(),
         ];
         let values = covariance.matrix.get(place).map_or(&[][..], Vec::as_slice);

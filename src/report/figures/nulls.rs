@@ -40,7 +40,7 @@ fn pull(test: &NullTest) -> Option<f64> {
 
 fn table(tests: &[NullTest]) -> String {
     let mut table = Table::new(
-        "Null tests",
+        "What is zero for the Sun, with its error",
         &[
             Column::Text("Test"),
             Column::Number("Value"),
