@@ -1,3 +1,5 @@
+//! The fit of a drift on made paths with known noise, and on what is wrong.
+
 use super::super::distortion::DISTORTION_BINS;
 use super::*;
 use crate::refraction::Plate;

@@ -1,3 +1,5 @@
+//! The fit of transits: its columns on a moved circle, and its errors on made sessions.
+
 use super::*;
 use rand::SeedableRng;
 use rand_chacha::ChaCha12Rng;
