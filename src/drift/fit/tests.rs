@@ -1,4 +1,4 @@
-//! Tests of the fit to a drift.
+//! The fit of a drift on made paths with known noise, and on what is wrong.
 
 use super::super::distortion::DISTORTION_BINS;
 use super::*;

@@ -1,4 +1,4 @@
-//! Tests of the fit to transits.
+//! The fit of transits: its columns on a moved circle, and its errors on made sessions.
 
 use super::*;
 use rand::SeedableRng;
