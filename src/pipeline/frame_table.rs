@@ -20,8 +20,11 @@ pub(super) fn columns(frames: &[FrameTrace]) -> Vec<Column> {
     };
     let mut out = vec![
         Column::new("SEQUENCE", whole(&|it| it.sequence))
-            .describe("index in the session file, from 0"),
-        Column::new("FRAME", whole(&|it| it.frame)).describe("index in the sequence, from 0"),
+            .describe("index in the session file, from 0")
+            .ucd("meta.id"),
+        Column::new("FRAME", whole(&|it| it.frame))
+            .describe("index in the sequence, from 0")
+            .ucd("meta.id"),
         Column::new("TIME", of(&|it| it.time_s))
             .unit("s")
             .describe("mid-exposure after DATEREF")
@@ -30,24 +33,30 @@ pub(super) fn columns(frames: &[FrameTrace]) -> Vec<Column> {
             "KEPT",
             Values::U8(frames.iter().map(|it| u8::from(it.kept)).collect()),
         )
-        .describe("1 where it went to the fit"),
-        Column::new("WEIGHT", of(&|it| it.weight)).describe("weight from the seeing"),
+        .describe("1 where it went to the fit")
+        .ucd("meta.code"),
+        Column::new("WEIGHT", of(&|it| it.weight))
+            .describe("weight from the seeing")
+            .ucd("stat.weight"),
         Column::new("NORTH", of(&|it| it.north_deg))
             .unit("deg")
-            .describe("detector angle of celestial north"),
+            .describe("detector angle of celestial north")
+            .ucd("pos.posAng;instr.det"),
     ];
     for (c, name) in HARMONICS.iter().enumerate() {
         out.push(
             Column::new(name, of(&|it| it.harmonics_mas[c]))
                 .unit("mas")
-                .describe("of the limb at 1 AU, air taken out, on the detector"),
+                .describe("of the limb at 1 AU, air taken out, on the detector")
+                .ucd("phys.angSize"),
         );
     }
     for (q, (front, what)) in ON.iter().enumerate() {
         for (c, name) in HARMONICS.iter().enumerate() {
             out.push(
                 Column::new(&format!("{front}_{name}"), of(&|it| it.influence[q][c]))
-                    .describe(&format!("what 1 mas of {name} adds to {what}, mas")),
+                    .describe(&format!("what 1 mas of {name} adds to {what}, mas"))
+                    .ucd("stat.param"),
             );
         }
     }

@@ -160,15 +160,19 @@ fn limbs(outcome: &Outcome, reference: Utc) -> Vec<Column> {
     let [flag, own] = flags;
     vec![
         Column::new("SEQUENCE", Values::I32(sequence))
-            .describe("index in the session file, from 0"),
-        Column::new("FRAME", Values::I32(frame)).describe("index in the sequence, from 0"),
+            .describe("index in the session file, from 0")
+            .ucd("meta.id"),
+        Column::new("FRAME", Values::I32(frame))
+            .describe("index in the sequence, from 0")
+            .ucd("meta.id"),
         Column::new("TIME", Values::F64(time))
             .unit("s")
             .describe("mid-exposure after DATEREF")
             .ucd("time.epoch"),
         Column::new("THETA", Values::F64(theta))
             .unit("deg")
-            .describe("detector angle from +x towards +y"),
+            .describe("detector angle from +x towards +y")
+            .ucd("pos.posAng;instr.det"),
         Column::new("POSANG", Values::F64(position))
             .unit("deg")
             .describe("position angle from celestial north through east")
@@ -183,29 +187,37 @@ fn limbs(outcome: &Outcome, reference: Utc) -> Vec<Column> {
             .ucd("stat.error;phys.angSize"),
         Column::new("SEEN", Values::F64(seen))
             .unit("arcsec")
-            .describe("apparent radius on the plate scale"),
+            .describe("apparent radius on the plate scale")
+            .ucd("phys.angSize;instr.det"),
         Column::new("SEENSIG", Values::F64(seen_sigma))
             .unit("arcsec")
-            .describe("photon and read noise of SEEN"),
+            .describe("photon and read noise of SEEN")
+            .ucd("stat.error;phys.angSize"),
         Column::new("BLUR", Values::F32(blur))
             .unit("arcsec")
-            .describe("lambda / r0 from the width of the limb"),
+            .describe("lambda / r0 from the width of the limb")
+            .ucd("instr.obsty.seeing"),
         Column::new("BLURJ", Values::F64(j))
             .unit("arcsec(5/3)")
-            .describe("BLUR to the power 5/3 as fitted"),
+            .describe("BLUR to the power 5/3 as fitted")
+            .ucd("instr.obsty.seeing"),
         Column::new("BLURJSIG", Values::F64(j_sigma))
             .unit("arcsec(5/3)")
-            .describe("standard uncertainty of BLURJ"),
+            .describe("standard uncertainty of BLURJ")
+            .ucd("stat.error;instr.obsty.seeing"),
         Column::new("GAIN", Values::F64(gain))
             .unit("adu")
-            .describe("brightness of disk centre by this sector"),
+            .describe("brightness of disk centre by this sector")
+            .ucd("phot.count"),
         Column::new("MISFIT", Values::F64(misfit))
-            .describe("mean square misfit over its expectation"),
+            .describe("mean square misfit over its expectation")
+            .ucd("stat.fit.chi2"),
         Column::new("FLAG", Values::U8(flag))
             .describe("0 good, 1 incomplete or masked, 2 misfit")
             .ucd("meta.code.qual"),
         Column::new("OWNFLAG", Values::U8(own))
-            .describe("the same before the sequence was looked at as a whole"),
+            .describe("the same before the sequence was looked at as a whole")
+            .ucd("meta.code.qual"),
     ]
 }
 
@@ -217,35 +229,47 @@ fn sequences(outcome: &Outcome, reference: Utc) -> Vec<Column> {
         Values::I32(outcome.measured.iter().map(|it| f(it) as i32).collect())
     };
     vec![
-        Column::new("SEQUENCE", whole(&|it| it.index)).describe("index in the session file"),
-        Column::new("FRAMES", whole(&|it| it.list.frames.len())).describe("frames read"),
+        Column::new("SEQUENCE", whole(&|it| it.index))
+            .describe("index in the session file")
+            .ucd("meta.id"),
+        Column::new("FRAMES", whole(&|it| it.list.frames.len()))
+            .describe("frames read")
+            .ucd("meta.number"),
         Column::new("START", of(&|it| it.span_utc.0.minus(reference)))
             .unit("s")
-            .describe("mid-exposure of the first frame after DATEREF"),
+            .describe("mid-exposure of the first frame after DATEREF")
+            .ucd("time.start"),
         Column::new("STOP", of(&|it| it.span_utc.1.minus(reference)))
             .unit("s")
-            .describe("mid-exposure of the last frame after DATEREF"),
+            .describe("mid-exposure of the last frame after DATEREF")
+            .ucd("time.end"),
         Column::new("XPOSURE", of(&|it| it.exposure_s))
             .unit("s")
-            .describe("exposure; 0 where it is not known"),
+            .describe("exposure; 0 where it is not known")
+            .ucd("time.duration;obs.exposure"),
         Column::new("SCALE", of(&|it| it.setup.scale_arcsec_px))
             .unit("arcsec/pix")
-            .describe("plate scale of SEEN"),
+            .describe("plate scale of SEEN")
+            .ucd("instr.scale"),
         Column::new("WAVELEN", of(&|it| it.setup.optics.wavelength_nm))
             .unit("nm")
-            .describe("wavelength of the template"),
+            .describe("wavelength of the template")
+            .ucd("em.wl"),
         Column::new(
             "TAN",
             whole(&|it| usize::from(it.setup.plate.projection == Projection::Tan)),
         )
-        .describe("1: flat detector, 0: angle proportional to pixels"),
+        .describe("1: flat detector, 0: angle proportional to pixels")
+        .ucd("meta.code"),
         Column::new(
             "SKYSCALE",
             whole(&|it| usize::from(it.setup.plate.scale_of == ScaleOf::Sky)),
         )
-        .describe("1: scale found on stars through the air, 0: of the direction as it arrives"),
+        .describe("1: scale found on stars through the air, 0: of the direction as it arrives")
+        .ucd("meta.code"),
         Column::new("FLAT", whole(&|it| usize::from(it.has_flat)))
-            .describe("1: a flat field was divided out"),
+            .describe("1: a flat field was divided out")
+            .ucd("meta.code"),
     ]
 }
 
@@ -266,10 +290,16 @@ fn lost(outcome: &Outcome) -> [Column; 3] {
     }
     let [sequence, frame, reason] = columns;
     [
-        Column::new("SEQUENCE", Values::I32(sequence)).describe("index in the session file"),
-        Column::new("FRAME", Values::I32(frame)).describe("index in the sequence; -1: a file"),
-        Column::new("REASON", Values::I32(reason)).describe(
-            "0 not opened 1 not read 2 no disk 3 cut 4 radius 5 small 6 gaps 7 centre 8 other",
-        ),
+        Column::new("SEQUENCE", Values::I32(sequence))
+            .describe("index in the session file")
+            .ucd("meta.id"),
+        Column::new("FRAME", Values::I32(frame))
+            .describe("index in the sequence; -1: a file")
+            .ucd("meta.id"),
+        Column::new("REASON", Values::I32(reason))
+            .describe(
+                "0 not opened 1 not read 2 no disk 3 cut 4 radius 5 small 6 gaps 7 centre 8 other",
+            )
+            .ucd("meta.code.error"),
     ]
 }
