@@ -73,7 +73,7 @@ pub(crate) enum Column {
 }
 
 /// Columns up to which a table is set like the text; with more, paper needs smaller type.
-const NARROW_COLUMNS: usize = 9;
+const NARROW_COLUMNS: usize = 7;
 
 /// Columns up to which a table fits on paper.
 const PRINTED_COLUMNS: usize = 14;
@@ -110,19 +110,19 @@ impl Table {
     pub(crate) fn html(&self) -> String {
         let mut out = String::new();
         let caption = escape(&self.caption);
+        let shown: Vec<usize> = (0..self.columns.len())
+            .filter(|&at| self.is_shown(at))
+            .collect();
         let _ = writeln!(
             out,
             "<div class=\"{}\" role=\"region\" tabindex=\"0\" aria-label=\"{caption}\"><table>\
              <caption>{caption}</caption>\n<thead><tr>",
-            if self.columns.len() > NARROW_COLUMNS {
+            if shown.len() > NARROW_COLUMNS {
                 "scroll wide-table"
             } else {
                 "scroll"
             }
         );
-        let shown: Vec<usize> = (0..self.columns.len())
-            .filter(|&at| self.is_shown(at))
-            .collect();
         for &at in &shown {
             let (class, name) = match self.columns[at] {
                 Column::Text(name) => ("", escape(name)),

@@ -64,8 +64,14 @@ fn key_numbers(record: &Record) -> [Key; 6] {
 
 fn shape_key(name: &str, quantity: &ShapeQuantity, limit: Option<&str>) -> Key {
     let Some(value) = numbers::shape(quantity) else {
-        let reason = quantity.reason.clone().unwrap_or_default();
-        return (name.to_owned(), "not separated".to_owned(), vec![reason]);
+        // What to do about it stands in the first sentence of the page.
+        let reason = quantity.reason.as_deref().unwrap_or_default();
+        let why = reason.split(". ").next().unwrap_or_default();
+        return (
+            name.to_owned(),
+            "not separated".to_owned(),
+            vec![why.to_owned()],
+        );
     };
     let mut notes = Vec::new();
     for (share, interval) in [("68", quantity.interval_68), ("95", quantity.interval_95)] {

@@ -152,12 +152,27 @@ fn not_separated(record: &Record) -> String {
     )
 }
 
-/// A reason as a clause, without its full stop.
+/// A reason as a clause: its sentences made one, without the full stop.
 fn clause(reason: Option<&str>) -> String {
-    match reason.map(|text| text.trim().trim_end_matches('.')) {
-        None | Some("") => String::new(),
-        Some(text) => format!(": {text}"),
+    let Some(text) = reason.map(|text| text.trim().trim_end_matches('.')) else {
+        return String::new();
+    };
+    if text.is_empty() {
+        return String::new();
     }
+    let mut out = String::from(": ");
+    for (index, part) in text.split(". ").enumerate() {
+        let mut letters = part.chars();
+        match (index, letters.next()) {
+            (0, _) | (_, None) => out.push_str(part),
+            (_, Some(first)) => {
+                out.push_str("; ");
+                out.extend(first.to_lowercase());
+                out.push_str(letters.as_str());
+            }
+        }
+    }
+    out
 }
 
 /// What a session without an oblateness still gives.

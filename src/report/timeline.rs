@@ -140,7 +140,13 @@ impl Timeline {
                     canvas.line((x, y_px), (x, y_px + 4.0), "fine");
                     if x - 30.0 > free_from_px {
                         let text = clock(time_s, step_s < 60.0);
-                        canvas.text((x, y_px + 17.0), Anchor::Middle, "tick", &text);
+                        // The last label must not run over the edge of the picture.
+                        let (at, anchor) = if x + 26.0 > panel.right_px {
+                            (panel.right_px, Anchor::End)
+                        } else {
+                            (x, Anchor::Middle)
+                        };
+                        canvas.text((at, y_px + 17.0), anchor, "tick", &text);
                         free_from_px = x + 30.0;
                     }
                     time_s += step_s;

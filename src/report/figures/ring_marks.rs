@@ -21,11 +21,18 @@ pub(super) fn draw_rings(canvas: &mut Canvas, ring: &Ring, step_mas: f64, reach_
     }
 }
 
-/// Labels on the rings, over everything else.
+/// Rings closer than this, px, would have their labels run into each other.
+const LABEL_PX: f64 = 22.0;
+
+/// Labels on the rings, over everything else: the outer ones and zero where all find no room.
 pub(super) fn draw_scale(canvas: &mut Canvas, ring: &Ring, step_mas: f64, reach_mas: f64) {
     let places = (reach_mas / step_mas + 1e-9).floor() as i64;
     let decimals = (-step_mas.log10().floor()).max(0.0) as i32;
+    let crowded = step_mas * ring.px_per_mas < LABEL_PX;
     for place in -places..=places {
+        if crowded && place != 0 && place.abs() != places {
+            continue;
+        }
         let value_mas = place as f64 * step_mas;
         let (x, y) = ring.at(SCALE_DEG, ring.zero_px + value_mas * ring.px_per_mas);
         let sign = if place > 0 { "+" } else { "" };

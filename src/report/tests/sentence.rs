@@ -65,6 +65,19 @@ fn the_sentence_says_why_nothing_was_separated() {
 }
 
 #[test]
+fn a_reason_of_two_sentences_still_makes_one() {
+    let (mut record, _) = session(Session::Refused);
+    record.shape.oblateness.reason =
+        Some("The axis turned by 0.5 degrees only. Turn the camera, as told.".to_owned());
+    let sentence = summary_sentence(&record);
+    assert!(
+        sentence.contains("by 0.5 degrees only; turn the camera, as told; this session"),
+        "{sentence}"
+    );
+    assert!(!sentence.trim_end_matches('.').contains(". "), "{sentence}");
+}
+
+#[test]
 fn the_scale_is_named_only_where_it_limits_the_radius() {
     let (mut record, _) = session(Session::Season);
     assert!(summary_sentence(&record).contains("limited by the plate scale"));
