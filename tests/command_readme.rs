@@ -2,7 +2,7 @@
 //! own, and holds the guide to what the program says.
 //!
 //! In that folder lie the small session of an independent model and one of its frames as
-//! `sun.fits`, so that every example has something to work on.
+//! `sun.fits`, and the values of the demo, so that every example has something to work on.
 
 use std::fs;
 use std::path::Path;
@@ -55,6 +55,8 @@ fn folder() -> tempfile::TempDir {
         fs::copy(&path, folder.path().join(path.file_name().unwrap())).unwrap();
     }
     fs::copy(from.join("burst_000.fits"), folder.path().join("sun.fits")).unwrap();
+    let values = Path::new(env!("CARGO_MANIFEST_DIR")).join("demo-data/values.csv");
+    fs::copy(values, folder.path().join("values.csv")).unwrap();
     folder
 }
 
