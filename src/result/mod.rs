@@ -4,4 +4,5 @@ pub mod air;
 pub mod comparison;
 pub mod combined;
 pub mod record;
+pub mod plan;
 pub mod recovery;

@@ -4,6 +4,7 @@ mod arguments;
 mod combine;
 mod commands;
 mod compare;
+mod plan;
 mod progress;
 mod recover;
 mod refraction;
@@ -41,6 +42,7 @@ fn main() -> ExitCode {
         Command::Limb(it) => commands::limb(&it),
         Command::Refraction(it) => refraction::refraction(&it, quiet),
         Command::Compare(it) => compare::compare(&it),
+        Command::Plan(it) => plan::plan(&it, quiet),
         Command::Schema => commands::schema(),
     };
     match ended {
@@ -56,7 +58,7 @@ fn main() -> ExitCode {
 /// Exit status: 2 for input that cannot be used, 1 for what failed otherwise.
 fn status(error: &commands::Failure) -> u8 {
     match error {
-        commands::Failure::Usage(_) => 2,
+        commands::Failure::Usage(_) | commands::Failure::Plan(_) => 2,
         commands::Failure::Synth(_) => 1,
         commands::Failure::Recover(it) => match it.as_ref() {
             truelimb::recover::RecoverError::Folder { .. } => 1,
