@@ -22,6 +22,7 @@
 //! | season | [`season::combine`] | records of many sessions | [`result::combined::Combined`] |
 //! | report | [`report::render`] | [`result::record::Record`] | HTML and SVG |
 //! | recovery | [`recover::recover`] | a session, known shapes | [`result::recovery::Recovery`] |
+//! | plan | [`plan::plan`] | a session, a date | [`result::plan::Plan`] |
 //! | the whole | [`pipeline::reduce`] | [`session::Session`] | [`pipeline::Outcome`] |
 //!
 //! Each frame is read once for its limb, and the kept ones once more for the stack; memory does not
@@ -93,6 +94,7 @@ pub mod season;
 pub mod report;
 
 pub mod pipeline;
+pub mod plan;
 pub mod synth;
 pub mod recover;
 

@@ -9,6 +9,7 @@ use crate::limb::LimbError;
 use crate::optics::OpticsError;
 use crate::report::ReportError;
 use crate::scan::ScanError;
+use crate::seeing::SeeingError;
 use crate::session::SessionError;
 use crate::session::weather::WeatherError;
 use crate::shape::ShapeError;
@@ -46,6 +47,9 @@ pub enum Error {
     /// No limb.
     #[error("limb: {0}")]
     Limb(#[from] LimbError),
+    /// The seeing has no answer.
+    #[error("seeing: {0}")]
+    Seeing(#[from] SeeingError),
     /// No shape.
     #[error("shape: {0}")]
     Shape(#[from] ShapeError),

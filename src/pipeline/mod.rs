@@ -1,5 +1,6 @@
 //! The main job: the stages in order, each called once.
 
+pub(crate) mod ahead;
 pub mod air;
 mod assemble;
 pub mod axis_blur;

@@ -15,6 +15,7 @@ mod html;
 mod keys;
 mod numbers;
 mod page;
+mod plan;
 mod preview;
 #[cfg(test)]
 mod sample;
@@ -32,6 +33,7 @@ pub use combined::render_combined;
 pub use comparison::{
     ComparisonSection, render_comparison, section_of_comparison, sentences_of_comparison,
 };
+pub use plan::render_plan;
 pub use summary::summary_sentence;
 
 /// Why no report could be drawn.

@@ -4,6 +4,7 @@ pub mod air;
 pub mod comparison;
 pub mod combined;
 pub mod record;
+pub mod plan;
 pub mod recovery;
 mod schema;
 

@@ -20,6 +20,8 @@ pub struct Separability {
     pub unknowns: usize,
     /// Its singular values, largest first.
     pub singular_values: Vec<f64>,
+    /// Condition number of Sun and instrument alone; none where one of their directions is not measured.
+    pub sun_condition_number: Option<f64>,
     /// Whether the oblateness is separated from the instrument.
     pub oblateness: bool,
     /// Whether `R c4` is.
@@ -58,6 +60,8 @@ pub fn judge(
             .sum::<f64>()
             > TOUCHED
     };
+    let own = sun.singular_values();
+    let (widest, narrowest) = (own.max(), own.min());
     let mut singular_values: Vec<f64> = all.singular_values().iter().copied().collect();
     singular_values.sort_by(|a, b| b.total_cmp(a));
     let largest = singular_values.first().copied().unwrap_or(0.0);
@@ -69,6 +73,8 @@ pub fn judge(
         rank,
         unknowns: singular_values.len(),
         singular_values,
+        sun_condition_number: (narrowest >= SMALLEST_SHARE * widest && narrowest > 0.0)
+            .then(|| widest / narrowest),
         oblateness: distortion_known || !touched(1),
         p4: distortion_known || !touched(2),
         turned_deg: turned_deg(observations),

@@ -64,6 +64,11 @@ pub(crate) enum Command {
         after_help = "Example: truelimb compare result values.csv -o comparison\n\nStart a table of values with: truelimb compare --template > values.csv"
     )]
     Compare(Compare),
+    /// A day before it begins: when to observe, how to turn the instrument, what error to expect.
+    #[command(
+        after_help = "Example: truelimb plan session.toml --date 2026-06-21 --r0-m 0.07 --hours 3 -o plan\n\nThe session file needs no frames yet, nor any [[sequence]].\n\nExit status 3: done, but the shape cannot be measured that day."
+    )]
+    Plan(crate::plan::PlanArguments),
     /// Say what is in a folder: sequences, times, headers, and what a session file still needs.
     #[command(
         after_help = "Example: truelimb inspect tonight --write session.toml\n\nOnly headers and tables are read. The session file that it starts has every key with its meaning; those that must be filled in are marked NEEDED."

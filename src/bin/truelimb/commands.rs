@@ -28,6 +28,9 @@ pub(crate) enum Failure {
     /// Sessions like this one could not be made.
     #[error(transparent)]
     Recover(Box<truelimb::recover::RecoverError>),
+    /// The day could not be planned.
+    #[error(transparent)]
+    Plan(Box<truelimb::plan::PlanError>),
 }
 
 impl<E: Into<Error>> From<E> for Failure {

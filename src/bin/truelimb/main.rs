@@ -6,6 +6,7 @@ mod commands;
 mod compare;
 mod dry_run;
 mod inspect;
+mod plan;
 mod progress;
 mod recover;
 mod refraction;
@@ -52,6 +53,7 @@ fn main() -> ExitCode {
         Command::Schema(it) => schema::schema(&it),
         Command::Completions(it) => Ok(shell::completions(&it)),
         Command::Man(it) => shell::man(&it),
+        Command::Plan(it) => plan::plan(&it, quiet),
     };
     match ended {
         Ok(Ending::Done) => ExitCode::SUCCESS,
@@ -66,7 +68,7 @@ fn main() -> ExitCode {
 /// Exit status: 2 for input that cannot be used, 1 for what failed otherwise.
 fn status(error: &commands::Failure) -> u8 {
     match error {
-        commands::Failure::Usage(_) => 2,
+        commands::Failure::Usage(_) | commands::Failure::Plan(_) => 2,
         commands::Failure::Synth(_) => 1,
         commands::Failure::Recover(it) => match it.as_ref() {
             truelimb::recover::RecoverError::Folder { .. } => 1,

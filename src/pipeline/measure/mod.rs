@@ -23,7 +23,7 @@ use crate::sky::{Parity, Utc};
 use ndarray::Array2;
 use reading::{each_frame, first_blur, start, times};
 use setup::setup;
-use sky::{Sky, interpolated};
+use sky::interpolated;
 use std::sync::{Arc, Mutex, PoisonError};
 
 pub use drift::{MeasuredDrift, measure_drift};
@@ -31,6 +31,7 @@ pub use rehearsal::{Rehearsal, rehearse};
 pub use scan::{MeasuredScan, MeasuredTransit, measure_scan};
 pub use setup::Setup;
 pub(super) use setup::{limb_optics, predicted};
+pub(super) use sky::Sky;
 pub use sky::place;
 
 /// One frame whose limb was measured.

@@ -59,19 +59,19 @@ fn station_air(
 const NODE_S: f64 = 120.0;
 
 /// The sky over one sequence: the Sun's track, the camera, the air.
-pub(super) struct Sky<'a> {
+pub(in crate::pipeline) struct Sky<'a> {
     session: &'a Session,
     sequence: &'a Sequence,
     track: SunTrack,
     /// The filter's band at mid sequence; none above the air.
-    pub(super) band: Option<BandInAir>,
+    pub(in crate::pipeline) band: Option<BandInAir>,
 }
 
 /// Room about the track, so that rates can be had at its ends, s.
 const TRACK_MARGIN_S: f64 = 2.0;
 
 impl<'a> Sky<'a> {
-    pub(super) fn new(
+    pub(in crate::pipeline) fn new(
         session: &'a Session,
         sequence: &'a Sequence,
         first: Utc,
@@ -95,7 +95,7 @@ impl<'a> Sky<'a> {
     }
 
     /// Wavelength at which the air bends the band's light as it does on average.
-    pub(super) fn wavelength_nm(&self) -> f64 {
+    pub(in crate::pipeline) fn wavelength_nm(&self) -> f64 {
         self.band
             .map_or(self.sequence.filter.centre_nm, |it| it.effective_nm)
     }
@@ -106,7 +106,7 @@ impl<'a> Sky<'a> {
     }
 
     /// Sun, camera and air at a time.
-    pub(super) fn moment(&self, at: Utc) -> Result<AtMoment, Error> {
+    pub(in crate::pipeline) fn moment(&self, at: Utc) -> Result<AtMoment, Error> {
         let sun = self.track.at(at)?;
         let station = station_air(self.session, at, sun.azimuth_rad)?;
         let air = match &station {
@@ -134,7 +134,7 @@ impl<'a> Sky<'a> {
     }
 
     /// Change of the true zenith distance, arcmin a second.
-    pub(super) fn zenith_rate_arcmin_s(&self, at: Utc) -> Result<f64, Error> {
+    pub(in crate::pipeline) fn zenith_rate_arcmin_s(&self, at: Utc) -> Result<f64, Error> {
         let (a, b) = (
             self.track.at(at.plus_s(-1.0))?,
             self.track.at(at.plus_s(1.0))?,
@@ -164,7 +164,7 @@ impl<'a> Sky<'a> {
 }
 
 /// Sun, camera and map of a moment; its air; the station and what had to be stretched for it.
-type AtMoment = (Moment, Air, Option<(StationAir, Option<WeatherNote>)>);
+pub(in crate::pipeline) type AtMoment = (Moment, Air, Option<(StationAir, Option<WeatherNote>)>);
 
 /// Straight line between the nodes about a time.
 pub(super) fn interpolated(nodes: &[(f64, AirResponse)], after_s: f64) -> AirResponse {

@@ -57,22 +57,23 @@ pub(super) fn drivers(
             });
         }
     }
-    if let Some(sigma_mas) = session.instrument.drift_sigma_mas_per_hour {
-        let hours = times
-            .iter()
-            .map(|it| it.minus(start))
-            .map(|it| (it, it / 3600.0))
-            .collect();
-        out.push(Driver {
-            name: "time".to_owned(),
-            unit: "h",
-            term: "instrument drift",
-            how: "instrument.drift_sigma_mas_per_hour".to_owned(),
-            sigma_mas,
-            readings: about_mean(hours).0,
-        });
-    }
+    let seconds: Vec<f64> = times.iter().map(|it| it.minus(start)).collect();
+    out.extend(drift(session, &seconds));
     Ok(out)
+}
+
+/// The drift of the instrument with time, where the session allows for one.
+pub(super) fn drift(session: &Session, seconds: &[f64]) -> Option<Driver> {
+    let sigma_mas = session.instrument.drift_sigma_mas_per_hour?;
+    let hours = seconds.iter().map(|it| (*it, it / 3600.0)).collect();
+    Some(Driver {
+        name: "time".to_owned(),
+        unit: "h",
+        term: "instrument drift",
+        how: "instrument.drift_sigma_mas_per_hour".to_owned(),
+        sigma_mas,
+        readings: about_mean(hours).0,
+    })
 }
 
 /// Readings in the order of time minus their mean, and their standard deviation.

@@ -1,11 +1,11 @@
 //! What is known before the fit: the air's refractivity, the camera, the clock, the instrument.
 
 use super::above_the_air;
-use super::drivers::drivers;
+use super::drivers::{drift, drivers};
 use crate::pipeline::Error;
 use crate::pipeline::measure::MeasuredSequence;
 use crate::session::Session;
-use crate::shape::{Known, RefractivityInput};
+use crate::shape::{Driver, Known, RefractivityInput};
 use crate::units::DEG_RAD;
 
 /// Residual fixed to the vertical that the fit allows for, mas.
@@ -24,13 +24,46 @@ pub(in crate::pipeline) fn known(
     session: &Session,
     measured: &[MeasuredSequence],
 ) -> Result<Known, Error> {
+    let air: Vec<AirInput> = measured.iter().map(AirInput::of).collect();
+    Ok(with_drivers(session, &air, drivers(session, measured)?))
+}
+
+/// What is known before a fit of frames that are still to come, at these seconds after the first; the
+/// readings of [environment] are not there yet.
+pub(in crate::pipeline) fn known_ahead(
+    session: &Session,
+    air: &[AirInput],
+    seconds: &[f64],
+) -> Known {
+    with_drivers(session, air, drift(session, seconds).into_iter().collect())
+}
+
+/// What the refractivity of one stretch of frames rests on.
+#[derive(Clone, Copy, Debug, PartialEq)]
+pub(in crate::pipeline) struct AirInput {
+    /// Refractivity at the telescope.
+    pub refractivity: f64,
+    /// Relative change of it by pressure, temperature, humidity, wavelength.
+    pub sensitivities: [f64; 4],
+}
+
+impl AirInput {
+    fn of(measured: &MeasuredSequence) -> Self {
+        Self {
+            refractivity: measured.middle.refractivity,
+            sensitivities: measured.sensitivities,
+        }
+    }
+}
+
+fn with_drivers(session: &Session, air: &[AirInput], drivers: Vec<Driver>) -> Known {
     let refractivity = if above_the_air(session) {
         Vec::new()
     } else {
-        refractivity_inputs(session, measured)
+        refractivity_inputs(session, air)
     };
     let camera = &session.camera;
-    Ok(Known {
+    Known {
         vertical_sigma_mas: if refractivity.is_empty() {
             0.0
         } else {
@@ -48,8 +81,8 @@ pub(in crate::pipeline) fn known(
         },
         tilt_tau_s: 60.0 * session.refractivity.layer_tilt_tau_min,
         distortion_sigma_mas: session.instrument.distortion_sigma_mas,
-        drivers: drivers(session, measured)?,
-    })
+        drivers,
+    }
 }
 
 /// Deflection of the vertical where the session gives none, and what is left where it does: common
@@ -74,7 +107,7 @@ pub(in crate::pipeline) fn refractivity_sigma_rel(
     if above_the_air(session) {
         return 0.0;
     }
-    refractivity_inputs(session, std::slice::from_ref(measured))
+    refractivity_inputs(session, &[AirInput::of(measured)])
         .iter()
         .map(|it| it.sigma_rel.powi(2))
         .sum::<f64>()
@@ -82,14 +115,10 @@ pub(in crate::pipeline) fn refractivity_sigma_rel(
 }
 
 /// What makes the air's refractivity uncertain, each with its relative standard uncertainty.
-fn refractivity_inputs(session: &Session, measured: &[MeasuredSequence]) -> Vec<RefractivityInput> {
-    let n = measured.len() as f64;
-    let mean = |k: usize| (measured.iter().map(|it| it.sensitivities[k]).sum::<f64>() / n).abs();
-    let refractivity = measured
-        .iter()
-        .map(|it| it.middle.refractivity)
-        .sum::<f64>()
-        / n;
+fn refractivity_inputs(session: &Session, air: &[AirInput]) -> Vec<RefractivityInput> {
+    let n = air.len() as f64;
+    let mean = |k: usize| (air.iter().map(|it| it.sensitivities[k]).sum::<f64>() / n).abs();
+    let refractivity = air.iter().map(|it| it.refractivity).sum::<f64>() / n;
     let weather = &session.weather;
     let line = |term, sigma_rel, scope, how: String| RefractivityInput {
         term,

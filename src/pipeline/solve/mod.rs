@@ -13,7 +13,7 @@ mod shape;
 use crate::session::{Session, WeatherSource};
 use crate::turbulence::Aperture;
 
-pub(super) use known::{known, refractivity_sigma_rel};
+pub(super) use known::{AirInput, known, known_ahead, refractivity_sigma_rel};
 pub(super) use seeing::{SeeingResult, SequenceAir, frame_r0_m, seeing, zenith_factor};
 pub(super) use select::{Selected, select};
 pub(super) use shape::{Shape, shape};

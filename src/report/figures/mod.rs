@@ -9,6 +9,7 @@ mod frames;
 mod harmonics;
 mod kept;
 mod nulls;
+pub(crate) mod plan;
 mod power;
 mod refraction;
 mod ring;
