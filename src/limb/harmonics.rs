@@ -31,9 +31,19 @@ use nalgebra::{DMatrix, DVector, Matrix5, Vector5};
 /// of a dome, a tree, a large spot, and wanders from step to step.
 const WANDERING: f64 = 6.0;
 
+/// Brightness, as a share of the usual one, below which a sector holds no Sun: it is behind something.
+pub(super) const DIM: f64 = 0.25;
+
 /// Offset of the limb's centre from the one assumed, arcsec, `(x, y)`, with the second harmonic
-/// fitted beside it so that missing sectors do not turn flattening into motion.
-pub(super) fn centre_offset(annulus: &Annulus, fits: &[Fit]) -> (f64, f64) {
+/// fitted beside it so that missing sectors do not turn flattening into motion. Sectors that are not
+/// steady are left out; with `judge` those that wander are marked as not steady, for good: a sector that
+/// came and went would keep the centre from settling.
+pub(super) fn centre_offset(
+    annulus: &Annulus,
+    fits: &[Fit],
+    steady: &mut [bool],
+    judge: bool,
+) -> (f64, f64) {
     let mut normal = Matrix5::<f64>::zeros();
     let mut right = Vector5::<f64>::zeros();
     let good = || {
@@ -42,7 +52,13 @@ pub(super) fn centre_offset(annulus: &Annulus, fits: &[Fit]) -> (f64, f64) {
             .filter(|(_, it)| it.flag == Flag::Good)
     };
     let usual = median(good().map(|(_, it)| it.misfit));
-    for (s, fit) in good().filter(|(_, it)| it.misfit <= WANDERING * usual) {
+    let dim = DIM * median(good().map(|(_, it)| it.gain_adu));
+    if judge {
+        for (steady, it) in steady.iter_mut().zip(fits) {
+            *steady &= it.flag == Flag::Good && it.misfit <= WANDERING * usual && it.gain_adu > dim;
+        }
+    }
+    for (s, fit) in good().filter(|(s, _)| steady[*s]) {
         let (c, n) = annulus.direction(s);
         let row = Vector5::new(1.0, c, n, c * c - n * n, 2.0 * c * n);
         normal += row * row.transpose();

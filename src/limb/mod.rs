@@ -213,7 +213,7 @@ pub struct Extraction<'a> {
 }
 
 /// Steps of the centre's refinement before it is called unstable.
-const MAX_STEPS: usize = 6;
+const MAX_STEPS: usize = 12;
 
 /// Steps after the first that are always taken.
 const LEAST_STEPS: usize = 2;
@@ -238,6 +238,7 @@ pub fn extract(
         vec![sector::Fit::start(start.level_adu, start.sky_adu, setup.blur_start); count];
     let mut scratch = geometry::Pixels::default();
     let mut moved = f64::INFINITY;
+    let mut steady = vec![true; count];
     for step in 0..MAX_STEPS {
         // Each round brings the fit a factor of some hundred nearer; the later steps start there.
         let rounds = if step == 0 { 3 } else { 1 };
@@ -245,7 +246,7 @@ pub fn extract(
             setup.annulus.gather(s, raw, centre, setup, &mut scratch);
             fit.refine(&scratch, setup, s, rounds);
         }
-        let (dx, dy) = harmonics::centre_offset(setup.annulus, &fits);
+        let (dx, dy) = harmonics::centre_offset(setup.annulus, &fits, &mut steady, step > 0);
         let scale = setup.annulus.scale_arcsec_px();
         moved = dx.hypot(dy) / scale;
         if !moved.is_finite() {
@@ -281,7 +282,9 @@ fn finished(
     setup: &Extraction<'_>,
 ) -> Result<ObservedLimb, LimbError> {
     let count = fits.len();
-    let found = fits.iter().filter(|it| it.flag == Flag::Good).count();
+    let good = || fits.iter().filter(|it| it.flag == Flag::Good);
+    let dim = harmonics::DIM * blemish::median(good().map(|it| it.gain_adu));
+    let found = good().filter(|it| it.gain_adu > dim).count();
     if 2 * found < count {
         return Err(LimbError::TooFewSectors {
             found,
@@ -300,7 +303,11 @@ fn finished(
             gain_adu: fit.gain_adu,
             background_adu: fit.background_adu,
             misfit: fit.misfit,
-            flag: fit.flag,
+            flag: if fit.flag == Flag::Good && fit.gain_adu <= dim {
+                Flag::Misfit
+            } else {
+                fit.flag
+            },
         })
         .collect();
     Ok(ObservedLimb {

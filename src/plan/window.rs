@@ -103,12 +103,17 @@ pub(super) fn best(
     })
 }
 
+/// Factor on the error where the next harmonic is not separated: any schedule that separates both is
+/// taken before one that leaves it open.
+const FOURTH_OPEN: f64 = 100.0;
+
 /// What is to be small: the whole error, without end where the oblateness is not separated.
 fn key(it: &Candidate) -> f64 {
-    if it.expected.separability.oblateness {
-        it.expected.oblateness_mas()
-    } else {
-        f64::INFINITY
+    let separability = &it.expected.separability;
+    match (separability.oblateness, separability.p4) {
+        (true, true) => it.expected.oblateness_mas(),
+        (true, false) => FOURTH_OPEN * it.expected.oblateness_mas(),
+        _ => f64::INFINITY,
     }
 }
 
