@@ -88,13 +88,14 @@ pub fn extract(
     let (level, sky) = setup.levels_adu;
     let mut fits = vec![sector::Fit::start(level, sky, setup.blur_start); count];
     let mut offset = (0.0, 0.0);
+    let mut steady = vec![true; count];
     for step in 0..STEPS {
         let gathered = gathered(raw, pixels, offset, setup);
         let rounds = if step == 0 { 4 } else { 2 };
         for (s, fit) in fits.iter_mut().enumerate() {
             fit.refine(&gathered[s], &fitting, s, rounds);
         }
-        let (dx, dy) = harmonics::centre_offset(setup.annulus, &fits);
+        let (dx, dy) = harmonics::centre_offset(setup.annulus, &fits, &mut steady, step > 0);
         if step + 1 == STEPS || !(dx.is_finite() && dy.is_finite()) {
             break;
         }
