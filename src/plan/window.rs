@@ -77,12 +77,12 @@ pub(super) fn best(
         let better = |a: &Candidate, b: &Candidate| key(a).total_cmp(&key(b));
         bests.extend(tried.into_iter().min_by(better));
     }
-    // Of each number of positions the best step.
+    // Of each number of positions the step that tells Sun and instrument apart best.
     let mut each: Vec<Candidate> = Vec::new();
     for it in bests {
         match each.last_mut() {
             Some(last) if last.positions.0 == it.positions.0 => {
-                if key(&it) < key(last) {
+                if by_condition(&it, last).is_lt() {
                     *last = it;
                 }
             }
@@ -115,6 +115,17 @@ fn key(it: &Candidate) -> f64 {
         (true, false) => FOURTH_OPEN * it.expected.oblateness_mas(),
         _ => f64::INFINITY,
     }
+}
+
+/// Which of two steps tells Sun and instrument apart better, the error where neither does.
+fn by_condition(a: &Candidate, b: &Candidate) -> std::cmp::Ordering {
+    let condition = |it: &Candidate| {
+        let it = &it.expected.separability;
+        it.sun_condition_number.unwrap_or(f64::INFINITY)
+    };
+    condition(a)
+        .total_cmp(&condition(b))
+        .then(key(a).total_cmp(&key(b)))
 }
 
 /// Position of a stretch: each position has an equal share of the window, one after the other.
