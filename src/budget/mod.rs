@@ -235,7 +235,7 @@ mod tests {
         assert!(coverage_factor(1e6, 0.682689492) >= 1.0);
     }
 
-    /// Source: `scipy.stats.t.ppf` (SciPy 1.16) on both sides of the change of method.
+    /// Source: `scipy.stats.t.ppf` of `SciPy` 1.16 on both sides of the change of method.
     #[test]
     fn both_methods_are_those_of_another_library() {
         for (degrees, row) in [

@@ -47,7 +47,7 @@ impl TableFile {
             }
             return Ok(Self {
                 source,
-                hdu: hdu as usize - 1,
+                hdu: hdu - 1,
                 rows,
             });
         }
