@@ -594,7 +594,7 @@ fn a_disk_occulted_in_part_is_reduced_with_honest_errors_or_refused() {
         println!("{left_of} columns: {left_out} degrees left out");
         assert!(left_out > 40.0, "{left_out} degrees left out");
     }
-    assert!(answered.contains(&30), "answered: {answered:?}");
+    assert!(answered.starts_with(&[30, 60]), "answered: {answered:?}");
 
     // More than half of it.
     occulted_session(250).assert_refused(&["sequence"]);

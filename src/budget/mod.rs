@@ -197,7 +197,7 @@ const MANY: f64 = 500.0;
 /// Multiple of a standard uncertainty with `degrees` of freedom (at least 2) that holds a `share`, 0 to
 /// 1, of Student's distribution on both sides together.
 ///
-/// Good to 1e-6. Above [`MANY`] degrees by the expansion of Abramowitz & Stegun 26.7.5.
+/// Good to 1e-6. Above 500 degrees by the expansion of Abramowitz & Stegun 26.7.5.
 pub fn coverage_factor(degrees: f64, share: f64) -> f64 {
     let degrees = if degrees > 2.0 { degrees } else { 2.0 };
     let at = 0.5 + 0.5 * share;

@@ -411,7 +411,7 @@ pub struct ShapeRecord {
     pub null_tests: Vec<NullTest>,
     /// Distortion fixed to the detector.
     pub instrument: Vec<DistortionRecord>,
-    /// How it goes with the readings of [environment], or drifts.
+    /// How it goes with the readings of `[environment]`, or drifts.
     #[serde(default)]
     pub drivers: Vec<DriverRecord>,
     /// The air's terms.

@@ -36,7 +36,7 @@ const CLEAR_PX: f64 = 1.0;
 ///
 /// # Errors
 ///
-/// As [`measure`], and [`Error::Drift`] for a Sun that does not move as it must.
+/// As a sequence of frames, and [`Error::Drift`] for a Sun that does not move as it must.
 pub fn measure_drift(
     index: usize,
     session: &Session,

@@ -56,7 +56,7 @@ const TRIED: usize = 3;
 ///
 /// # Errors
 ///
-/// As [`super::measure`], except that frames without a limb are told and not refused.
+/// As the measurement itself, except that frames without a limb are told and not refused.
 pub fn rehearse(
     index: usize,
     session: &Session,
