@@ -49,9 +49,6 @@ pub(in crate::pipeline) fn write(
     let frames = frame_table::columns(&outcome.traces.frames);
     file.table("FRAMES", &frames, &counted)?;
     file.table("SEQUENCES", &sequences(outcome, reference), &[])?;
-    let counted = Card::text("DATEREF", reference.to_iso(), "TIME counts from here");
-    let frames = frame_table::columns(&outcome.traces.frames);
-    file.table("FRAMES", &frames, &[counted])?;
     let lost = lost(outcome);
     if !lost[0].values.is_empty() {
         file.table("LOST", &lost, &[])?;
@@ -265,7 +262,7 @@ fn sequences(outcome: &Outcome, reference: Utc) -> Vec<Column> {
             "SKYSCALE",
             whole(&|it| usize::from(it.setup.plate.scale_of == ScaleOf::Sky)),
         )
-        .describe("1: scale found on stars through the air, 0: of the direction as it arrives")
+        .describe("1: scale found on stars through the air, 0: of the arriving light")
         .ucd("meta.code"),
         Column::new("FLAT", whole(&|it| usize::from(it.has_flat)))
             .describe("1: a flat field was divided out")
