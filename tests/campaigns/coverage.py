@@ -1,7 +1,7 @@
 """Does the error bar hold? Sessions of the independent model, made, reduced and held against their truth.
 
-    python tests/campaign/coverage.py FOLDER --profile mixed --n 200 --frames 80 --seed 1
-    python tests/campaign/coverage.py FOLDER --table            # what is there already
+    python tests/campaigns/coverage.py FOLDER --profile mixed --n 200 --frames 80 --seed 1
+    python tests/campaigns/coverage.py FOLDER --table            # what is there already
 
 Sessions are made one by one, reduced, measured and their frames deleted (`--keep` leaves them); a folder that
 has its figures is not made again, so that a run may be stopped and gone on with. Needs the release binary,
