@@ -4,7 +4,7 @@ use std::fmt::Write as _;
 
 use super::figures::season;
 use super::html::{Column, Table, escape, number, paragraph};
-use super::{Rendered, numbers, theme};
+use super::{Rendered, numbers, page};
 use crate::result::combined::{Combined, CombinedQuantity, SlopeRecord};
 use crate::result::record::Quantity;
 
@@ -14,34 +14,20 @@ pub fn render_combined(combined: &Combined) -> Rendered {
         .into_iter()
         .filter_map(|radius| season::plate(combined, radius))
         .collect();
-    let mut out = String::from("<!DOCTYPE html>\n<html lang=\"en\">\n<head>\n");
+    let title = format!(
+        "Shape of the solar limb over {}",
+        numbers::plural(combined.sessions.len(), "session")
+    );
+    let mut out = page::head(&title);
     let _ = write!(
         out,
-        "<meta http-equiv=\"Content-Security-Policy\" content=\"default-src 'none'; img-src data:; \
-         style-src 'unsafe-inline'; base-uri 'none'; form-action 'none'\">\n<meta \
-         charset=\"utf-8\">\n<meta name=\"viewport\" content=\"width=device-width, \
-         initial-scale=1\">\n<meta name=\"color-scheme\" content=\"light dark\">\n<link rel=\"icon\" \
-         href=\"data:,\">\n<title>Shape of the solar limb over {0}</title>\n<style>\n{1}</style>\n\
-         </head>\n<body>\n<div class=\"page\">\n<header class=\"mast\">\n<h1>Shape of the solar limb \
-         over {0}</h1>\n<p class=\"when\">{2}</p>\n</header>\n<main id=\"main\">\n<p \
-         class=\"sentence\">{3}</p>\n",
-        numbers::plural(combined.sessions.len(), "session"),
-        theme::page_sheet(),
+        "<div class=\"page\">\n<header class=\"mast\">\n<h1>{}</h1>\n<p class=\"when\">{}</p>\n\
+         </header>\n<main id=\"main\">\n<p class=\"sentence\">{}</p>\n",
+        escape(&title),
         escape(&span(combined)),
         number(&combined.summary)
     );
-    if !combined.warnings.is_empty() {
-        out.push_str("<aside class=\"notes\"><h2>To keep in mind</h2>\n<ul>\n");
-        for it in &combined.warnings {
-            let _ = writeln!(
-                out,
-                "<li>{} <code>{}</code></li>",
-                number(&it.text),
-                escape(&it.code)
-            );
-        }
-        out.push_str("</ul>\n</aside>\n");
-    }
+    page::notes(&mut out, &combined.warnings, "notes-h");
     for (heading, quantity, stem) in [
         ("Oblateness", &combined.oblateness, "oblateness-series"),
         ("Radius", &combined.radius, "radius-series"),

@@ -7,7 +7,7 @@ use super::html::{escape, number};
 use super::preview::Preview;
 use super::summary::summary_sentence;
 use super::{keys, sections, theme};
-use crate::result::record::{Record, Traces};
+use crate::result::record::{Record, Traces, WarningRecord};
 
 /// Sections of the page: anchor, heading, stems of its figures.
 const SECTIONS: [(&str, &str, &[&str]); 10] = [
@@ -70,7 +70,7 @@ pub(crate) fn document(
         escape(&when(record))
     );
     first_screen(&mut out, record, plates);
-    warnings(&mut out, record);
+    notes(&mut out, &record.warnings, "notes-h");
     contents(&mut out, record);
     for (anchor, heading, stems) in SECTIONS {
         if !shown(anchor, record) {
@@ -181,16 +181,17 @@ fn first_screen(out: &mut String, record: &Record, plates: &[Plate]) {
     }
 }
 
-/// What a reader must know before believing anything below.
-fn warnings(out: &mut String, record: &Record) {
-    if record.warnings.is_empty() {
+/// What a reader must know before believing anything below; `id` is that of its heading on the page.
+pub(crate) fn notes(out: &mut String, warnings: &[WarningRecord], id: &str) {
+    if warnings.is_empty() {
         return;
     }
-    out.push_str(
-        "<aside class=\"notes\" aria-labelledby=\"notes-h\">\n<h2 id=\"notes-h\">To keep in \
+    let _ = write!(
+        out,
+        "<aside class=\"notes\" aria-labelledby=\"{id}\">\n<h2 id=\"{id}\">To keep in \
          mind</h2>\n<ul>\n",
     );
-    for warning in &record.warnings {
+    for warning in warnings {
         let _ = writeln!(
             out,
             "<li>{} <code>{}</code></li>",

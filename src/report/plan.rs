@@ -25,18 +25,7 @@ pub fn render_plan(plan: &Plan) -> Rendered {
         let _ = writeln!(out, "<li>{}</li>", number(it));
     }
     out.push_str("</ul>\n</div>\n");
-    if !plan.warnings.is_empty() {
-        out.push_str("<aside class=\"notes\"><h2>To keep in mind</h2>\n<ul>\n");
-        for it in &plan.warnings {
-            let _ = writeln!(
-                out,
-                "<li>{} <code>{}</code></li>",
-                number(&it.text),
-                escape(&it.code)
-            );
-        }
-        out.push_str("</ul>\n</aside>\n");
-    }
+    page::notes(&mut out, &plan.warnings, "notes-h");
     out.push_str("<section>\n<h2>The day</h2>\n");
     if let Some(it) = &plate {
         out.push_str(&it.html("plate"));

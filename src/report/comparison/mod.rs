@@ -71,18 +71,7 @@ fn figure(plate: Option<&Plate>) -> Option<(String, String)> {
 }
 
 fn content(out: &mut String, comparison: &Comparison, plate: Option<&Plate>) {
-    if !comparison.warnings.is_empty() {
-        out.push_str("<aside class=\"notes\"><h2>To keep in mind</h2>\n<ul>\n");
-        for it in &comparison.warnings {
-            let _ = writeln!(
-                out,
-                "<li>{} <code>{}</code></li>",
-                number(&it.text),
-                escape(&it.code)
-            );
-        }
-        out.push_str("</ul>\n</aside>\n");
-    }
+    page::notes(out, &comparison.warnings, "comparison-notes-h");
     if let Some(plate) = plate {
         out.push_str(&plate.html("plate"));
     }
