@@ -23,7 +23,7 @@
 //!
 //! H. R. Kuensch, Annals of Statistics 17, 1217 (1989), with runs that do not overlap.
 
-use super::design::COMPONENTS;
+use super::design::{COMPONENTS, Component};
 use super::{Block, Fit, Observation};
 use rand::{RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
@@ -57,10 +57,11 @@ pub fn bootstrap(
     seed: u64,
 ) -> Option<Bootstrap> {
     let run_frames = (FACTORS_IN_RUN * factor).ceil() as usize;
+    let influence = fit.influence(observations, blocks);
     let sums: Vec<Vec<[f64; 3]>> = blocks
         .iter()
         .filter(|it| it.frames.len() >= 2)
-        .map(|block| runs(observations, block, fit, run_frames))
+        .map(|block| runs(observations, block, &influence, run_frames))
         .collect();
     let total: usize = sums.iter().map(Vec::len).sum();
     if total == 0 {
@@ -96,7 +97,7 @@ pub fn bootstrap(
 fn runs(
     observations: &[Observation],
     block: &Block,
-    fit: &Fit,
+    influence: &[[Component; 3]],
     run_frames: usize,
 ) -> Vec<[f64; 3]> {
     let n = block.frames.len();
@@ -108,7 +109,7 @@ fn runs(
     let mut out = vec![[0.0; 3]; count];
     for (i, &k) in block.frames.iter().enumerate() {
         let run = &mut out[i * count / n];
-        for (q, influence) in fit.influence[k].iter().enumerate() {
+        for (q, influence) in influence[k].iter().enumerate() {
             run[q] += (0..COMPONENTS)
                 .map(|c| influence[c] * (observations[k].harmonics_mas[c] - block.mean_mas[c]))
                 .sum::<f64>();

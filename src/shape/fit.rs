@@ -81,16 +81,15 @@ pub struct Fit {
     pub covariance: DMatrix<f64>,
     /// Where the variances come from.
     pub contributions: Vec<Contribution>,
-    /// How much one unit of each harmonic of each observation moves radius, oblateness and `R c4`.
-    pub influence: Vec<[Component; 3]>,
     /// Chi square of the blocks' m = 2 and 4 and its degrees of freedom.
     pub chi2: (f64, f64),
     /// Factor on the blocks' variances where they scatter more than their frames say.
     pub excess: f64,
     /// Degrees of freedom behind the random error.
     pub degrees: f64,
-    /// Answer of radius and oblateness to each component of each block's mean, in the blocks' order.
-    pub gain: [Vec<Component>; 2],
+    /// Answer of radius, oblateness and `R c4` to each component of each block's mean, in the blocks'
+    /// order.
+    pub gain: [Vec<Component>; 3],
     /// Whether the distortion was free.
     pub free_instrument: bool,
     /// Slopes against readings.
@@ -152,6 +151,20 @@ impl Fit {
     pub fn correlation_oblateness_p4(&self) -> f64 {
         let own = self.covariance[(OBLATENESS, OBLATENESS)] * self.covariance[(P4, P4)];
         self.covariance[(OBLATENESS, P4)] / own.sqrt()
+    }
+
+    /// How much one unit of each harmonic of each observation moves radius, oblateness and `R c4`, through
+    /// its block's mean.
+    pub fn influence(&self, observations: &[Observation], blocks: &[Block]) -> Vec<[Component; 3]> {
+        let mut out = vec![[[0.0; COMPONENTS]; 3]; observations.len()];
+        for (b, block) in blocks.iter().enumerate() {
+            let total: f64 = block.frames.iter().map(|&k| observations[k].weight).sum();
+            for &k in &block.frames {
+                let share = observations[k].weight / total;
+                out[k] = [0, 1, 2].map(|q| self.gain[q][b].map(|it| share * it));
+            }
+        }
+        out
     }
 
     /// Largest correlation of the oblateness with the instrument's and with the air's terms.
@@ -498,7 +511,7 @@ fn solve(
     let covariance = DMatrix::from_fn(n, n, |i, j| inverse[(i, j)] / (scale[i] * scale[j]));
     let response = &covariance * weighted.transpose();
     let values = &response * &data;
-    let gain = [RADIUS, OBLATENESS].map(|i| {
+    let gain = [RADIUS, OBLATENESS, P4].map(|i| {
         (0..blocks.len())
             .map(|b| std::array::from_fn(|c| response[(i, b * COMPONENTS + c)]))
             .collect()
@@ -531,7 +544,6 @@ fn solve(
         terms: unknowns.iter().map(|it| it.name.clone()).collect(),
         units: unknowns.iter().map(|it| it.unit).collect(),
         contributions: contributions(&covariance, &information, &prior, known, unknowns),
-        influence: by_observation(observations, blocks, &response),
         slopes: slopes(known, unknowns, &values, &covariance),
         values,
         covariance,
@@ -541,24 +553,6 @@ fn solve(
         gain,
         free_instrument: known.distortion_sigma_mas.is_none(),
     })
-}
-
-/// The answer of radius, oblateness and `R c4` to every observation, through its block's mean.
-fn by_observation(
-    observations: &[Observation],
-    blocks: &[Block],
-    response: &DMatrix<f64>,
-) -> Vec<[Component; 3]> {
-    let mut out = vec![[[0.0; COMPONENTS]; 3]; observations.len()];
-    for (b, block) in blocks.iter().enumerate() {
-        let total: f64 = block.frames.iter().map(|&k| observations[k].weight).sum();
-        for &k in &block.frames {
-            let share = observations[k].weight / total;
-            out[k] = [RADIUS, OBLATENESS, P4]
-                .map(|i| std::array::from_fn(|c| share * response[(i, b * COMPONENTS + c)]));
-        }
-    }
-    out
 }
 
 /// Whether an unknown is a driver's of m = 3, whose components are not in chi square.

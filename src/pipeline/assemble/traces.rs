@@ -13,7 +13,11 @@ use std::f64::consts::TAU;
 pub(super) fn traces(p: &Parts<'_>) -> Traces {
     let mean_radius = p.shape.fit.radius_mas() - REFERENCE_RADIUS_MAS;
     let mut frames = Vec::new();
-    let mut influence = p.shape.fit.influence.iter();
+    let influence = p
+        .shape
+        .fit
+        .influence(&p.shape.observations, &p.shape.blocks);
+    let mut influence = influence.iter();
     for (k, (it, &(position, frame))) in p
         .selected
         .observations
