@@ -3,14 +3,16 @@
 //! Images are painted here, pixel by pixel, from a limb-darkened disk with a sharp edge, so that
 //! the truth is the painter's and not the program's.
 
+mod program;
+
 use ndarray::Array2;
+use program::{run, shown, text};
 use rand::{RngExt, SeedableRng};
 use rand_chacha::ChaCha8Rng;
 use serde_json::Value;
 use std::f64::consts::TAU;
 use std::fs;
 use std::path::{Path, PathBuf};
-use std::process::{Command, Output};
 use truelimb::disk::{Darkening, DarkeningLaw};
 use truelimb::frames::{Card, Column, CubeShape, FitsWriter, ImageFile, Values};
 
@@ -94,21 +96,6 @@ impl Painted {
 
 fn folder() -> tempfile::TempDir {
     tempfile::tempdir().unwrap()
-}
-
-fn run(arguments: &[&str]) -> Output {
-    Command::new(env!("CARGO_BIN_EXE_truelimb"))
-        .args(arguments)
-        .output()
-        .unwrap()
-}
-
-fn text(bytes: &[u8]) -> String {
-    String::from_utf8(bytes.to_vec()).unwrap()
-}
-
-fn shown(path: &Path) -> &str {
-    path.to_str().unwrap()
 }
 
 /// The answer as JSON, of a run that must succeed.

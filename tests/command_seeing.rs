@@ -1,25 +1,13 @@
 //! Runs `truelimb seeing` as a person would: on the small session of an independent model, on sessions
 //! made by this program, and on sessions that cannot give a shape.
 
+mod program;
+
+use program::{run, shown, text};
 use serde_json::Value;
 use std::fs;
 use std::path::{Path, PathBuf};
-use std::process::{Command, Output};
-
-fn run(arguments: &[&str]) -> Output {
-    Command::new(env!("CARGO_BIN_EXE_truelimb"))
-        .args(arguments)
-        .output()
-        .unwrap()
-}
-
-fn text(bytes: &[u8]) -> String {
-    String::from_utf8(bytes.to_vec()).unwrap()
-}
-
-fn shown(path: &Path) -> &str {
-    path.to_str().unwrap()
-}
+use std::process::Output;
 
 fn independent() -> PathBuf {
     Path::new(env!("CARGO_MANIFEST_DIR")).join("tests/data/session")

@@ -1,26 +1,14 @@
 //! Runs the commands beside the reduction as a person would: what is in a folder, what a run would
 //! do, the report again, the schemas, the shell's help.
 
+mod program;
+
+use program::{run, shown, text};
 use serde_json::Value;
 use std::fs;
 use std::path::{Path, PathBuf};
-use std::process::{Command, Output};
+use std::process::Command;
 use std::time::{Duration, Instant};
-
-fn run(arguments: &[&str]) -> Output {
-    Command::new(env!("CARGO_BIN_EXE_truelimb"))
-        .args(arguments)
-        .output()
-        .unwrap()
-}
-
-fn text(bytes: &[u8]) -> String {
-    String::from_utf8(bytes.to_vec()).unwrap()
-}
-
-fn shown(path: &Path) -> &str {
-    path.to_str().unwrap()
-}
 
 /// What a run that must succeed printed.
 fn printed(arguments: &[&str]) -> String {

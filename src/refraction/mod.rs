@@ -301,14 +301,15 @@ pub fn response(
 }
 
 #[cfg(test)]
-mod tests {
+pub(crate) mod tests {
     use super::*;
     use crate::air::{Conditions, Site};
     use crate::shape::REFERENCE_RADIUS_MAS;
     use crate::sky::Parity;
     use crate::units::MAS_RAD;
 
-    fn moment(zenith_true_deg: f64) -> Moment {
+    /// A moment at a zenith distance, at a mountain station.
+    pub(crate) fn moment(zenith_true_deg: f64) -> Moment {
         let conditions = Conditions {
             pressure_hpa: 778.0,
             temperature_c: 9.0,

@@ -1,10 +1,9 @@
 //! The stack by hand-made frames: brightness, flux, variance, weight.
 
 use super::*;
-use crate::air::{Conditions, Site, StationAir};
 use crate::refraction::Air;
 use crate::session::{Projection, ScaleOf};
-use crate::sky::{Orientation, Parity, SunPlace};
+use crate::sky::Parity;
 use rand::SeedableRng;
 use rand_chacha::ChaCha8Rng;
 use rand_distr::{Distribution, StandardNormal};
@@ -24,42 +23,14 @@ const DETECTOR: Detector = Detector {
 
 /// A moment at a zenith distance, or above the air.
 fn moment(zenith_true_deg: Option<f64>, parity: Parity) -> Moment {
-    let conditions = Conditions {
-        pressure_hpa: 778.0,
-        temperature_c: 9.0,
-        relative_humidity: 0.35,
-        co2_ppm: 420.0,
-    };
-    let site = Site {
-        latitude_rad: 0.54,
-        height_m: 2240.0,
-    };
-    let zenith_true_rad = zenith_true_deg.unwrap_or(30.0).to_radians();
-    let air = match zenith_true_deg {
-        Some(_) => Air::over(&StationAir::new(site, conditions, 3.0), 550.0).unwrap(),
-        None => Air::none(),
-    };
-    Moment {
-        sun: SunPlace {
-            zenith_true_rad,
-            azimuth_rad: 3.0,
-            hour_angle_rad: -0.4,
-            right_ascension_rad: 1.0,
-            declination_rad: 0.3,
-            parallactic_rad: -0.9,
-            axis_rad: 0.2,
-            b0_rad: 0.1,
-            l0_rad: 1.0,
-            distance_au: 1.013,
-            radial_velocity_m_s: 0.0,
-        },
-        orientation: Orientation {
-            y_position_angle_rad: 0.35,
-            parity,
-        },
-        map: air.map(zenith_true_rad).unwrap(),
-        refractivity: air.refractivity,
+    let mut out = crate::refraction::tests::moment(zenith_true_deg.unwrap_or(30.0));
+    if zenith_true_deg.is_none() {
+        let none = Air::none();
+        out.map = none.map(out.sun.zenith_true_rad).unwrap();
+        out.refractivity = none.refractivity;
     }
+    out.orientation.parity = parity;
+    out
 }
 
 /// Brightness at a true distance from the centre in px of the grid: a darkened disk with a soft edge.
