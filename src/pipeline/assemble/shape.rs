@@ -122,11 +122,7 @@ fn random_error(p: &Parts<'_>) -> RandomErrorRecord {
                 degrees_of_freedom: it.degrees,
             })
             .collect(),
-        converged: if p.shape.fit.excess > 1.0 {
-            Some(false)
-        } else {
-            correlation.converged()
-        },
+        converged: p.shape.converged(),
         bootstrap: p.shape.bootstrap.map(|it| BootstrapRecord {
             sigma_radius_mas: it.sigma_mas[0],
             sigma_oblateness_mas: separability.oblateness.then_some(it.sigma_mas[1]),

@@ -160,7 +160,7 @@ pub(super) fn records(p: &Parts<'_>) -> Vec<WarningRecord> {
             ),
         );
     }
-    if p.shape.correlation.converged() == Some(false) || p.shape.fit.excess > 1.0 {
+    if p.shape.converged() == Some(false) {
         say(
             "not-converged",
             "the scatter of batches of frames still grows with their length: slow air or a drift; the random error is a lower limit, and more time, not more frames, is needed".to_owned(),

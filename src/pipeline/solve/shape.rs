@@ -48,6 +48,17 @@ pub(in crate::pipeline) struct Shape {
     pub observations: Vec<Observation>,
 }
 
+impl Shape {
+    /// Whether the random error stays as it is in longer batches, and in whole sequences; none where
+    /// there are too few to say.
+    pub(in crate::pipeline) fn converged(&self) -> Option<bool> {
+        if self.fit.excess > 1.0 {
+            return Some(false);
+        }
+        self.correlation.converged()
+    }
+}
+
 /// Fractions of the curve of the shape against what is kept.
 pub(super) const FRACTIONS: [f64; 6] = [1.0, 0.8, 0.6, 0.4, 0.2, 0.1];
 
